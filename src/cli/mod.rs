@@ -1,0 +1,1 @@
+//! The command line: arguments, options, one function a command, exit codes.

@@ -1,0 +1,1 @@
+//! From wires and geometry to impedance and admittance matrices per metre.

@@ -1,0 +1,14 @@
+//! Unbalanced three-phase feeder studies.
+#![cfg_attr(not(test), warn(clippy::unwrap_used))]
+
+pub mod catalog;
+pub mod cli;
+pub mod diagnostic;
+pub mod impedance;
+pub mod import;
+pub mod math;
+pub mod network;
+pub mod output;
+pub mod solver;
+pub mod study;
+pub mod units;

@@ -1,0 +1,28 @@
+//! What a feeder is made of: the records as written ([`Draft`]), the checked network
+//! ([`Network`]), and the one way from the first to the second ([`build`]).
+
+mod build;
+mod conductor;
+mod draft;
+mod load;
+mod model;
+mod regulator;
+mod study;
+mod supply;
+mod transformer;
+
+pub use build::{Built, build};
+pub use conductor::{Conductor, Conductors, Connection};
+pub use draft::{
+    Across, CapacitorRecord, Construction, Draft, FaultLevel, LineRecord, LoadRecord, LoadSite, Name,
+    NodeRecord, RegulatorControl, RegulatorRecord, SupplyRecord, SwitchRecord, SwitchState,
+    TransformerRecord,
+};
+pub use load::{Capacitor, Load, LoadModel, LoadPlace};
+pub use model::{
+    Branch, BranchId, BranchKind, ConstructionId, End, Feed, Line, Network, Node, NodeId, SOLID_EARTH_OHM,
+};
+pub use regulator::{Regulator, RegulatorUnit};
+pub use study::Study;
+pub use supply::Supply;
+pub use transformer::{NeutralPoint, Transformer, VectorGroup, Winding};

@@ -1,0 +1,231 @@
+//! The network as it is solved: a radial tree of nodes and branches, checked and with indices.
+//!
+//! Only [`super::build`] makes one, so whoever holds a [`Network`] may rely on this:
+//! every node is fed from the supply by exactly one closed path; every branch carries only
+//! conductors both its nodes have; impedances are positive; names are unique a kind.
+
+use super::conductor::{Conductor, Conductors, Connection};
+use super::draft::{Construction, Name};
+use super::load::{Capacitor, Load, LoadPlace};
+use super::regulator::Regulator;
+use super::study::Study;
+use super::supply::Supply;
+use super::transformer::Transformer;
+use crate::math::{Complex64, PhaseMatrix};
+
+/// Index of a node in [`Network::nodes`].
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord)]
+pub struct NodeId(pub u32);
+
+/// Index of a branch in [`Network::branches`].
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord)]
+pub struct BranchId(pub u32);
+
+/// Index of a construction in [`Network::constructions`].
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash)]
+pub struct ConstructionId(pub u32);
+
+impl NodeId {
+    /// As an index of [`Network::nodes`].
+    pub fn index(self) -> usize {
+        self.0 as usize
+    }
+}
+
+impl BranchId {
+    /// As an index of [`Network::branches`].
+    pub fn index(self) -> usize {
+        self.0 as usize
+    }
+}
+
+/// An electrode of zero ohms is solved as one of a micro-ohm.
+pub const SOLID_EARTH_OHM: f64 = 1e-6;
+
+/// A node: up to four conductors at one place.
+#[derive(Debug, Clone)]
+pub struct Node {
+    /// Name.
+    pub name: Name,
+    /// Conductors it carries.
+    pub conductors: Conductors,
+    /// Nominal line-to-line voltage, volts.
+    pub nominal_volts: f64,
+    /// Electrode from the neutral to remote earth, ohms (at least [`SOLID_EARTH_OHM`]); `None`: none.
+    pub earth_ohm: Option<f64>,
+    /// Susceptance to earth, siemens, that gives a side earthed nowhere its reference: on `n`
+    /// where the node carries it, else on each phase. Zero at every other node.
+    pub reference_siemens: f64,
+    /// Coordinates for drawing.
+    pub xy: Option<[f64; 2]>,
+}
+
+impl Node {
+    /// Nominal phase-to-neutral voltage, volts.
+    pub fn nominal_phase_volts(&self) -> f64 {
+        self.nominal_volts / crate::units::SQRT_3
+    }
+
+    /// Nominal voltage across each element of a load or capacitor joined so, volts.
+    pub fn nominal_across(&self, connection: Connection) -> f64 {
+        match connection {
+            Connection::Star(_) => self.nominal_phase_volts(),
+            Connection::Delta(_) => self.nominal_volts,
+        }
+    }
+
+    /// Admittance from each conductor to earth of electrode and reference, siemens, slots a, b, c, n.
+    pub fn earth_admittance(&self) -> [Complex64; 4] {
+        let mut y = [Complex64::new(0.0, 0.0); 4];
+        let n = Conductor::N.slot();
+        if let Some(ohm) = self.earth_ohm {
+            y[n] += 1.0 / ohm;
+        }
+        let reference = Complex64::new(0.0, self.reference_siemens);
+        if self.conductors.has_neutral() {
+            y[n] += reference;
+        } else {
+            for c in self.conductors.iter() {
+                y[c.slot()] += reference;
+            }
+        }
+        y
+    }
+}
+
+/// A line: construction, length and number of equal circuits.
+#[derive(Debug, Clone)]
+pub struct Line {
+    /// Construction.
+    pub construction: ConstructionId,
+    /// Length, metres.
+    pub length_m: f64,
+    /// Equal circuits in parallel.
+    pub sets: u32,
+}
+
+/// What a branch is.
+#[derive(Debug, Clone)]
+pub enum BranchKind {
+    /// Series impedance with half the shunt admittance at each end (pi model).
+    Line(Line),
+    /// A closed switch: no impedance.
+    Switch,
+    /// A regulator bank: an ideal ratio.
+    Regulator(Regulator),
+    /// A transformer.
+    Transformer(Transformer),
+}
+
+impl BranchKind {
+    /// Word used in results: `line`, `switch`, `regulator`, `transformer`.
+    pub fn word(&self) -> &'static str {
+        match self {
+            BranchKind::Line(_) => "line",
+            BranchKind::Switch => "switch",
+            BranchKind::Regulator(_) => "regulator",
+            BranchKind::Transformer(_) => "transformer",
+        }
+    }
+}
+
+/// A branch between two nodes.
+#[derive(Debug, Clone)]
+pub struct Branch {
+    /// Name.
+    pub name: Name,
+    /// Node at the from end, as the user wrote it.
+    pub from: NodeId,
+    /// Node at the to end.
+    pub to: NodeId,
+    /// Conductors at the from end.
+    pub from_conductors: Conductors,
+    /// Conductors at the to end; the same but for transformers.
+    pub to_conductors: Conductors,
+    /// Current rating, amperes, of a line.
+    pub rating_amps: Option<f64>,
+    /// What it is.
+    pub kind: BranchKind,
+}
+
+/// How a node hangs on the tree.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub struct Feed {
+    /// Branch that feeds the node.
+    pub branch: BranchId,
+    /// Node at the other end, towards the source.
+    pub parent: NodeId,
+    /// Which end of the branch is towards the source.
+    pub upstream: End,
+}
+
+/// An end of a branch.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum End {
+    /// The from end.
+    From,
+    /// The to end.
+    To,
+}
+
+/// A checked radial network.
+#[derive(Debug, Clone)]
+pub struct Network {
+    /// Settings and limits.
+    pub study: Study,
+    /// The supply.
+    pub supply: Supply,
+    /// Nodes in the order their names first appear.
+    pub nodes: Vec<Node>,
+    /// Closed branches.
+    pub branches: Vec<Branch>,
+    /// Constructions the lines use.
+    pub constructions: Vec<Construction>,
+    /// Loads.
+    pub loads: Vec<Load>,
+    /// Capacitors in service.
+    pub capacitors: Vec<Capacitor>,
+    /// How each node is fed; `None` only for the supply node.
+    pub feeds: Vec<Option<Feed>>,
+    /// Nodes from the supply outwards, breadth first: a parent stands before its children.
+    pub order: Vec<NodeId>,
+}
+
+impl Network {
+    /// The node of that index.
+    pub fn node(&self, id: NodeId) -> &Node {
+        &self.nodes[id.index()]
+    }
+
+    /// The branch of that index.
+    pub fn branch(&self, id: BranchId) -> &Branch {
+        &self.branches[id.index()]
+    }
+
+    /// Construction of a line.
+    pub fn construction(&self, line: &Line) -> &Construction {
+        &self.constructions[line.construction.0 as usize]
+    }
+
+    /// Series impedance of a whole line, ohms: per metre, times length, over the circuits in parallel.
+    pub fn line_impedance(&self, line: &Line) -> PhaseMatrix {
+        self.construction(line).z_per_m * Complex64::from(line.length_m / f64::from(line.sets))
+    }
+
+    /// Shunt admittance of a whole line, siemens; half of it stands at each end.
+    pub fn line_shunt(&self, line: &Line) -> PhaseMatrix {
+        self.construction(line).y_per_m * Complex64::from(line.length_m * f64::from(line.sets))
+    }
+
+    /// Nodes where a load draws, each with its share of the load.
+    pub fn load_sites(&self, load: &Load) -> impl Iterator<Item = (NodeId, f64)> + use<> {
+        let sites = match load.place {
+            LoadPlace::Node(node) => [Some((node, 1.0)), None],
+            LoadPlace::Line(line) => {
+                let branch = self.branch(line);
+                [Some((branch.from, 0.5)), Some((branch.to, 0.5))]
+            }
+        };
+        sites.into_iter().flatten()
+    }
+}

@@ -1,0 +1,1 @@
+//! From a result to text, JSON or CSV: one result, one table, many writers.

@@ -1,0 +1,1 @@
+//! Questions asked of a solved network. Pure: input to result, no printing, no files.
