@@ -1,0 +1,370 @@
+//! Two-ports of the branches, and their elimination from the leaves to the source.
+//!
+//! A node `i` with all that hangs below it draws `J = Y V + K`, `Y` gathering what is linear.
+//! Eliminating it across its branch gives `V_i = M V_p - N K_i` and, seen from the parent `p`,
+//! `Y_p += P`, `K_p += M^T K_i` (every element here is reciprocal, so the transpose of `M`
+//! carries currents upwards).
+
+use crate::math::{Complex64, ONE, PhaseMatrix, ZERO};
+use crate::network::{
+    Branch, BranchKind, Conductor, Conductors, Connection, End, Network, NeutralPoint, Transformer,
+    VectorGroup, Winding,
+};
+
+const N: usize = 3;
+
+/// Admittance seen looking into a node, away from the source.
+#[derive(Debug, Clone)]
+pub(super) enum Seen {
+    /// Only the neutral is shunted: a scalar, siemens, which keeps the elimination scalar.
+    Neutral(Complex64),
+    /// A full matrix, siemens.
+    Full(Box<PhaseMatrix>),
+}
+
+impl Seen {
+    /// Nothing shunts the node.
+    pub fn nothing() -> Seen {
+        Seen::Neutral(ZERO)
+    }
+
+    /// Adds a full matrix.
+    pub fn add_matrix(&mut self, y: &PhaseMatrix) {
+        match self {
+            Seen::Full(sum) => **sum += y,
+            Seen::Neutral(alpha) => {
+                let mut sum = *y;
+                sum[(N, N)] += *alpha;
+                *self = Seen::Full(Box::new(sum));
+            }
+        }
+    }
+
+    /// Adds what another node's elimination passes up.
+    pub fn add(&mut self, other: &Seen) {
+        match (&mut *self, other) {
+            (Seen::Neutral(alpha), Seen::Neutral(beta)) => *alpha += beta,
+            (Seen::Full(sum), Seen::Neutral(beta)) => sum[(N, N)] += beta,
+            (_, Seen::Full(y)) => self.add_matrix(y),
+        }
+    }
+
+    /// As a full matrix.
+    pub fn matrix(&self) -> PhaseMatrix {
+        match self {
+            Seen::Full(y) => **y,
+            Seen::Neutral(alpha) => {
+                let mut y = PhaseMatrix::zeros();
+                y[(N, N)] = *alpha;
+                y
+            }
+        }
+    }
+}
+
+/// A branch seen from its end towards the source.
+pub(super) enum TwoPort {
+    /// Series impedance, ohms (zero for a switch).
+    Series(PhaseMatrix),
+    /// Ideal ratio: `V_i = A V_p`, `I_p = A^T J_i`.
+    Ratio(PhaseMatrix),
+    /// Terminal admittances, siemens; `far` is the set of conductors at the node's end.
+    Terminals { near: PhaseMatrix, across: PhaseMatrix, own: PhaseMatrix, far: Conductors },
+}
+
+/// What eliminating a node leaves for the iteration.
+pub(super) enum Eliminated {
+    /// `M = 1 - beta z_n e_n^T`, `N = Z - beta z_n z_n^T`: nothing but the neutral is shunted below.
+    Series { z: PhaseMatrix, beta: Complex64 },
+    /// General `M` and `N`.
+    Dense { m: PhaseMatrix, n: PhaseMatrix },
+}
+
+/// The linear part has no solution at the node.
+#[derive(Debug)]
+pub(super) struct SingularNode;
+
+/// Eliminates a node that sees `below` across its branch; gives the iteration's matrices and what the parent sees.
+pub(super) fn eliminate(port: &TwoPort, below: &Seen) -> Result<(Eliminated, Seen), SingularNode> {
+    match port {
+        TwoPort::Series(z) => series(z, below),
+        TwoPort::Ratio(a) => {
+            let seen = match below {
+                // Row n of A is that of the identity, so the scalar stays one.
+                Seen::Neutral(alpha) => Seen::Neutral(*alpha),
+                Seen::Full(y) => Seen::Full(Box::new(a.transpose() * **y * a)),
+            };
+            Ok((Eliminated::Dense { m: *a, n: PhaseMatrix::zeros() }, seen))
+        }
+        TwoPort::Terminals { near, across, own, far } => terminals(near, across, own, *far, below),
+    }
+}
+
+/// `W = (1 + Z Y)^-1`, `M = W`, `N = W Z`, `P = Y W`; a scalar where only the neutral is shunted.
+fn series(z: &PhaseMatrix, below: &Seen) -> Result<(Eliminated, Seen), SingularNode> {
+    match below {
+        Seen::Neutral(alpha) => {
+            let factor = ONE + alpha * z[(N, N)];
+            let beta = alpha / factor;
+            if !beta.is_finite() {
+                return Err(SingularNode);
+            }
+            Ok((Eliminated::Series { z: *z, beta }, Seen::Neutral(beta)))
+        }
+        Seen::Full(y) => {
+            let w = invert(&(PhaseMatrix::identity() + z * **y))?;
+            Ok((Eliminated::Dense { m: w, n: w * z }, Seen::Full(Box::new(**y * w))))
+        }
+    }
+}
+
+/// `W = (Y_own + Y)^-1` over the far conductors, `M = -W Y_across^T`, `N = W`, `P = Y_near - Y_across W Y_across^T`.
+fn terminals(
+    near: &PhaseMatrix,
+    across: &PhaseMatrix,
+    own: &PhaseMatrix,
+    far: Conductors,
+    below: &Seen,
+) -> Result<(Eliminated, Seen), SingularNode> {
+    let mut sum = own + below.matrix();
+    let absent = || Conductor::ALL.into_iter().filter(|&c| !far.has(c)).map(Conductor::slot);
+    for k in absent() {
+        sum[(k, k)] = ONE;
+    }
+    let mut w = invert(&sum)?;
+    for k in absent() {
+        w[(k, k)] = ZERO;
+    }
+    let m = -(w * across.transpose());
+    let p = near + across * m;
+    // Without shunts below or inside, P is zero but for rounding; dropping that keeps the feeder above scalar.
+    let size = |y: &PhaseMatrix| y.iter().map(|x| x.norm()).fold(0.0, f64::max);
+    let seen = if size(&p) <= 1e-12 * size(near) { Seen::nothing() } else { Seen::Full(Box::new(p)) };
+    Ok((Eliminated::Dense { m, n: w }, seen))
+}
+
+fn invert(a: &PhaseMatrix) -> Result<PhaseMatrix, SingularNode> {
+    let inverse = a.lu().try_inverse().ok_or(SingularNode)?;
+    if inverse.iter().all(|x| x.is_finite()) { Ok(inverse) } else { Err(SingularNode) }
+}
+
+/// The two-port of a branch, seen from its upstream end.
+pub(super) fn two_port(network: &Network, branch: &Branch, upstream: End) -> Result<TwoPort, SingularNode> {
+    Ok(match &branch.kind {
+        BranchKind::Line(line) => TwoPort::Series(network.line_impedance(line)),
+        BranchKind::Switch => TwoPort::Series(PhaseMatrix::zeros()),
+        BranchKind::Regulator(bank) => {
+            let ratio = bank.ratio_matrix(branch.from_conductors.has_neutral());
+            TwoPort::Ratio(match upstream {
+                End::From => ratio,
+                End::To => invert(&ratio)?,
+            })
+        }
+        BranchKind::Transformer(t) => {
+            let y = Terminals::of(t);
+            match upstream {
+                End::From => TwoPort::Terminals {
+                    near: y.from,
+                    across: y.across,
+                    own: y.to,
+                    far: branch.to_conductors,
+                },
+                End::To => TwoPort::Terminals {
+                    near: y.to,
+                    across: y.across.transpose(),
+                    own: y.from,
+                    far: branch.from_conductors,
+                },
+            }
+        }
+    })
+}
+
+/// Terminal admittances of a transformer, siemens: `I_from = from V_from + across V_to`,
+/// `I_to = across^T V_from + to V_to`, both into the transformer.
+#[derive(Debug, Clone)]
+pub(super) struct Terminals {
+    /// From-side own admittance.
+    pub from: PhaseMatrix,
+    /// Admittance between the sides.
+    pub across: PhaseMatrix,
+    /// To-side own admittance.
+    pub to: PhaseMatrix,
+}
+
+/// From-side terminals in rows 0 to 3, to-side terminals in rows 4 to 7; the neutral points are 3 and 7.
+type Primitive = nalgebra::SMatrix<Complex64, 8, 8>;
+
+impl Terminals {
+    /// Joins the units' windings and takes the neutral points where they go (see [`Transformer`]).
+    pub fn of(t: &Transformer) -> Terminals {
+        let mut y = Primitive::zeros();
+        let unit = UnitAdmittance::of(t);
+        for [from, to] in units(t) {
+            let ends = [(from.0, 1.0), (from.1, -1.0), (to.0 + 4, 1.0), (to.1 + 4, -1.0)];
+            for (i, (row, row_sign)) in ends.into_iter().enumerate() {
+                for (j, (column, column_sign)) in ends.into_iter().enumerate() {
+                    let element = match (i < 2, j < 2) {
+                        (true, true) => unit.from,
+                        (false, false) => unit.to,
+                        _ => unit.across,
+                    };
+                    y[(row, column)] += element * (row_sign * column_sign);
+                }
+            }
+        }
+        join_neutral(&mut y, 3, t.from_neutral);
+        join_neutral(&mut y, 7, t.to_neutral);
+        Terminals {
+            from: y.fixed_view::<4, 4>(0, 0).into_owned(),
+            across: y.fixed_view::<4, 4>(0, 4).into_owned(),
+            to: y.fixed_view::<4, 4>(4, 4).into_owned(),
+        }
+    }
+}
+
+/// Admittances of one two-winding unit in its winding voltages.
+struct UnitAdmittance {
+    from: Complex64,
+    across: Complex64,
+    to: Complex64,
+}
+
+impl UnitAdmittance {
+    fn of(t: &Transformer) -> UnitAdmittance {
+        let (count, from_volts, to_volts) = match t.group {
+            VectorGroup::Single { .. } => (1.0, t.from_volts, t.to_volts),
+            VectorGroup::Three { from, to, .. } => {
+                (3.0, winding_volts(from, t.from_volts), winding_volts(to, t.to_volts))
+            }
+        };
+        let unit_va = t.rated_va / count;
+        let leakage = Complex64::new(t.r_pu, t.x_pu) * (to_volts * to_volts / unit_va);
+        let y = leakage.inv();
+        let ratio = from_volts / (to_volts * (1.0 + t.tap_pu));
+        let no_load =
+            Complex64::new(t.no_load_watts / count, -t.magnetizing_pu * unit_va) / (from_volts * from_volts);
+        UnitAdmittance { from: y / (ratio * ratio) + no_load, across: -y / ratio, to: y }
+    }
+}
+
+fn winding_volts(winding: Winding, line_to_line: f64) -> f64 {
+    match winding {
+        Winding::Delta => line_to_line,
+        Winding::Star | Winding::StarNeutral => line_to_line / crate::units::SQRT_3,
+    }
+}
+
+/// Start and end terminal slots of the from and the to winding of each unit.
+fn units(t: &Transformer) -> Vec<[(usize, usize); 2]> {
+    let turn = |pair: (usize, usize), reversed: bool| if reversed { (pair.1, pair.0) } else { pair };
+    match (t.group, t.terminals) {
+        (VectorGroup::Three { from, to, clock }, _) => {
+            let joint = Joint::of(from, to, clock);
+            (0..3).map(|k| joint.unit(k)).collect()
+        }
+        (VectorGroup::Single { clock }, Some(connection)) => {
+            let pairs = connection.pairs().map(|(p, q)| (p.slot(), q.slot()));
+            pairs.map(|pair| [pair, turn(pair, clock == 6)]).collect()
+        }
+        (VectorGroup::Single { .. }, None) => Vec::new(),
+    }
+}
+
+/// How the units of a bank are joined for a clock number (the rules stand at [`Transformer`]).
+struct Joint {
+    from: Winding,
+    to: Winding,
+    /// Whether a delta joins k to k-1 instead of k+1.
+    backward: bool,
+    /// Places each to-terminal moves back.
+    shift: usize,
+    reversed: bool,
+}
+
+impl Joint {
+    fn of(from: Winding, to: Winding, clock: u8) -> Joint {
+        let clock = usize::from(clock);
+        let alike = (from == Winding::Delta) == (to == Winding::Delta);
+        let (base, reversed) = match (alike, clock % 4) {
+            (true, 0) => (0, false),
+            (true, _) => (6, true),
+            (false, 1) => (1, false),
+            (false, _) => (11, false),
+        };
+        let to_delta = to == Winding::Delta;
+        let backward = !alike && (base == 1) != to_delta;
+        Joint { from, to, backward, shift: (clock + 12 - base) % 12 / 4, reversed }
+    }
+
+    fn unit(&self, k: usize) -> [(usize, usize); 2] {
+        let ends = |winding: Winding, k: usize| match winding {
+            Winding::Delta => (k, (k + if self.backward { 2 } else { 1 }) % 3),
+            Winding::Star | Winding::StarNeutral => (k, N),
+        };
+        let back = |slot: usize| if slot == N { N } else { (slot + 3 - self.shift) % 3 };
+        let (start, end) = ends(self.to, k);
+        let to = (back(start), back(end));
+        [ends(self.from, k), if self.reversed { (to.1, to.0) } else { to }]
+    }
+}
+
+/// Takes the neutral point at `row` where it goes: stays a conductor, to earth, or nowhere.
+fn join_neutral(y: &mut Primitive, row: usize, point: NeutralPoint) {
+    match point {
+        NeutralPoint::Conductor | NeutralPoint::None => return,
+        NeutralPoint::Floating => {}
+        NeutralPoint::Earthed(ohm) if ohm > 0.0 => y[(row, row)] += Complex64::from(ohm.recip()),
+        NeutralPoint::Earthed(_) => {
+            // Solid earth: its voltage is zero, so the row and column just go.
+            clear(y, row);
+            return;
+        }
+    }
+    let pivot = y[(row, row)];
+    let size = y.iter().map(|x| x.norm()).fold(0.0, f64::max);
+    // Where both star points float only their difference counts: the second pivot vanishes with its row.
+    if pivot.norm() > 1e-10 * size {
+        let column = y.column(row).into_owned();
+        let line = y.row(row).into_owned();
+        *y -= column * line / pivot;
+    }
+    clear(y, row);
+}
+
+fn clear(y: &mut Primitive, row: usize) {
+    y.row_mut(row).fill(ZERO);
+    y.column_mut(row).fill(ZERO);
+}
+
+/// Series impedance of the supply as a branch from its held voltages, ohms (see [`crate::network::Supply`]).
+pub(super) fn supply_impedance(network: &Network) -> PhaseMatrix {
+    let supply = &network.supply;
+    let conductors = network.node(supply.node).conductors;
+    let mut z = supply.impedance;
+    for i in conductors.iter() {
+        for j in conductors.iter() {
+            z[(i.slot(), j.slot())] += Complex64::from(supply.earth_ohm);
+        }
+    }
+    z
+}
+
+/// Linear admittance between pairs of conductors, siemens each, as a matrix to earth; `n` is earth where it is not carried.
+pub(super) fn shunt_matrix(
+    connection: Connection,
+    siemens: Complex64,
+    conductors: Conductors,
+) -> PhaseMatrix {
+    let mut y = PhaseMatrix::zeros();
+    for (p, q) in connection.pairs() {
+        let (i, j) = (p.slot(), q.slot());
+        y[(i, i)] += siemens;
+        if conductors.has(q) {
+            y[(j, j)] += siemens;
+            y[(i, j)] -= siemens;
+            y[(j, i)] -= siemens;
+        }
+    }
+    y
+}
