@@ -3,20 +3,18 @@
 //! Formulas and their sources stand at [`crate::network::Load`]. Loads of a node are gathered
 //! by connection and model first, so the iteration sees at most one record a node.
 
-use super::lanes::{Lane, Slots};
-use crate::math::{Complex64, SLOTS};
+use super::lanes::{Phasors, Quad, Slots};
+use crate::math::Complex64;
 use crate::network::{Conductor, Connection, LoadModel, Network, Node};
-
-const N: usize = 3;
 
 /// Lowest floor, per unit, even where the floor is turned off: keeps the division defined.
 const LEAST_FLOOR_PU: f64 = 1e-6;
 
 /// Constant-power star loads of one node: by far the most common record.
 #[derive(Debug, Clone, Copy)]
-pub(super) struct StarPower<L> {
+pub(super) struct StarPower {
     /// Active (re) and reactive (im) power of each phase; the n slot is zero.
-    power: Slots<L>,
+    power: Slots,
     /// Floor voltage squared, and its inverse.
     floor2: f64,
     inverse_floor2: f64,
@@ -26,115 +24,81 @@ pub(super) struct StarPower<L> {
 
 /// Every kind of load at one node.
 #[derive(Debug, Clone, Copy)]
-pub(super) struct Mixed<L> {
-    star: StarPower<L>,
+pub(super) struct Mixed {
+    star: StarPower,
     /// Power over nominal voltage of constant-current star loads.
-    star_current: Slots<L>,
+    star_current: Slots,
     /// Slots ab, bc, ca.
-    delta_power: Slots<L>,
-    delta_current: Slots<L>,
+    delta_power: Slots,
+    delta_current: Slots,
     delta_floor2: f64,
 }
 
-/// `power * u` conjugated for currents: `I = conj(S) u g`.
+/// `I = conj(S) u g` for each slot.
 #[inline(always)]
-fn currents<L: Lane, const FUSED: bool>(power: &Slots<L>, u: &Slots<L>, gain: &[L; SLOTS]) -> Slots<L> {
-    let mut current = Slots::zero();
-    for i in 0..SLOTS {
-        let (p, q) = (power.re[i].times(gain[i]), power.im[i].times(gain[i]));
-        current.re[i] = p.fused::<FUSED>(u.re[i], q.times(u.im[i]));
-        current.im[i] = p.fused::<FUSED>(u.im[i], L::splat(0.0).minus(q.times(u.re[i])));
-    }
-    current
-}
-
-/// Magnitude squared of each slot.
-#[inline(always)]
-fn squares<L: Lane, const FUSED: bool>(u: &Slots<L>) -> [L; SLOTS] {
-    std::array::from_fn(|i| u.re[i].fused::<FUSED>(u.re[i], u.im[i].times(u.im[i])))
+fn currents<Q: Quad>(power: &Slots, u: Phasors<Q>, gain: Q) -> Phasors<Q> {
+    let s = Phasors::<Q>::load(power).each(|part| part.times(gain));
+    Phasors { re: s.re.times_plus(u.re, s.im.times(u.im)), im: s.im.times_from(u.re, s.re.times(u.im)) }
 }
 
 /// `1 / |u|^2` above the floor; below it `(2 - m) / floor^2`, `m = |u|^2 / floor^2`.
 #[inline(always)]
-fn power_gain<L: Lane, const FUSED: bool>(
-    square: &[L; SLOTS],
-    floor2: f64,
-    inverse_floor2: f64,
-) -> [L; SLOTS] {
-    let (floor, inverse) = (L::splat(floor2), L::splat(-inverse_floor2));
-    std::array::from_fn(|i| {
-        let softened = square[i].lesser(floor).fused::<FUSED>(inverse, L::splat(2.0));
-        softened.over(square[i].greater(floor))
-    })
+fn power_gain<Q: Quad>(square: Q, floor2: f64, inverse_floor2: f64) -> Q {
+    let floor = Q::splat(floor2);
+    let softened = square.lesser(floor).times_from(Q::splat(inverse_floor2), Q::splat(2.0));
+    softened.over(square.greater(floor))
 }
 
 /// `1 / |u|`.
 #[inline(always)]
-fn current_gain<L: Lane>(square: &[L; SLOTS], floor2: f64) -> [L; SLOTS] {
+fn current_gain<Q: Quad>(square: Q, floor2: f64) -> Q {
     // Far below any floor the direction of u is noise: the current then fades with u.
-    let least = L::splat(floor2 * 1e-6);
-    std::array::from_fn(|i| L::splat(1.0).over(square[i].greater(least).root()))
+    let least = Q::splat(floor2 * 1e-6);
+    Q::splat(1.0).over(square.greater(least).root())
 }
 
-impl<L: Lane> StarPower<L> {
+impl StarPower {
+    /// Voltages across the elements; the n slot is of no use.
     #[inline(always)]
-    fn across(&self, v: &Slots<L>) -> Slots<L> {
-        let k = L::splat(-self.neutral);
-        let mut u = *v;
-        for i in 0..SLOTS {
-            u.re[i] = k.times(v.re[N]).plus(v.re[i]);
-            u.im[i] = k.times(v.im[N]).plus(v.im[i]);
-        }
-        u
+    fn across<Q: Quad>(&self, v: Phasors<Q>) -> Phasors<Q> {
+        let k = Q::splat(self.neutral);
+        v.each(|part| k.times_from(part.neutral(), part))
     }
 
     /// Sends the sum of the phase currents back through the neutral.
     #[inline(always)]
-    fn close(&self, current: &mut Slots<L>) {
-        let k = L::splat(-self.neutral);
-        current.re[N] = k.times(current.re[0].plus(current.re[1]).plus(current.re[2]));
-        current.im[N] = k.times(current.im[0].plus(current.im[1]).plus(current.im[2]));
+    fn close<Q: Quad>(&self, current: Phasors<Q>) -> Phasors<Q> {
+        let k = Q::splat(-self.neutral);
+        current.each(|part| part.with_neutral(part.phase_sum().times(k)))
     }
 
     /// Current drawn from each conductor at these node voltages.
     #[inline(always)]
-    pub fn current<const FUSED: bool>(&self, v: &Slots<L>) -> Slots<L> {
+    pub fn current<Q: Quad>(&self, v: Phasors<Q>) -> Phasors<Q> {
         let u = self.across(v);
-        let gain = power_gain::<L, FUSED>(&squares::<L, FUSED>(&u), self.floor2, self.inverse_floor2);
-        let mut current = currents::<L, FUSED>(&self.power, &u, &gain);
-        self.close(&mut current);
-        current
+        let gain = power_gain(u.square(), self.floor2, self.inverse_floor2);
+        self.close(currents(&self.power, u, gain))
     }
 }
 
-impl<L: Lane> Mixed<L> {
+impl Mixed {
     /// Current drawn from each conductor at these node voltages.
     #[inline(always)]
-    pub fn current<const FUSED: bool>(&self, v: &Slots<L>) -> Slots<L> {
+    pub fn current<Q: Quad>(&self, v: Phasors<Q>) -> Phasors<Q> {
         let u = self.star.across(v);
-        let square = squares::<L, FUSED>(&u);
-        let gain = power_gain::<L, FUSED>(&square, self.star.floor2, self.star.inverse_floor2);
-        let star = currents::<L, FUSED>(&self.star.power, &u, &gain);
-        let steady = currents::<L, FUSED>(&self.star_current, &u, &current_gain(&square, self.star.floor2));
-        let mut total = star.plus(steady);
-        self.star.close(&mut total);
+        let square = u.square();
+        let power =
+            currents(&self.star.power, u, power_gain(square, self.star.floor2, self.star.inverse_floor2));
+        let steady = currents(&self.star_current, u, current_gain(square, self.star.floor2));
+        let star = self.star.close(power.plus(steady));
 
-        let mut u = Slots::zero();
-        for i in 0..N {
-            u.re[i] = v.re[i].minus(v.re[(i + 1) % N]);
-            u.im[i] = v.im[i].minus(v.im[(i + 1) % N]);
-        }
-        let square = squares::<L, FUSED>(&u);
-        let gain = power_gain::<L, FUSED>(&square, self.delta_floor2, 1.0 / self.delta_floor2);
-        let power = currents::<L, FUSED>(&self.delta_power, &u, &gain);
-        let steady = currents::<L, FUSED>(&self.delta_current, &u, &current_gain(&square, self.delta_floor2));
+        let u = v.minus(v.each(Q::next_phase));
+        let square = u.square();
+        let power =
+            currents(&self.delta_power, u, power_gain(square, self.delta_floor2, 1.0 / self.delta_floor2));
+        let steady = currents(&self.delta_current, u, current_gain(square, self.delta_floor2));
         let delta = power.plus(steady);
-        for i in 0..N {
-            let before = (i + N - 1) % N;
-            total.re[i] = total.re[i].plus(delta.re[i].minus(delta.re[before]));
-            total.im[i] = total.im[i].plus(delta.im[i].minus(delta.im[before]));
-        }
-        total
+        star.plus(delta.minus(delta.each(Q::phase_before)))
     }
 }
 
@@ -142,8 +106,8 @@ impl<L: Lane> Mixed<L> {
 #[derive(Debug, Clone, Copy)]
 pub(super) enum Gathered {
     None,
-    Star(StarPower<f64>),
-    Mixed(Mixed<f64>),
+    Star(StarPower),
+    Mixed(Mixed),
 }
 
 impl Gathered {
@@ -180,13 +144,13 @@ impl Gathered {
     }
 }
 
-impl Mixed<f64> {
+impl Mixed {
     fn nothing(node: &Node, floor_pu: f64) -> Self {
         let floor = floor_pu.max(LEAST_FLOOR_PU) * node.nominal_phase_volts();
         let floor2 = floor * floor;
         let neutral = if node.conductors.has(Conductor::N) { 1.0 } else { 0.0 };
-        let star = StarPower { power: Slots::zero(), floor2, inverse_floor2: 1.0 / floor2, neutral };
-        let zero = Slots::zero();
+        let star = StarPower { power: Slots::ZERO, floor2, inverse_floor2: 1.0 / floor2, neutral };
+        let zero = Slots::ZERO;
         Mixed { star, star_current: zero, delta_power: zero, delta_current: zero, delta_floor2: 3.0 * floor2 }
     }
 }

@@ -67,11 +67,12 @@ impl Workspace<'_> {
     }
 
     /// Node whose voltage still moves most, per unit.
-    fn largest_change(&self, before: &[super::lanes::Slots<f64>]) -> NodeId {
+    fn largest_change(&self, before: &[super::lanes::Slots]) -> NodeId {
         let change = |position: usize| {
-            let d = self.state.volts[position].minus(before[position]);
-            let squares = (0..=N).map(|i| d.re[i] * d.re[i] + d.im[i] * d.im[i]);
-            squares.fold(0.0, f64::max) * self.layout.per_nominal2[position]
+            let (now, then) =
+                (PhaseVector::from(&self.state.volts[position]), PhaseVector::from(&before[position]));
+            let squares = (now - then).map(|d| d.norm_sqr());
+            squares.max() * self.layout.per_nominal2[position]
         };
         let worst = (1..self.state.volts.len()).max_by(|&a, &b| change(a).total_cmp(&change(b)));
         worst.map_or(self.network.supply.node, |position| self.nodes[position - 1])

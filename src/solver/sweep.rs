@@ -14,7 +14,7 @@
 //! Everything linear (charging, capacitors, electrodes, constant impedance) is in `beta`, `M`
 //! and `N`: see the module `branch`.
 
-use super::lanes::{Lane, Slots};
+use super::lanes::{Phasors, Quad, Slots};
 use super::workspace::{BranchWork, DenseData, Layout, LoadWork, Loads, Run, SeriesData, State, Workspace};
 
 const N: usize = 3;
@@ -31,7 +31,7 @@ pub struct Iterations {
 impl Workspace<'_> {
     /// Voltages without load current, and the loads evaluated at them: where an iteration starts.
     pub fn start_flat(&mut self) {
-        self.state.drop.fill(Slots::zero());
+        self.state.drop.fill(Slots::ZERO);
         self.passes(Passes::Down);
     }
 
@@ -58,12 +58,11 @@ impl Workspace<'_> {
         let Workspace { layout, loads, state, .. } = self;
         #[cfg(target_arch = "x86_64")]
         if std::arch::is_x86_feature_detected!("avx2") && std::arch::is_x86_feature_detected!("fma") {
-            // Safety: the features it is compiled for were found just above. It halves the time.
+            // Safety: the features it is compiled for were found just above.
             #[allow(unsafe_code)]
             return unsafe { passes_wide(layout, loads, state, which) };
         }
-        const FUSED: bool = cfg!(target_arch = "aarch64");
-        passes::<f64, FUSED>(layout, loads, state, which)
+        passes::<super::lanes::Plain>(layout, loads, state, which)
     }
 }
 
@@ -80,129 +79,152 @@ enum Passes {
 
 #[cfg(target_arch = "x86_64")]
 #[target_feature(enable = "avx2,fma")]
-fn passes_wide(layout: &Layout, loads: &Loads<f64>, state: &mut State<f64>, which: Passes) -> f64 {
-    passes::<f64, true>(layout, loads, state, which)
+fn passes_wide(layout: &Layout, loads: &Loads, state: &mut State, which: Passes) -> f64 {
+    passes::<super::lanes::Wide>(layout, loads, state, which)
 }
 
 #[inline(always)]
-fn passes<L: Lane, const FUSED: bool>(
-    layout: &Layout,
-    loads: &Loads<L>,
-    state: &mut State<L>,
-    which: Passes,
-) -> f64 {
+fn passes<Q: Quad>(layout: &Layout, loads: &Loads, state: &mut State, which: Passes) -> f64 {
     if which != Passes::Down {
         for run in layout.runs.iter().rev() {
             match run.branch {
-                BranchWork::Series => up_series::<L, FUSED>(layout, run, state),
-                BranchWork::Dense => up_dense::<L, FUSED>(layout, run, state),
+                BranchWork::Series => up_series::<Q>(layout, run, state),
+                BranchWork::Dense => up_dense::<Q>(layout, run, state),
             }
         }
     }
     let keep = which == Passes::Settle;
-    let mut change2 = L::splat(0.0);
+    let mut change2 = Q::splat(0.0);
     for run in &layout.runs {
+        let star = &loads.star[run.load_data.min(loads.star.len())..];
+        let mixed = &loads.mixed[run.load_data.min(loads.mixed.len())..];
         let largest = match run.load {
-            _ if keep => down::<L, FUSED>(layout, run, state, |_, _, _| {}),
-            LoadWork::None => down::<L, FUSED>(layout, run, state, |_, _, amps| *amps = Slots::zero()),
-            LoadWork::Star => {
-                let star = &loads.star[run.load_data..];
-                down::<L, FUSED>(layout, run, state, |k, volts, amps| *amps = star[k].current::<FUSED>(volts))
-            }
-            LoadWork::Mixed => {
-                let mixed = &loads.mixed[run.load_data..];
-                down::<L, FUSED>(layout, run, state, |k, volts, amps| {
-                    *amps = mixed[k].current::<FUSED>(volts)
-                })
-            }
+            _ if keep => down::<Q>(
+                layout,
+                run,
+                state,
+                #[inline(always)]
+                |_, _, _| {},
+            ),
+            LoadWork::None => down::<Q>(
+                layout,
+                run,
+                state,
+                #[inline(always)]
+                |_, _, amps| *amps = Slots::ZERO,
+            ),
+            LoadWork::Star => down::<Q>(
+                layout,
+                run,
+                state,
+                #[inline(always)]
+                |k, volts, amps| star[k].current(volts).store(amps),
+            ),
+            LoadWork::Mixed => down::<Q>(
+                layout,
+                run,
+                state,
+                #[inline(always)]
+                |k, volts, amps| mixed[k].current(volts).store(amps),
+            ),
         };
         change2 = largest.greater(change2);
     }
-    change2.greatest().sqrt()
+    change2.store().into_iter().fold(0.0, |a: f64, b| if a > b { a } else { b }).sqrt()
 }
 
 /// Series branches of a run, leaves first.
 #[inline(always)]
-fn up_series<L: Lane, const FUSED: bool>(layout: &Layout, run: &Run, state: &mut State<L>) {
+fn up_series<Q: Quad>(layout: &Layout, run: &Run, state: &mut State) {
     let data = &layout.series[run.branch_data..];
     for position in (run.start..run.end).rev() {
         let SeriesData { z, beta } = &data[position - run.start];
-        let amps = state.amps[position];
-        let drop = z.times::<L, FUSED>(&amps);
+        let amps = &state.amps[position];
+        let drop = z.times::<Q>(amps);
+        drop.store(&mut state.drop[position]);
+        // What goes up is K - beta w_n on the neutral alone.
+        let minus_beta = Phasors { re: Q::splat(-beta.re), im: Q::splat(-beta.im) };
+        let own = Phasors::load(amps);
+        let with_earth = own.plus_product(minus_beta, drop);
+        let passed =
+            Phasors { re: own.re.with_neutral(with_earth.re), im: own.im.with_neutral(with_earth.im) };
         let parent = &mut state.amps[layout.parent[position] as usize];
-        *parent = parent.plus(amps);
-        let (br, bi) = (L::splat(beta.re), L::splat(beta.im));
-        let (wr, wi) = (drop.re[N], drop.im[N]);
-        parent.re[N] = parent.re[N].minus(br.times(wr).minus(bi.times(wi)));
-        parent.im[N] = parent.im[N].minus(br.times(wi).plus(bi.times(wr)));
-        state.drop[position] = drop;
+        Phasors::load(parent).plus(passed).store(parent);
     }
 }
 
 /// General branches of a run, leaves first.
 #[inline(always)]
-fn up_dense<L: Lane, const FUSED: bool>(layout: &Layout, run: &Run, state: &mut State<L>) {
+fn up_dense<Q: Quad>(layout: &Layout, run: &Run, state: &mut State) {
     let data = &layout.dense[run.branch_data..];
     for position in (run.start..run.end).rev() {
-        let DenseData { m, n } = &data[position - run.start];
-        let amps = state.amps[position];
-        state.drop[position] = n.times::<L, FUSED>(&amps);
+        let DenseData { m_transposed, n, .. } = &data[position - run.start];
+        let amps = &state.amps[position];
+        n.times::<Q>(amps).store(&mut state.drop[position]);
+        let passed = m_transposed.times::<Q>(amps);
         let parent = &mut state.amps[layout.parent[position] as usize];
-        *parent = parent.plus(m.transposed_times::<L, FUSED>(&amps));
+        Phasors::load(parent).plus(passed).store(parent);
     }
 }
 
-/// Voltages of a run, and its loads by `draw`; gives the largest square of a change, per unit.
+/// Voltages of a run, and its loads by `draw`; gives the largest square of a change, per unit, slot by slot.
 #[inline(always)]
-fn down<L: Lane, const FUSED: bool>(
+fn down<Q: Quad>(
     layout: &Layout,
     run: &Run,
-    state: &mut State<L>,
-    draw: impl Fn(usize, &Slots<L>, &mut Slots<L>),
-) -> L {
+    state: &mut State,
+    draw: impl Fn(usize, Phasors<Q>, &mut Slots),
+) -> Q {
     match run.branch {
         BranchWork::Series => {
             let data = &layout.series[run.branch_data..];
-            down_by::<L>(layout, run, state, draw, |k, above, drop| {
-                let SeriesData { z, beta } = &data[k];
-                let mut volts = above.minus(*drop);
-                let (br, bi) = (L::splat(-beta.re), L::splat(-beta.im));
-                let (tr, ti) = (volts.re[N], volts.im[N]);
-                let (fr, fi) = (br.times(tr).minus(bi.times(ti)), br.times(ti).plus(bi.times(tr)));
-                z.add_column::<L, FUSED>(N, fr, fi, &mut volts);
-                volts
-            })
+            down_by(
+                layout,
+                run,
+                state,
+                draw,
+                #[inline(always)]
+                |k, above, drop| {
+                    let SeriesData { z, beta } = &data[k];
+                    let volts = Phasors::load(above).minus(drop);
+                    let minus_beta = Phasors { re: Q::splat(-beta.re), im: Q::splat(-beta.im) };
+                    let zero = Phasors { re: Q::splat(0.0), im: Q::splat(0.0) };
+                    let factor = zero.plus_product(minus_beta, volts.each(Q::neutral));
+                    volts.plus_product(factor, z.column(N))
+                },
+            )
         }
         BranchWork::Dense => {
             let data = &layout.dense[run.branch_data..];
-            down_by::<L>(layout, run, state, draw, |k, above, drop| {
-                data[k].m.times::<L, FUSED>(above).minus(*drop)
-            })
+            down_by(
+                layout,
+                run,
+                state,
+                draw,
+                #[inline(always)]
+                |k, above, drop| data[k].m.times(above).minus(drop),
+            )
         }
     }
 }
 
 #[inline(always)]
-fn down_by<L: Lane>(
+fn down_by<Q: Quad>(
     layout: &Layout,
     run: &Run,
-    state: &mut State<L>,
-    draw: impl Fn(usize, &Slots<L>, &mut Slots<L>),
-    volts_of: impl Fn(usize, &Slots<L>, &Slots<L>) -> Slots<L>,
-) -> L {
-    let mut largest = [L::splat(0.0); N + 1];
+    state: &mut State,
+    draw: impl Fn(usize, Phasors<Q>, &mut Slots),
+    volts_of: impl Fn(usize, &Slots, Phasors<Q>) -> Phasors<Q>,
+) -> Q {
+    let mut largest = Q::splat(0.0);
     for position in run.start..run.end {
-        let above = state.volts[layout.parent[position] as usize];
-        let volts = volts_of(position - run.start, &above, &state.drop[position]);
-        let change = volts.minus(state.volts[position]);
-        let scale = L::splat(layout.per_nominal2[position]);
-        for i in 0..=N {
-            let square = change.re[i].times(change.re[i]).plus(change.im[i].times(change.im[i]));
-            // The new value second: a NaN then stays and ends the iteration.
-            largest[i] = largest[i].greater(square.times(scale));
-        }
-        state.volts[position] = volts;
-        draw(position - run.start, &volts, &mut state.amps[position]);
+        let above = &state.volts[layout.parent[position] as usize];
+        let volts = volts_of(position - run.start, above, Phasors::load(&state.drop[position]));
+        let change = volts.minus(Phasors::load(&state.volts[position])).square();
+        // The new value second: one that is not a number then stays and ends the iteration.
+        largest = largest.greater(change.times(Q::splat(layout.per_nominal2[position])));
+        volts.store(&mut state.volts[position]);
+        draw(position - run.start, volts, &mut state.amps[position]);
     }
-    largest.into_iter().fold(L::splat(0.0), |a, b| a.greater(b))
+    largest
 }

@@ -48,10 +48,11 @@ pub(super) struct SeriesData {
     pub beta: Complex64,
 }
 
-/// Matrices `M` and `N` of a general branch.
+/// Matrices of a general branch: `M`, its transpose, and `N`.
 #[derive(Debug, Clone, Copy)]
 pub(super) struct DenseData {
     pub m: Columns,
+    pub m_transposed: Columns,
     pub n: Columns,
 }
 
@@ -69,20 +70,20 @@ pub(super) struct Layout {
 
 /// Load records in the order of the positions that have one.
 #[derive(Debug)]
-pub(super) struct Loads<L> {
-    pub star: Vec<StarPower<L>>,
-    pub mixed: Vec<Mixed<L>>,
+pub(super) struct Loads {
+    pub star: Vec<StarPower>,
+    pub mixed: Vec<Mixed>,
 }
 
 /// What the iteration changes, by position.
 #[derive(Debug)]
-pub(super) struct State<L> {
+pub(super) struct State {
     /// Voltages to earth, volts.
-    pub volts: Vec<Slots<L>>,
+    pub volts: Vec<Slots>,
     /// Load currents, own and gathered from below, amperes.
-    pub amps: Vec<Slots<L>>,
+    pub amps: Vec<Slots>,
     /// Voltage drop of the gathered currents in the branch, volts.
-    pub drop: Vec<Slots<L>>,
+    pub drop: Vec<Slots>,
 }
 
 /// Everything the iteration of one network touches. Building it allocates; iterating does not.
@@ -92,8 +93,8 @@ pub struct Workspace<'a> {
     /// Node at each position, from position 1.
     pub(super) nodes: Vec<NodeId>,
     pub(super) layout: Layout,
-    pub(super) loads: Loads<f64>,
-    pub(super) state: State<f64>,
+    pub(super) loads: Loads,
+    pub(super) state: State,
     /// Linear admittance each node sees, by node index: needed once, for the currents.
     pub(super) seen: Vec<Seen>,
 }
@@ -126,7 +127,7 @@ impl<'a> Workspace<'a> {
                 loads.push(gathered);
             }
         }
-        let zero = vec![Slots::zero(); count];
+        let zero = vec![Slots::ZERO; count];
         let mut state = State { volts: zero.clone(), amps: zero.clone(), drop: zero };
         state.volts[0] = Slots::from(&network.supply.held_volts);
         Ok(Workspace { network, nodes, layout, loads, state, seen })
@@ -135,7 +136,7 @@ impl<'a> Workspace<'a> {
 
 impl Layout {
     /// Takes a position into the last run, or begins a new one where its work differs.
-    fn extend_run(&mut self, position: usize, branch: BranchWork, load: LoadWork, loads: &Loads<f64>) {
+    fn extend_run(&mut self, position: usize, branch: BranchWork, load: LoadWork, loads: &Loads) {
         if let Some(run) = self.runs.last_mut()
             && (run.branch, run.load) == (branch, load)
         {
@@ -158,13 +159,14 @@ impl Layout {
         match eliminated {
             Eliminated::Series { z, beta } => self.series.push(SeriesData { z: Columns::from(&z), beta }),
             Eliminated::Dense { m, n } => {
-                self.dense.push(DenseData { m: Columns::from(&m), n: Columns::from(&n) })
+                let m_transposed = Columns::from(&m.transpose());
+                self.dense.push(DenseData { m: Columns::from(&m), m_transposed, n: Columns::from(&n) });
             }
         }
     }
 }
 
-impl Loads<f64> {
+impl Loads {
     fn push(&mut self, gathered: &Gathered) {
         match gathered {
             Gathered::None => {}
