@@ -13,6 +13,10 @@ use crate::network::{
 
 const N: usize = 3;
 
+/// Impedance of a closed switch.
+pub(super) static NO_IMPEDANCE: PhaseMatrix =
+    PhaseMatrix::from_array_storage(nalgebra::ArrayStorage([[ZERO; 4]; 4]));
+
 /// Admittance seen looking into a node, away from the source.
 #[derive(Debug, Clone)]
 pub(super) enum Seen {
@@ -63,9 +67,10 @@ impl Seen {
 }
 
 /// A branch seen from its end towards the source.
-pub(super) enum TwoPort {
-    /// Series impedance, ohms (zero for a switch).
-    Series(PhaseMatrix),
+#[allow(clippy::large_enum_variant)] // one at a time, on the stack
+pub(super) enum TwoPort<'a> {
+    /// Series impedance: ohms per metre, times a length in metres (0 for a switch, 1 where the matrix is the whole).
+    Series { per_m: &'a PhaseMatrix, length_m: f64 },
     /// Ideal ratio: `V_i = A V_p`, `I_p = A^T J_i`.
     Ratio(PhaseMatrix),
     /// Terminal admittances, siemens; `far` is the set of conductors at the node's end.
@@ -75,9 +80,15 @@ pub(super) enum TwoPort {
 /// What eliminating a node leaves for the iteration.
 pub(super) enum Eliminated {
     /// `M = 1 - beta z_n e_n^T`, `N = Z - beta z_n z_n^T`: nothing but the neutral is shunted below.
-    Series { z: PhaseMatrix, beta: Complex64 },
+    Series { beta: Complex64 },
     /// General `M` and `N`.
-    Dense { m: PhaseMatrix, n: PhaseMatrix },
+    Dense(Box<[PhaseMatrix; 2]>),
+}
+
+impl Eliminated {
+    fn dense(m: PhaseMatrix, n: PhaseMatrix) -> Eliminated {
+        Eliminated::Dense(Box::new([m, n]))
+    }
 }
 
 /// The linear part has no solution at the node.
@@ -85,35 +96,35 @@ pub(super) enum Eliminated {
 pub(super) struct SingularNode;
 
 /// Eliminates a node that sees `below` across its branch; gives the iteration's matrices and what the parent sees.
-pub(super) fn eliminate(port: &TwoPort, below: &Seen) -> Result<(Eliminated, Seen), SingularNode> {
+pub(super) fn eliminate(port: &TwoPort<'_>, below: &Seen) -> Result<(Eliminated, Seen), SingularNode> {
     match port {
-        TwoPort::Series(z) => series(z, below),
+        TwoPort::Series { per_m, length_m } => series(per_m, *length_m, below),
         TwoPort::Ratio(a) => {
             let seen = match below {
                 // Row n of A is that of the identity, so the scalar stays one.
                 Seen::Neutral(alpha) => Seen::Neutral(*alpha),
                 Seen::Full(y) => Seen::Full(Box::new(a.transpose() * **y * a)),
             };
-            Ok((Eliminated::Dense { m: *a, n: PhaseMatrix::zeros() }, seen))
+            Ok((Eliminated::dense(*a, PhaseMatrix::zeros()), seen))
         }
         TwoPort::Terminals { near, across, own, far } => terminals(near, across, own, *far, below),
     }
 }
 
 /// `W = (1 + Z Y)^-1`, `M = W`, `N = W Z`, `P = Y W`; a scalar where only the neutral is shunted.
-fn series(z: &PhaseMatrix, below: &Seen) -> Result<(Eliminated, Seen), SingularNode> {
+fn series(per_m: &PhaseMatrix, length_m: f64, below: &Seen) -> Result<(Eliminated, Seen), SingularNode> {
     match below {
         Seen::Neutral(alpha) => {
-            let factor = ONE + alpha * z[(N, N)];
-            let beta = alpha / factor;
+            let beta = alpha / (ONE + alpha * per_m[(N, N)] * length_m);
             if !beta.is_finite() {
                 return Err(SingularNode);
             }
-            Ok((Eliminated::Series { z: *z, beta }, Seen::Neutral(beta)))
+            Ok((Eliminated::Series { beta }, Seen::Neutral(beta)))
         }
         Seen::Full(y) => {
+            let z = per_m * Complex64::from(length_m);
             let w = invert(&(PhaseMatrix::identity() + z * **y))?;
-            Ok((Eliminated::Dense { m: w, n: w * z }, Seen::Full(Box::new(**y * w))))
+            Ok((Eliminated::dense(w, w * z), Seen::Full(Box::new(**y * w))))
         }
     }
 }
@@ -140,7 +151,7 @@ fn terminals(
     // Without shunts below or inside, P is zero but for rounding; dropping that keeps the feeder above scalar.
     let size = |y: &PhaseMatrix| y.iter().map(|x| x.norm()).fold(0.0, f64::max);
     let seen = if size(&p) <= 1e-12 * size(near) { Seen::nothing() } else { Seen::Full(Box::new(p)) };
-    Ok((Eliminated::Dense { m, n: w }, seen))
+    Ok((Eliminated::dense(m, w), seen))
 }
 
 fn invert(a: &PhaseMatrix) -> Result<PhaseMatrix, SingularNode> {
@@ -149,10 +160,17 @@ fn invert(a: &PhaseMatrix) -> Result<PhaseMatrix, SingularNode> {
 }
 
 /// The two-port of a branch, seen from its upstream end.
-pub(super) fn two_port(network: &Network, branch: &Branch, upstream: End) -> Result<TwoPort, SingularNode> {
+pub(super) fn two_port<'a>(
+    network: &'a Network,
+    branch: &Branch,
+    upstream: End,
+) -> Result<TwoPort<'a>, SingularNode> {
     Ok(match &branch.kind {
-        BranchKind::Line(line) => TwoPort::Series(network.line_impedance(line)),
-        BranchKind::Switch => TwoPort::Series(PhaseMatrix::zeros()),
+        BranchKind::Line(line) => TwoPort::Series {
+            per_m: &network.construction(line).z_per_m,
+            length_m: line.length_m / f64::from(line.sets),
+        },
+        BranchKind::Switch => TwoPort::Series { per_m: &NO_IMPEDANCE, length_m: 0.0 },
         BranchKind::Regulator(bank) => {
             let ratio = bank.ratio_matrix(branch.from_conductors.has_neutral());
             TwoPort::Ratio(match upstream {

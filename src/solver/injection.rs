@@ -104,6 +104,7 @@ impl Mixed {
 
 /// The loads of one node gathered, or none.
 #[derive(Debug, Clone, Copy)]
+#[allow(clippy::large_enum_variant)] // moved once into arrays of their own
 pub(super) enum Gathered {
     None,
     Star(StarPower),

@@ -138,9 +138,13 @@ fn passes<Q: Quad>(layout: &Layout, loads: &Loads, state: &mut State, which: Pas
 fn up_series<Q: Quad>(layout: &Layout, run: &Run, state: &mut State) {
     let data = &layout.series[run.branch_data..];
     for position in (run.start..run.end).rev() {
-        let SeriesData { z, beta } = &data[position - run.start];
+        let SeriesData { table, length_m, beta } = &data[position - run.start];
         let amps = &state.amps[position];
-        let drop = z.times::<Q>(amps);
+        let length = Q::splat(*length_m);
+        let drop = layout.table[*table as usize].times::<Q>(amps).each(
+            #[inline(always)]
+            |part| part.times(length),
+        );
         drop.store(&mut state.drop[position]);
         // What goes up is K - beta w_n on the neutral alone.
         let minus_beta = Phasors { re: Q::splat(-beta.re), im: Q::splat(-beta.im) };
@@ -185,12 +189,13 @@ fn down<Q: Quad>(
                 draw,
                 #[inline(always)]
                 |k, above, drop| {
-                    let SeriesData { z, beta } = &data[k];
+                    let SeriesData { table, length_m, beta } = &data[k];
                     let volts = Phasors::load(above).minus(drop);
-                    let minus_beta = Phasors { re: Q::splat(-beta.re), im: Q::splat(-beta.im) };
+                    let minus_beta =
+                        Phasors { re: Q::splat(-beta.re * length_m), im: Q::splat(-beta.im * length_m) };
                     let zero = Phasors { re: Q::splat(0.0), im: Q::splat(0.0) };
                     let factor = zero.plus_product(minus_beta, volts.each(Q::neutral));
-                    volts.plus_product(factor, z.column(N))
+                    volts.plus_product(factor, layout.table[*table as usize].column(N))
                 },
             )
         }

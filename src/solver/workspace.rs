@@ -6,7 +6,8 @@
 //! equal work, so the passes have no choice to make a node.
 
 use super::branch::{
-    Eliminated, Seen, SingularNode, TwoPort, eliminate, shunt_matrix, supply_impedance, two_port,
+    Eliminated, NO_IMPEDANCE, Seen, SingularNode, TwoPort, eliminate, shunt_matrix, supply_impedance,
+    two_port,
 };
 use super::injection::{Gathered, Mixed, StarPower, gather};
 use super::lanes::{Columns, Slots};
@@ -41,10 +42,13 @@ pub(super) struct Run {
     pub load_data: usize,
 }
 
-/// Matrices of a series branch: impedance, ohms, and the neutral's `beta`, siemens.
+/// A series branch: its impedance per metre in [`Layout::table`], its length, and the neutral's
+/// `beta`, siemens. A table a construction instead of a matrix a branch: the sweep of a long
+/// feeder waits for memory, not for arithmetic.
 #[derive(Debug, Clone, Copy)]
 pub(super) struct SeriesData {
-    pub z: Columns,
+    pub table: u32,
+    pub length_m: f64,
     pub beta: Complex64,
 }
 
@@ -62,6 +66,8 @@ pub(super) struct Layout {
     /// Position of the parent of each position.
     pub parent: Vec<u32>,
     pub runs: Vec<Run>,
+    /// Impedances per metre: one a construction, then that of switches, then the supply's whole.
+    pub table: Vec<Columns>,
     pub series: Vec<SeriesData>,
     pub dense: Vec<DenseData>,
     /// Inverse square of nominal phase voltage by position, 1/V^2.
@@ -113,6 +119,7 @@ impl<'a> Workspace<'a> {
         let mut layout = Layout {
             parent: parents(network, &nodes),
             runs: Vec::new(),
+            table: impedance_table(network),
             series: Vec::with_capacity(count),
             dense: Vec::new(),
             per_nominal2: vec![1.0; count],
@@ -123,7 +130,7 @@ impl<'a> Workspace<'a> {
             if let Some(eliminated) = ports[id.index()].take() {
                 let gathered = &gathered[id.index()];
                 layout.extend_run(i + 1, branch_work(&eliminated), load_work(gathered), &loads);
-                layout.push(eliminated);
+                layout.push(eliminated, series_impedance(network, *id));
                 loads.push(gathered);
             }
         }
@@ -155,14 +162,32 @@ impl Layout {
         self.runs.push(Run { branch, load, start: position, end: position + 1, branch_data, load_data });
     }
 
-    fn push(&mut self, eliminated: Eliminated) {
+    fn push(&mut self, eliminated: Eliminated, (table, length_m): (u32, f64)) {
         match eliminated {
-            Eliminated::Series { z, beta } => self.series.push(SeriesData { z: Columns::from(&z), beta }),
-            Eliminated::Dense { m, n } => {
+            Eliminated::Series { beta } => self.series.push(SeriesData { table, length_m, beta }),
+            Eliminated::Dense(matrices) => {
+                let [m, n] = *matrices;
                 let m_transposed = Columns::from(&m.transpose());
                 self.dense.push(DenseData { m: Columns::from(&m), m_transposed, n: Columns::from(&n) });
             }
         }
+    }
+}
+
+/// Impedances of [`Layout::table`].
+fn impedance_table(network: &Network) -> Vec<Columns> {
+    let constructions = network.constructions.iter().map(|c| &c.z_per_m);
+    let others = [NO_IMPEDANCE, supply_impedance(network)];
+    constructions.chain(&others).map(Columns::from).collect()
+}
+
+/// Entry of [`Layout::table`] and length of the branch that feeds a node; of no meaning for one without series impedance.
+fn series_impedance(network: &Network, id: NodeId) -> (u32, f64) {
+    let lines = network.constructions.len() as u32;
+    match network.feeds[id.index()].map(|feed| &network.branch(feed.branch).kind) {
+        Some(BranchKind::Line(line)) => (line.construction.0, line.length_m / f64::from(line.sets)),
+        Some(_) => (lines, 0.0),
+        None => (lines + 1, 1.0),
     }
 }
 
@@ -179,7 +204,7 @@ impl Loads {
 fn branch_work(eliminated: &Eliminated) -> BranchWork {
     match eliminated {
         Eliminated::Series { .. } => BranchWork::Series,
-        Eliminated::Dense { .. } => BranchWork::Dense,
+        Eliminated::Dense(_) => BranchWork::Dense,
     }
 }
 
@@ -233,6 +258,7 @@ pub(super) fn own_shunts(network: &Network) -> Vec<Seen> {
 
 /// Eliminates from the leaves to the supply; `seen` ends as what every node sees.
 fn eliminate_all(network: &Network, seen: &mut [Seen]) -> Result<Vec<Option<Eliminated>>, NodeId> {
+    let supply = supply_impedance(network);
     let mut ports: Vec<Option<Eliminated>> = Vec::new();
     ports.resize_with(network.nodes.len(), || None);
     for &id in network.order.iter().rev() {
@@ -242,7 +268,7 @@ fn eliminate_all(network: &Network, seen: &mut [Seen]) -> Result<Vec<Option<Elim
                 let port = two_port(network, network.branch(feed.branch), feed.upstream).map_err(singular)?;
                 (port, Some(feed.parent))
             }
-            None => (TwoPort::Series(supply_impedance(network)), None),
+            None => (TwoPort::Series { per_m: &supply, length_m: 1.0 }, None),
         };
         let (eliminated, above) = eliminate(&port, &seen[id.index()]).map_err(singular)?;
         ports[id.index()] = Some(eliminated);
