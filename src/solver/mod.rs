@@ -4,6 +4,7 @@
 //! in the module `sweep`, which is the one to read first; `residual` checks every solution with
 //! code of its own.
 
+mod accelerate;
 mod branch;
 mod injection;
 mod lanes;

@@ -14,6 +14,7 @@
 //! Everything linear (charging, capacitors, electrodes, constant impedance) is in `beta`, `M`
 //! and `N`: see the module `branch`.
 
+use super::accelerate::Acceleration;
 use super::lanes::{Phasors, Quad, Slots};
 use super::workspace::{BranchWork, DenseData, Layout, LoadWork, Loads, Run, SeriesData, State, Workspace};
 
@@ -36,12 +37,24 @@ impl Workspace<'_> {
     }
 
     /// Iterates until no node voltage changes by more than `tolerance_pu` of nominal, or `limit` iterations are made.
+    ///
+    /// Once the rate of convergence foretells more than [`PLAIN_SWEEPS`] sweeps, the iteration is accelerated.
     pub fn iterate(&mut self, tolerance_pu: f64, limit: usize) -> Iterations {
         let mut done = Iterations { count: 0, change_pu: f64::INFINITY };
+        let mut acceleration: Option<Acceleration> = None;
         while done.count < limit && done.change_pu > tolerance_pu {
-            done.change_pu = self.passes(Passes::UpAndDown);
-            done.count += 1;
-            if !done.change_pu.is_finite() {
+            if let Some(acceleration) = &mut acceleration {
+                acceleration.before(self);
+            }
+            let change_pu = self.passes(Passes::UpAndDown);
+            if let Some(acceleration) = &mut acceleration {
+                acceleration.after(self);
+            } else if done.count + 1 >= RATE_KNOWN && foreseen(&done, change_pu, tolerance_pu) > PLAIN_SWEEPS
+            {
+                acceleration = Some(Acceleration::new(self.state.amps.len()));
+            }
+            done = Iterations { count: done.count + 1, change_pu };
+            if !change_pu.is_finite() {
                 break;
             }
         }
@@ -66,6 +79,21 @@ impl Workspace<'_> {
     }
 }
 
+/// Sweeps that are left plain; where more are foreseen, acceleration pays for its dot products.
+const PLAIN_SWEEPS: f64 = 20.0;
+/// Sweeps after which the rate of convergence can be told.
+const RATE_KNOWN: usize = 4;
+
+/// Sweeps foreseen in all, from the last two changes.
+fn foreseen(before: &Iterations, change_pu: f64, tolerance_pu: f64) -> f64 {
+    let rate = (change_pu / before.change_pu).ln();
+    if rate >= 0.0 {
+        f64::INFINITY
+    } else {
+        before.count as f64 + 1.0 + (tolerance_pu / change_pu).ln() / rate
+    }
+}
+
 /// Which passes to make.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 enum Passes {
@@ -86,6 +114,8 @@ fn passes_wide(layout: &Layout, loads: &Loads, state: &mut State, which: Passes)
 #[inline(always)]
 fn passes<Q: Quad>(layout: &Layout, loads: &Loads, state: &mut State, which: Passes) -> f64 {
     if which != Passes::Down {
+        // What gathers at the supply is its own affair; left there it would grow from sweep to sweep.
+        state.amps[0] = Slots::ZERO;
         for run in layout.runs.iter().rev() {
             match run.branch {
                 BranchWork::Series => up_series::<Q>(layout, run, state),
