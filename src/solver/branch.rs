@@ -5,7 +5,7 @@
 //! `Y_p += P`, `K_p += M^T K_i` (every element here is reciprocal, so the transpose of `M`
 //! carries currents upwards).
 
-use crate::math::{Complex64, ONE, PhaseMatrix, ZERO};
+use crate::math::{Complex64, ONE, PhaseMatrix, PhaseVector, ZERO};
 use crate::network::{
     Branch, BranchKind, Conductor, Conductors, Connection, End, Network, NeutralPoint, Transformer,
     VectorGroup, Winding,
@@ -83,6 +83,17 @@ pub(super) enum Eliminated {
     Series { beta: Complex64 },
     /// General `M` and `N`.
     Dense(Box<[PhaseMatrix; 2]>),
+    /// Behind a winding that hardly anything holds to earth: `M`, `N` and a rank-one part of its own.
+    Floating(Box<Floating>),
+}
+
+/// `N = n + q q^T scale`: what moves all conductors of a side together is kept apart. Its `scale`
+/// may be a million times the rest, and multiplied out it would drown the voltages between conductors.
+pub(super) struct Floating {
+    pub m: PhaseMatrix,
+    pub n: PhaseMatrix,
+    pub q: PhaseVector,
+    pub scale: Complex64,
 }
 
 impl Eliminated {
@@ -137,21 +148,72 @@ fn terminals(
     far: Conductors,
     below: &Seen,
 ) -> Result<(Eliminated, Seen), SingularNode> {
-    let mut sum = own + below.matrix();
-    let absent = || Conductor::ALL.into_iter().filter(|&c| !far.has(c)).map(Conductor::slot);
-    for k in absent() {
-        sum[(k, k)] = ONE;
-    }
-    let mut w = invert(&sum)?;
-    for k in absent() {
-        w[(k, k)] = ZERO;
-    }
-    let m = -(w * across.transpose());
+    let together = PhaseVector::from_fn(|i, _| if far.iter().any(|c| c.slot() == i) { ONE } else { ZERO });
+    let isolated = (own * together).norm() <= 1e-12 * own.norm();
+    let (eliminated, m) = if isolated {
+        let parts = isolated_winding(across, own, far, &together, below)?;
+        if (parts.scale.norm()) * parts.q.norm_squared() > 1e3 * parts.n.norm() {
+            let m = parts.m;
+            (Eliminated::Floating(Box::new(parts)), m)
+        } else {
+            (Eliminated::dense(parts.m, parts.n + parts.q * parts.q.transpose() * parts.scale), parts.m)
+        }
+    } else {
+        let w = invert_over(&(own + below.matrix()), far)?;
+        let m = -(w * across.transpose());
+        (Eliminated::dense(m, w), m)
+    };
     let p = near + across * m;
     // Without shunts below or inside, P is zero but for rounding; dropping that keeps the feeder above scalar.
     let size = |y: &PhaseMatrix| y.iter().map(|x| x.norm()).fold(0.0, f64::max);
     let seen = if size(&p) <= 1e-12 * size(near) { Seen::nothing() } else { Seen::Full(Box::new(p)) };
-    Ok((Eliminated::dense(m, w), seen))
+    Ok((eliminated, seen))
+}
+
+/// Inverse over the conductors of a set, zero elsewhere.
+fn invert_over(y: &PhaseMatrix, set: Conductors) -> Result<PhaseMatrix, SingularNode> {
+    let mut y = *y;
+    let absent = || Conductor::ALL.into_iter().filter(|&c| !set.has(c)).map(Conductor::slot);
+    for k in absent() {
+        y[(k, k)] = ONE;
+    }
+    let mut w = invert(&y)?;
+    for k in absent() {
+        w[(k, k)] = ZERO;
+    }
+    Ok(w)
+}
+
+/// The far side of a winding joined to earth nowhere itself (`Y_own u = 0`, `u` all conductors together).
+///
+/// In the basis of differences `D` against one conductor, and `u`: `A = D^T S D`, `S = Y_own + Y`,
+/// `r = Y u`, `q = u - D A^-1 D^T r`, `1/scale = u^T r - r^T D A^-1 D^T r`; then
+/// `S^-1 = D A^-1 D^T + q q^T scale`, and `M = -(D A^-1 D^T - q r^T D A^-1 D^T scale) Y_across^T`.
+fn isolated_winding(
+    across: &PhaseMatrix,
+    own: &PhaseMatrix,
+    far: Conductors,
+    together: &PhaseVector,
+    below: &Seen,
+) -> Result<Floating, SingularNode> {
+    let below = below.matrix();
+    let last = far.iter().last().ok_or(SingularNode)?;
+    let others = far.without(last);
+    let mut d = PhaseMatrix::zeros();
+    for c in others.iter() {
+        d[(c.slot(), c.slot())] = ONE;
+        d[(last.slot(), c.slot())] = -ONE;
+    }
+    let a = invert_over(&(d.transpose() * (own + below) * d), others)?;
+    let n = d * a * d.transpose();
+    let r = below * together;
+    let q = together - n * r;
+    let scale = (together.transpose() * r - r.transpose() * n * r)[(0, 0)].inv();
+    if !scale.is_finite() {
+        return Err(SingularNode);
+    }
+    let m = -((n - q * (r.transpose() * n) * scale) * across.transpose());
+    Ok(Floating { m, n, q, scale })
 }
 
 fn invert(a: &PhaseMatrix) -> Result<PhaseMatrix, SingularNode> {

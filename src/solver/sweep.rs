@@ -16,7 +16,11 @@
 
 use super::accelerate::Acceleration;
 use super::lanes::{Phasors, Quad, Slots};
-use super::workspace::{BranchWork, DenseData, Layout, LoadWork, Loads, Run, SeriesData, State, Workspace};
+use super::workspace::{
+    BranchWork, DenseData, FloatingData, Layout, LoadWork, Loads, Run, SeriesData, State, Workspace,
+};
+
+use crate::math::PhaseVector;
 
 const N: usize = 3;
 
@@ -120,6 +124,7 @@ fn passes<Q: Quad>(layout: &Layout, loads: &Loads, state: &mut State, which: Pas
             match run.branch {
                 BranchWork::Series => up_series::<Q>(layout, run, state),
                 BranchWork::Dense => up_dense::<Q>(layout, run, state),
+                BranchWork::Floating => up_floating::<Q>(layout, run, state),
             }
         }
     }
@@ -192,12 +197,29 @@ fn up_series<Q: Quad>(layout: &Layout, run: &Run, state: &mut State) {
 fn up_dense<Q: Quad>(layout: &Layout, run: &Run, state: &mut State) {
     let data = &layout.dense[run.branch_data..];
     for position in (run.start..run.end).rev() {
-        let DenseData { m_transposed, n, .. } = &data[position - run.start];
-        let amps = &state.amps[position];
-        n.times::<Q>(amps).store(&mut state.drop[position]);
-        let passed = m_transposed.times::<Q>(amps);
-        let parent = &mut state.amps[layout.parent[position] as usize];
-        Phasors::load(parent).plus(passed).store(parent);
+        pass_up::<Q>(&data[position - run.start], layout.parent[position], position, state);
+    }
+}
+
+#[inline(always)]
+fn pass_up<Q: Quad>(data: &DenseData, parent: u32, position: usize, state: &mut State) {
+    let amps = &state.amps[position];
+    data.n.times::<Q>(amps).store(&mut state.drop[position]);
+    let passed = data.m_transposed.times::<Q>(amps);
+    let parent = &mut state.amps[parent as usize];
+    Phasors::load(parent).plus(passed).store(parent);
+}
+
+/// Branches into floating sides, leaves first: `w = N K + q (q^T K) scale`.
+#[inline(always)]
+fn up_floating<Q: Quad>(layout: &Layout, run: &Run, state: &mut State) {
+    let data = &layout.floating[run.branch_data..];
+    for position in (run.start..run.end).rev() {
+        let FloatingData { dense, q, scale } = &data[position - run.start];
+        pass_up::<Q>(dense, layout.parent[position], position, state);
+        let together = q.dot(&PhaseVector::from(&state.amps[position])) * scale;
+        let drop = PhaseVector::from(&state.drop[position]) + q * together;
+        state.drop[position] = Slots::from(&drop);
     }
 }
 
@@ -238,6 +260,17 @@ fn down<Q: Quad>(
                 draw,
                 #[inline(always)]
                 |k, above, drop| data[k].m.times(above).minus(drop),
+            )
+        }
+        BranchWork::Floating => {
+            let data = &layout.floating[run.branch_data..];
+            down_by(
+                layout,
+                run,
+                state,
+                draw,
+                #[inline(always)]
+                |k, above, drop| data[k].dense.m.times(above).minus(drop),
             )
         }
     }

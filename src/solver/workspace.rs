@@ -6,12 +6,12 @@
 //! equal work, so the passes have no choice to make a node.
 
 use super::branch::{
-    Eliminated, NO_IMPEDANCE, Seen, SingularNode, TwoPort, eliminate, shunt_matrix, supply_impedance,
-    two_port,
+    Eliminated, Floating, NO_IMPEDANCE, Seen, SingularNode, TwoPort, eliminate, shunt_matrix,
+    supply_impedance, two_port,
 };
 use super::injection::{Gathered, Mixed, StarPower, gather};
 use super::lanes::{Columns, Slots};
-use crate::math::{Complex64, PhaseMatrix, ZERO};
+use crate::math::{Complex64, PhaseMatrix, PhaseVector, ZERO};
 use crate::network::{BranchKind, LoadModel, Network, NodeId};
 
 /// Work at the branch of a position.
@@ -21,6 +21,8 @@ pub(super) enum BranchWork {
     Series,
     /// General matrices.
     Dense,
+    /// General matrices with a rank-one part of its own.
+    Floating,
 }
 
 /// Work at the loads of a position.
@@ -60,6 +62,14 @@ pub(super) struct DenseData {
     pub n: Columns,
 }
 
+/// Matrices of a branch behind which nothing holds the conductors firmly to earth (see [`super::branch::Floating`]).
+#[derive(Debug, Clone, Copy)]
+pub(super) struct FloatingData {
+    pub dense: DenseData,
+    pub q: PhaseVector,
+    pub scale: Complex64,
+}
+
 /// Tree and matrices, fixed while loads and voltages change.
 #[derive(Debug)]
 pub(super) struct Layout {
@@ -70,6 +80,7 @@ pub(super) struct Layout {
     pub table: Vec<Columns>,
     pub series: Vec<SeriesData>,
     pub dense: Vec<DenseData>,
+    pub floating: Vec<FloatingData>,
     /// Inverse square of nominal phase voltage by position, 1/V^2.
     pub per_nominal2: Vec<f64>,
 }
@@ -122,6 +133,7 @@ impl<'a> Workspace<'a> {
             table: impedance_table(network),
             series: Vec::with_capacity(count),
             dense: Vec::new(),
+            floating: Vec::new(),
             per_nominal2: vec![1.0; count],
         };
         let mut loads = Loads { star: Vec::with_capacity(count), mixed: Vec::new() };
@@ -153,6 +165,7 @@ impl Layout {
         let branch_data = match branch {
             BranchWork::Series => self.series.len(),
             BranchWork::Dense => self.dense.len(),
+            BranchWork::Floating => self.floating.len(),
         };
         let load_data = match load {
             LoadWork::None => 0,
@@ -167,10 +180,19 @@ impl Layout {
             Eliminated::Series { beta } => self.series.push(SeriesData { table, length_m, beta }),
             Eliminated::Dense(matrices) => {
                 let [m, n] = *matrices;
-                let m_transposed = Columns::from(&m.transpose());
-                self.dense.push(DenseData { m: Columns::from(&m), m_transposed, n: Columns::from(&n) });
+                self.dense.push(DenseData::new(&m, &n));
+            }
+            Eliminated::Floating(parts) => {
+                let Floating { m, n, q, scale } = *parts;
+                self.floating.push(FloatingData { dense: DenseData::new(&m, &n), q, scale });
             }
         }
+    }
+}
+
+impl DenseData {
+    fn new(m: &PhaseMatrix, n: &PhaseMatrix) -> Self {
+        DenseData { m: Columns::from(m), m_transposed: Columns::from(&m.transpose()), n: Columns::from(n) }
     }
 }
 
@@ -205,6 +227,7 @@ fn branch_work(eliminated: &Eliminated) -> BranchWork {
     match eliminated {
         Eliminated::Series { .. } => BranchWork::Series,
         Eliminated::Dense(_) => BranchWork::Dense,
+        Eliminated::Floating(_) => BranchWork::Floating,
     }
 }
 
