@@ -168,3 +168,104 @@ pub(super) fn gather(network: &Network) -> Vec<Gathered> {
     }
     gathered
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::math::{PhaseVector, polar};
+    use crate::network::Conductors;
+    use crate::solver::lanes::Plain;
+    use crate::solver::load_current;
+
+    fn node(conductors: Conductors) -> Node {
+        let name = "n".into();
+        Node { name, conductors, nominal_volts: 400.0, earth_ohm: None, reference_siemens: 0.0, xy: None }
+    }
+
+    fn drawn(gathered: &Gathered, volts: &PhaseVector) -> PhaseVector {
+        let volts = Phasors::<Plain>::load(&Slots::from(volts));
+        let mut amps = Slots::ZERO;
+        match gathered {
+            Gathered::None => {}
+            Gathered::Star(star) => star.current(volts).store(&mut amps),
+            Gathered::Mixed(mixed) => mixed.current(volts).store(&mut amps),
+        }
+        PhaseVector::from(&amps)
+    }
+
+    /// The same by the formula of one element at a time.
+    fn expected(
+        node: &Node,
+        connection: Connection,
+        model: LoadModel,
+        s: Complex64,
+        volts: &PhaseVector,
+    ) -> PhaseVector {
+        let mut amps = PhaseVector::zeros();
+        let each = s / connection.elements() as f64;
+        for (p, q) in connection.pairs() {
+            let base = if node.conductors.has(q) { volts[q.slot()] } else { Complex64::default() };
+            let current =
+                load_current(model, each, node.nominal_across(connection), 0.7, volts[p.slot()] - base);
+            amps[p.slot()] += current;
+            if node.conductors.has(q) {
+                amps[q.slot()] -= current;
+            }
+        }
+        amps
+    }
+
+    #[test]
+    fn gathered_loads_draw_what_their_elements_draw() {
+        let s = Complex64::new(9000.0, 4000.0);
+        // The second set of voltages lies partly below the floor of 0.7.
+        for scale in [1.0, 0.6] {
+            let volts = PhaseVector::from_column_slice(&[
+                polar(225.0 * scale, 0.1),
+                polar(240.0, -2.0),
+                polar(210.0 * scale, 2.2),
+                polar(12.0, 0.7),
+            ]);
+            for conductors in [Conductors::ABC, Conductors::ABCN] {
+                let node = node(conductors);
+                for phases in [Conductors::ABC, Conductors::NONE.with(Conductor::C)] {
+                    for connection in [Connection::Star(phases), Connection::Delta(phases)] {
+                        for model in [LoadModel::Power, LoadModel::Current] {
+                            let mut gathered = Gathered::None;
+                            gathered.add(&node, 0.7, connection, model, s);
+                            let want = expected(&node, connection, model, s, &volts);
+                            let got = drawn(&gathered, &volts);
+                            assert!((got - want).norm() < 1e-11, "{connection} {model:?}: {got} {want}");
+                        }
+                    }
+                }
+            }
+        }
+    }
+
+    #[test]
+    fn loads_of_a_node_add_up_whatever_their_order() {
+        let node = node(Conductors::ABCN);
+        let volts = PhaseVector::from_column_slice(&[
+            polar(225.0, 0.1),
+            polar(240.0, -2.0),
+            polar(210.0, 2.2),
+            polar(12.0, 0.7),
+        ]);
+        let all = [
+            (Connection::Star(Conductors::ABC), LoadModel::Power, Complex64::new(3000.0, 1000.0)),
+            (Connection::Delta(Conductors::ABC), LoadModel::Power, Complex64::new(5000.0, -700.0)),
+            (
+                Connection::Star(Conductors::NONE.with(Conductor::B)),
+                LoadModel::Current,
+                Complex64::new(800.0, 90.0),
+            ),
+        ];
+        let want: PhaseVector = all.iter().map(|&(c, m, s)| expected(&node, c, m, s, &volts)).sum();
+        for order in [[0, 1, 2], [2, 1, 0], [1, 0, 2]] {
+            let mut gathered = Gathered::None;
+            order.into_iter().for_each(|i: usize| gathered.add(&node, 0.7, all[i].0, all[i].1, all[i].2));
+            assert!((drawn(&gathered, &volts) - want).norm() < 1e-11);
+        }
+    }
+}

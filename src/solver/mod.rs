@@ -13,6 +13,7 @@ mod residual;
 mod settings;
 mod solution;
 mod sweep;
+mod terminals;
 mod workspace;
 
 pub use residual::{Residual, load_current, residual};

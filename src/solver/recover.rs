@@ -1,10 +1,11 @@
 //! From the last iterate to a solution: currents at every branch end, the independent check, the status.
 
-use super::branch::{Seen, Terminals};
+use super::branch::Seen;
 use super::residual::residual;
 use super::settings::Settings;
 use super::solution::{Solution, Status};
 use super::sweep::Iterations;
+use super::terminals::Terminals;
 use super::workspace::Workspace;
 use crate::math::{Complex64, PhaseVector};
 use crate::network::{BranchKind, Conductors, End, Feed, NodeId};
