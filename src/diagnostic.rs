@@ -5,6 +5,7 @@
 //! column, spreadsheet cell, the text found) and always carries a cure.
 
 use std::collections::HashMap;
+use std::fmt;
 use std::sync::Arc;
 
 /// How bad a diagnostic is.
@@ -95,7 +96,7 @@ impl Sources {
         let file = self.file(origin.file)?;
         let index = column.and_then(|c| file.columns.iter().position(|k| k == c));
         let start = (origin.offset as usize).min(file.text.len());
-        let row_text = file.text.get(start..).unwrap_or("").lines().next().unwrap_or("");
+        let row_text = file.text.get(start..).unwrap_or("").split(['\n', '\r']).next().unwrap_or("");
         Some(Place {
             file: file.name.clone(),
             row: origin.line,
@@ -125,7 +126,7 @@ pub fn sheet_column(mut index: usize) -> String {
 pub struct Place {
     /// File name without its folder.
     pub file: String,
-    /// Line in the file, from 1.
+    /// Line in the file, from 1; 0 for the file as a whole.
     pub row: u32,
     /// Column name as in the header.
     pub column: Option<String>,
@@ -282,6 +283,51 @@ pub struct Diagnostic {
     pub message: String,
     /// How to mend it.
     pub cure: String,
+}
+
+/// Longest piece of a cell that a message shows, in characters.
+const SHOWN_LETTERS: usize = 60;
+
+impl fmt::Display for Place {
+    /// `lines.csv:14`, or `lines.csv` for the file as a whole.
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        f.write_str(&self.file)?;
+        if self.row > 0 { write!(f, ":{}", self.row) } else { Ok(()) }
+    }
+}
+
+impl fmt::Display for Diagnostic {
+    /// One line: `lines.csv:14: error[bad-number] length_km (cell D14) "12x": message; cure`.
+    ///
+    /// Parts that the place does not have are left out.
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        if let Some(place) = &self.place {
+            write!(f, "{place}: ")?;
+        }
+        write!(f, "{}[{}]", self.severity.word(), self.code.text())?;
+        if let Some(place) = &self.place {
+            if let Some(column) = &place.column {
+                write!(f, " {column}")?;
+            }
+            if let Some(cell) = &place.cell {
+                write!(f, " (cell {cell})")?;
+            }
+            if let Some(found) = &place.found {
+                write!(f, " \"{}\"", one_line(found))?;
+            }
+        }
+        write!(f, ": {}; {}", self.message.trim_end_matches('.'), self.cure.trim_end_matches('.'))
+    }
+}
+
+/// Text fit for one line: control characters shown as spaces, long text cut.
+fn one_line(text: &str) -> String {
+    let plain = |c: char| if c.is_control() { ' ' } else { c };
+    let mut shown: String = text.chars().take(SHOWN_LETTERS).map(plain).collect();
+    if text.chars().nth(SHOWN_LETTERS).is_some() {
+        shown.push('…');
+    }
+    shown
 }
 
 /// All diagnostics of one run, in the order they were found.
