@@ -32,12 +32,8 @@ pub fn read(files: &[(&str, &str)]) -> Reading {
 
 /// The good network with some files replaced or added; an empty text takes a file away.
 pub fn read_with(changed: &[(&str, &str)]) -> Reading {
-    let mut files = vec![
-        ("source.csv", SOURCE),
-        ("lines.csv", LINES),
-        ("loads.csv", LOADS),
-        ("matrices.csv", MATRICES),
-    ];
+    let mut files =
+        vec![("source.csv", SOURCE), ("lines.csv", LINES), ("loads.csv", LOADS), ("matrices.csv", MATRICES)];
     files.retain(|(name, _)| !changed.iter().any(|(other, _)| other == name));
     files.extend(changed);
     read(&files)
