@@ -1,4 +1,5 @@
 //! Unbalanced three-phase feeder studies.
+#![deny(clippy::print_stdout, clippy::print_stderr)]
 #![cfg_attr(not(test), warn(clippy::unwrap_used))]
 
 pub mod catalog;

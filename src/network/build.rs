@@ -1,8 +1,15 @@
-//! From a [`Draft`] to a [`Network`].
+//! From a [`Draft`] to a [`Network`]: the only way to make one.
 
+use super::branches::Branches;
+use super::carry::{Carried, carry};
 use super::draft::Draft;
-use super::model::Network;
-use crate::diagnostic::Diagnostics;
+use super::earth::{Given, references};
+use super::graph::{Graph, Tree, grow, place, report_isolated_switches, report_unfed};
+use super::model::{BranchId, Feed, Network, Node, NodeId, SOLID_EARTH_OHM};
+use super::supply::{Supply, circulant, held_volts, sequence_impedance};
+use super::validate;
+use crate::diagnostic::{Code, Diagnostics, Origin, nearest};
+use crate::math::PhaseMatrix;
 
 /// What [`build`] gives: the network where there are no errors, and all remarks.
 #[derive(Debug)]
@@ -15,8 +22,166 @@ pub struct Built {
 
 /// Checks a draft as a whole and joins it to a network.
 ///
-/// Every fault is gathered; a network comes out only where none is an error.
+/// Every fault is gathered; a network comes out only where none is an error. Parts without
+/// supply because of an open switch or line are left out with a warning.
 pub fn build(draft: &Draft) -> Built {
-    let _ = draft;
-    Built { network: None, diagnostics: Diagnostics::new() }
+    let mut diagnostics = Diagnostics::new();
+    let network = Builder { draft, diagnostics: &mut diagnostics }.run();
+    let network = if diagnostics.has_errors() { None } else { network };
+    Built { network, diagnostics }
+}
+
+pub(super) struct Builder<'a> {
+    pub(super) draft: &'a Draft,
+    pub(super) diagnostics: &'a mut Diagnostics,
+}
+
+/// The draft joined up: graph, tree and what each node carries.
+pub(super) struct Joined {
+    pub(super) graph: Graph,
+    pub(super) tree: Tree,
+    pub(super) carried: Carried,
+    pub(super) given: Given,
+    pub(super) references: Vec<f64>,
+}
+
+impl Builder<'_> {
+    fn run(&mut self) -> Option<Network> {
+        let draft = self.draft;
+        validate::constructions(draft, self.diagnostics);
+        let graph = Graph::new(draft, self.diagnostics);
+        let root = self.supply_node();
+        report_isolated_switches(draft, &graph, root, self.diagnostics);
+        let line_constructions = self.line_constructions();
+        let electrodes = self.electrodes(&graph);
+        let root = root?;
+        let tree = grow(draft, &graph, root, self.diagnostics);
+        report_unfed(draft, &graph, &tree, self.diagnostics);
+        let carried = carry(draft, &graph, &tree, &electrodes, self.diagnostics);
+        self.check_electrodes(&graph, &tree, &carried);
+        let given = Given { electrodes, line_constructions };
+        let references = references(draft, &graph, &tree, &carried, &given, self.diagnostics);
+        self.assemble(&Joined { graph, tree, carried, given, references })
+    }
+
+    /// Index of the supply node: always 0, where there is a supply.
+    fn supply_node(&mut self) -> Option<usize> {
+        let Some((first, others)) = self.draft.supplies.split_first() else {
+            self.diagnostics.error(
+                Code::NoSource,
+                None,
+                "the network has no source",
+                "give its node and voltage in one row of source.csv",
+            );
+            return None;
+        };
+        for other in others {
+            self.diagnostics.error(
+                Code::TwoSources,
+                place(self.draft, other.origin, "node", &other.node),
+                format!("a second source, at node {}; the first is at node {}", other.node, first.node),
+                "keep one row in source.csv: a radial feeder has one supply",
+            );
+        }
+        validate::supply(self.draft, first, self.diagnostics);
+        Some(0)
+    }
+
+    /// Electrode of each node of the graph; data for a node that does not exist is an error.
+    fn electrodes(&mut self, graph: &Graph) -> Vec<Option<f64>> {
+        let mut electrodes = vec![None; graph.names.len()];
+        for record in &self.draft.nodes {
+            match graph.index.get(&record.node) {
+                Some(&node) => electrodes[node] = record.earth_ohm.map(|ohm| ohm.max(SOLID_EARTH_OHM)),
+                None => self.unknown_node(graph, &record.node, record.origin, "nodes.csv names"),
+            }
+        }
+        electrodes
+    }
+
+    pub(super) fn unknown_node(&mut self, graph: &Graph, node: &str, origin: Option<Origin>, who: &str) {
+        let cure = match nearest(node, graph.names.iter().map(|n| &**n)) {
+            Some(near) => format!("did you mean {near:?}?"),
+            None => "join it with a line, switch or transformer, or take the row out".to_string(),
+        };
+        let message = format!("{who} node {node:?}, but no line, switch or transformer connects it");
+        self.diagnostics.error(Code::UnknownNode, place(self.draft, origin, "node", node), message, cure);
+    }
+
+    fn check_electrodes(&mut self, graph: &Graph, tree: &Tree, carried: &Carried) {
+        for record in &self.draft.nodes {
+            let Some(&node) = graph.index.get(&record.node) else { continue };
+            let Some(ohm) = record.earth_ohm else { continue };
+            if tree.fed[node] && !carried.conductors[node].has_neutral() {
+                self.diagnostics.error(
+                    Code::NoNeutral,
+                    place(self.draft, record.origin, "earth_ohm", &ohm.to_string()),
+                    format!(
+                        "node {} has an electrode but no neutral; it carries {}",
+                        record.node, carried.conductors[node]
+                    ),
+                    "carry n on the line that feeds it, or leave earth_ohm blank",
+                );
+            }
+        }
+    }
+
+    fn assemble(&mut self, joined: &Joined) -> Option<Network> {
+        let (graph, tree) = (&joined.graph, &joined.tree);
+        let mut new_node = vec![None; graph.names.len()];
+        let mut nodes = Vec::with_capacity(tree.order.len());
+        for node in (0..graph.names.len()).filter(|&n| tree.fed[n]) {
+            new_node[node] = Some(NodeId(nodes.len() as u32));
+            nodes.push(Node {
+                name: graph.names[node].clone(),
+                conductors: joined.carried.conductors[node],
+                nominal_volts: joined.carried.nominal_volts[node],
+                earth_ohm: joined.given.electrodes[node],
+                reference_siemens: joined.references[node],
+                xy: None,
+            });
+        }
+        for record in &self.draft.nodes {
+            if let Some(id) = graph.index.get(&record.node).and_then(|&n| new_node[n]) {
+                nodes[id.index()].xy = record.xy;
+            }
+        }
+        let parts = self.branches(joined, &new_node)?;
+        let supply = self.supply(new_node[0]?)?;
+        let feeds = feeds(tree, &new_node, &parts.new_branch, nodes.len());
+        let order = tree.order.iter().filter_map(|&n| new_node[n]).collect();
+        let (loads, capacitors) = self.shunts(joined, &new_node, &parts);
+        let study = self.draft.study.clone();
+        let Branches { branches, constructions, .. } = parts;
+        Some(Network { study, supply, nodes, branches, constructions, loads, capacitors, feeds, order })
+    }
+
+    fn supply(&self, node: NodeId) -> Option<Supply> {
+        let record = self.draft.supplies.first()?;
+        let impedance =
+            sequence_impedance(record).map_or_else(PhaseMatrix::zeros, |(z1, z0)| circulant(z1, z0));
+        Some(Supply {
+            node,
+            nominal_volts: record.nominal_volts,
+            held_volts: held_volts(record),
+            impedance,
+            earth_ohm: record.earth_ohm,
+        })
+    }
+}
+
+fn feeds(
+    tree: &Tree,
+    new_node: &[Option<NodeId>],
+    new_branch: &[Option<BranchId>],
+    count: usize,
+) -> Vec<Option<Feed>> {
+    let mut feeds = vec![None; count];
+    for (node, raw) in tree.feeds.iter().enumerate() {
+        let (Some(id), Some(raw)) = (new_node[node], raw) else { continue };
+        if let (Some(branch), Some(parent)) = (new_branch[raw.branch], new_node[raw.parent]) {
+            feeds[id.index()] = Some(Feed { branch, parent, upstream: raw.upstream });
+        }
+    }
+    feeds
 }

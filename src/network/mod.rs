@@ -1,15 +1,21 @@
 //! What a feeder is made of: the records as written ([`Draft`]), the checked network
 //! ([`Network`]), and the one way from the first to the second ([`build`]).
 
+mod branches;
 mod build;
+mod carry;
 mod conductor;
 mod draft;
+mod earth;
+mod graph;
 mod load;
 mod model;
 mod regulator;
+mod shunts;
 mod study;
 mod supply;
 mod transformer;
+mod validate;
 
 pub use build::{Built, build};
 pub use conductor::{Conductor, Conductors, Connection};

@@ -1,10 +1,26 @@
 //! Solves a [`crate::network::Network`]: voltages and currents of every conductor.
+//!
+//! [`Workspace::new`] lays the network out and eliminates all that is linear; the iteration is
+//! in the module `sweep`, which is the one to read first; `residual` checks every solution with
+//! code of its own.
 
+mod accelerate;
+mod branch;
+mod injection;
+mod lanes;
+mod recover;
+mod residual;
 mod settings;
 mod solution;
+mod sweep;
+mod terminals;
+mod workspace;
 
+pub use residual::{Residual, load_current, residual};
 pub use settings::Settings;
 pub use solution::{Solution, Status};
+pub use sweep::Iterations;
+pub use workspace::Workspace;
 
 use crate::network::Network;
 
@@ -12,6 +28,10 @@ use crate::network::Network;
 ///
 /// Never fails: look at [`Solution::status`] before using a number of it.
 pub fn solve(network: &Network, settings: &Settings) -> Solution {
-    let _ = settings;
-    Solution::unsolved(network)
+    match Workspace::new(network) {
+        Ok(mut workspace) => workspace.solve(settings),
+        Err(node) => {
+            Solution { status: Status::Singular(node), worst_node: node, ..Solution::unsolved(network) }
+        }
+    }
 }

@@ -1,0 +1,426 @@
+//! Which nodes there are, what joins them, and the tree that hangs from the supply.
+
+use std::collections::{HashMap, HashSet, VecDeque};
+
+use super::conductor::Conductors;
+use super::draft::{Draft, Name, SwitchState};
+use super::model::End;
+use crate::diagnostic::{Code, Diagnostics, Origin, Place};
+
+/// What a branch of the draft is: the kind and the index of its record.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum RawKind {
+    Line(usize),
+    Switch(usize),
+    Transformer(usize),
+    /// Index of a bank in [`Graph::banks`].
+    Bank(usize),
+}
+
+/// A branch of the draft between two numbered nodes.
+#[derive(Debug, Clone)]
+pub(super) struct RawBranch {
+    pub name: Name,
+    pub from: usize,
+    pub to: usize,
+    pub kind: RawKind,
+    pub state: SwitchState,
+    pub origin: Option<Origin>,
+}
+
+impl RawBranch {
+    /// The node at the other end of the branch.
+    pub fn other(&self, node: usize) -> usize {
+        if self.from == node { self.to } else { self.from }
+    }
+
+    /// `line L1`, `switch S3`: how messages call it.
+    pub fn called(&self) -> String {
+        let word = match self.kind {
+            RawKind::Line(_) => "line",
+            RawKind::Switch(_) => "switch",
+            RawKind::Transformer(_) => "transformer",
+            RawKind::Bank(_) => "regulator",
+        };
+        format!("{word} {}", self.name)
+    }
+}
+
+/// Nodes, branches and adjacency of a draft.
+pub(super) struct Graph {
+    pub names: Vec<Name>,
+    pub index: HashMap<Name, usize>,
+    pub branches: Vec<RawBranch>,
+    /// Regulator records of each bank.
+    pub banks: Vec<Vec<usize>>,
+    /// Branches at each node, open ones too: those of node `i` are `ends[first[i]..first[i + 1]]`.
+    first: Vec<u32>,
+    ends: Vec<u32>,
+}
+
+impl Graph {
+    /// Numbers the nodes in the order their names first appear and collects the branches.
+    pub fn new(draft: &Draft, diagnostics: &mut Diagnostics) -> Graph {
+        let mut graph = Graph {
+            names: Vec::new(),
+            index: HashMap::with_capacity(draft.lines.len() + 16),
+            branches: Vec::with_capacity(draft.lines.len() + draft.transformers.len() + 16),
+            banks: Vec::new(),
+            first: Vec::new(),
+            ends: Vec::new(),
+        };
+        for supply in &draft.supplies {
+            graph.number(&supply.node);
+        }
+        graph.add_branches(draft, diagnostics);
+        graph.connect();
+        graph
+    }
+
+    fn add_branches(&mut self, draft: &Draft, diagnostics: &mut Diagnostics) {
+        let mut add = |graph: &mut Graph, name: &Name, ends: [&Name; 2], kind, state, origin| {
+            if ends[0] == ends[1] {
+                diagnostics.error(
+                    Code::SelfLoop,
+                    place(draft, origin, "to", ends[1]),
+                    format!("both ends of {name} are node {}", ends[1]),
+                    "give the node at its other end in `to`",
+                );
+                return;
+            }
+            let (from, to) = (graph.number(ends[0]), graph.number(ends[1]));
+            graph.branches.push(RawBranch { name: name.clone(), from, to, kind, state, origin });
+        };
+        for (i, r) in draft.lines.iter().enumerate() {
+            add(self, &r.line, [&r.from, &r.to], RawKind::Line(i), r.state, r.origin);
+        }
+        for (i, r) in draft.switches.iter().enumerate() {
+            add(self, &r.switch, [&r.from, &r.to], RawKind::Switch(i), r.state, r.origin);
+        }
+        for (i, r) in draft.transformers.iter().enumerate() {
+            let kind = RawKind::Transformer(i);
+            add(self, &r.transformer, [&r.from, &r.to], kind, SwitchState::Closed, r.origin);
+        }
+        let mut banks: HashMap<(&Name, &Name), usize> = HashMap::new();
+        for (i, r) in draft.regulators.iter().enumerate() {
+            if let Some(&bank) = banks.get(&(&r.from, &r.to)) {
+                self.banks[bank].push(i);
+                continue;
+            }
+            let bank = self.banks.len();
+            self.banks.push(vec![i]);
+            banks.insert((&r.from, &r.to), bank);
+            add(self, &r.regulator, [&r.from, &r.to], RawKind::Bank(bank), SwitchState::Closed, r.origin);
+        }
+    }
+
+    fn number(&mut self, name: &Name) -> usize {
+        if let Some(&node) = self.index.get(name) {
+            return node;
+        }
+        let node = self.names.len();
+        self.names.push(name.clone());
+        self.index.insert(name.clone(), node);
+        node
+    }
+
+    fn connect(&mut self) {
+        self.first = vec![0; self.names.len() + 1];
+        for branch in &self.branches {
+            self.first[branch.from + 1] += 1;
+            self.first[branch.to + 1] += 1;
+        }
+        for i in 1..self.first.len() {
+            self.first[i] += self.first[i - 1];
+        }
+        let mut next = self.first.clone();
+        self.ends = vec![0; 2 * self.branches.len()];
+        for (b, branch) in self.branches.iter().enumerate() {
+            for node in [branch.from, branch.to] {
+                self.ends[next[node] as usize] = b as u32;
+                next[node] += 1;
+            }
+        }
+    }
+
+    /// Indices of the branches at a node, open ones too.
+    pub fn at(&self, node: usize) -> impl Iterator<Item = usize> + '_ {
+        self.ends[self.first[node] as usize..self.first[node + 1] as usize].iter().map(|&b| b as usize)
+    }
+
+    /// Indices of the closed branches at a node.
+    pub fn closed_at(&self, node: usize) -> impl Iterator<Item = usize> + '_ {
+        self.at(node).filter(|&b| self.branches[b].state == SwitchState::Closed)
+    }
+}
+
+/// The place of a record's cell, where the draft came from files.
+pub(super) fn place(draft: &Draft, origin: Option<Origin>, column: &str, found: &str) -> Option<Place> {
+    draft.sources.place(origin?, Some(column), Some(found))
+}
+
+/// How a node of the graph is fed.
+#[derive(Debug, Clone, Copy)]
+pub(super) struct RawFeed {
+    pub branch: usize,
+    pub parent: usize,
+    pub upstream: End,
+}
+
+/// The tree from the supply: nodes breadth first, and how each is fed.
+pub(super) struct Tree {
+    pub order: Vec<usize>,
+    pub feeds: Vec<Option<RawFeed>>,
+    pub fed: Vec<bool>,
+}
+
+/// Walks outwards from the supply over closed branches; every branch that closes a ring is an error.
+pub(super) fn grow(draft: &Draft, graph: &Graph, root: usize, diagnostics: &mut Diagnostics) -> Tree {
+    let count = graph.names.len();
+    let mut tree = Tree { order: vec![root], feeds: vec![None; count], fed: vec![false; count] };
+    tree.fed[root] = true;
+    let mut closing = HashSet::new();
+    let mut next = 0;
+    while next < tree.order.len() {
+        let node = tree.order[next];
+        next += 1;
+        for b in graph.closed_at(node) {
+            if tree.feeds[node].is_some_and(|f| f.branch == b) {
+                continue;
+            }
+            let branch = &graph.branches[b];
+            let child = branch.other(node);
+            if tree.fed[child] {
+                if closing.insert(b) {
+                    report_ring(draft, graph, &tree, b, diagnostics);
+                }
+                continue;
+            }
+            tree.fed[child] = true;
+            let upstream = if branch.from == node { End::From } else { End::To };
+            tree.feeds[child] = Some(RawFeed { branch: b, parent: node, upstream });
+            tree.order.push(child);
+        }
+    }
+    tree
+}
+
+fn report_ring(draft: &Draft, graph: &Graph, tree: &Tree, closing: usize, diagnostics: &mut Diagnostics) {
+    let branch = &graph.branches[closing];
+    let path = |mut node: usize| {
+        let mut branches = Vec::new();
+        while let Some(feed) = tree.feeds[node] {
+            branches.push(feed.branch);
+            node = feed.parent;
+        }
+        branches
+    };
+    let (mut one, mut two) = (path(branch.from), path(branch.to));
+    while one.last().is_some() && one.last() == two.last() {
+        one.pop();
+        two.pop();
+    }
+    two.reverse();
+    let ring: Vec<String> =
+        [closing].into_iter().chain(one).chain(two).map(|b| graph.branches[b].called()).collect();
+    let called = branch.called();
+    diagnostics.error(
+        Code::ClosedRing,
+        place(draft, branch.origin, "to", &graph.names[branch.to]),
+        format!("{called} closes a ring: {}", shorten(&ring, 12)),
+        "open one of them (`state` open), or take it out; only radial feeders are solved",
+    );
+}
+
+/// Joins names with commas, the first `most` of them, and counts the rest.
+pub(super) fn shorten(names: &[String], most: usize) -> String {
+    let shown = names.iter().take(most).cloned().collect::<Vec<_>>().join(", ");
+    match names.len().saturating_sub(most) {
+        0 => shown,
+        more => format!("{shown} and {more} more"),
+    }
+}
+
+/// Reports every part without supply: behind an open switch or line a warning, else an error.
+pub(super) fn report_unfed(draft: &Draft, graph: &Graph, tree: &Tree, diagnostics: &mut Diagnostics) {
+    if tree.order.len() == graph.names.len() {
+        return;
+    }
+    let part = parts(graph, tree);
+    let behind_open = reached_over_open(graph, tree, &part);
+    let watts = unfed_watts(draft, graph, &part);
+    let alike: HashMap<String, usize> =
+        tree.order.iter().map(|&node| (plain(&graph.names[node]), node)).collect();
+    let count = part.iter().flatten().max().map_or(0, |&p| p + 1);
+    let mut members: Vec<Vec<usize>> = vec![Vec::new(); count];
+    for (node, p) in part.iter().enumerate() {
+        if let Some(p) = p {
+            members[*p].push(node);
+        }
+    }
+    for (p, nodes) in members.iter().enumerate() {
+        if nodes.len() == 1 && graph.at(nodes[0]).all(|b| is_switch(graph, b)) && watts[p] == 0.0 {
+            continue; // nothing but a switch end: told as an isolated switch
+        }
+        let names: Vec<String> = nodes.iter().map(|&n| graph.names[n].to_string()).collect();
+        let what = match names.len() {
+            1 => format!("node {}", names[0]),
+            n => format!("{n} nodes ({})", shorten(&names, 6)),
+        };
+        let load =
+            if watts[p] == 0.0 { String::new() } else { format!(", with {} kW of load,", watts[p] / 1e3) };
+        let at = nodes.first().and_then(|&n| first_place(draft, graph, n));
+        if let Some(open) = behind_open[p] {
+            let called = graph.branches[open].called();
+            diagnostics.warning(
+                Code::SwitchedOff,
+                place(draft, graph.branches[open].origin, "state", "open"),
+                format!("{what}{load} have no supply: {called} is open"),
+                format!("they are left out; close {called} to feed them"),
+            );
+            continue;
+        }
+        let slip = nodes.iter().find_map(|&n| {
+            let near = *alike.get(&plain(&graph.names[n]))?;
+            Some(format!("did you mean node {:?} where {:?} is written?", graph.names[near], graph.names[n]))
+        });
+        let cure = slip.unwrap_or_else(|| {
+            "join them to the feeder with a line, switch or transformer, or take them out".into()
+        });
+        diagnostics.error(
+            Code::NotFed,
+            at,
+            format!("{what}{load} not fed from the source: no closed path leads there"),
+            cure,
+        );
+    }
+}
+
+fn is_switch(graph: &Graph, branch: usize) -> bool {
+    matches!(graph.branches[branch].kind, RawKind::Switch(_))
+}
+
+/// A name without case and spaces, to find slips.
+fn plain(name: &str) -> String {
+    name.chars().filter(|c| !c.is_whitespace()).flat_map(char::to_lowercase).collect()
+}
+
+/// Where a node is first written: the row of its first branch.
+fn first_place(draft: &Draft, graph: &Graph, node: usize) -> Option<Place> {
+    let branch = &graph.branches[graph.at(node).next()?];
+    let column = if branch.from == node { "from" } else { "to" };
+    place(draft, branch.origin, column, &graph.names[node])
+}
+
+/// Number of the unfed part each node belongs to; `None` where it is fed.
+fn parts(graph: &Graph, tree: &Tree) -> Vec<Option<usize>> {
+    let mut part = vec![None; graph.names.len()];
+    let mut count = 0;
+    for start in 0..graph.names.len() {
+        if tree.fed[start] || part[start].is_some() {
+            continue;
+        }
+        part[start] = Some(count);
+        let mut queue = VecDeque::from([start]);
+        while let Some(node) = queue.pop_front() {
+            for b in graph.closed_at(node) {
+                let other = graph.branches[b].other(node);
+                if part[other].is_none() {
+                    part[other] = Some(count);
+                    queue.push_back(other);
+                }
+            }
+        }
+        count += 1;
+    }
+    part
+}
+
+/// For each unfed part, an open branch that would feed it, directly or through other parts.
+fn reached_over_open(graph: &Graph, tree: &Tree, part: &[Option<usize>]) -> Vec<Option<usize>> {
+    let count = part.iter().flatten().max().map_or(0, |&p| p + 1);
+    let mut by = vec![None; count];
+    let open: Vec<usize> =
+        (0..graph.branches.len()).filter(|&b| graph.branches[b].state == SwitchState::Open).collect();
+    let mut found = true;
+    while found {
+        found = false;
+        for &b in &open {
+            let RawBranch { from, to, .. } = graph.branches[b];
+            let live = |node: usize| tree.fed[node] || part[node].is_some_and(|p| by[p].is_some());
+            let (one, two) = (live(from), live(to));
+            if one == two {
+                continue;
+            }
+            if let Some(p) = part[if one { to } else { from }] {
+                by[p] = Some(b);
+                found = true;
+            }
+        }
+    }
+    by
+}
+
+fn unfed_watts(draft: &Draft, graph: &Graph, part: &[Option<usize>]) -> Vec<f64> {
+    let count = part.iter().flatten().max().map_or(0, |&p| p + 1);
+    let mut watts = vec![0.0; count];
+    for load in &draft.loads {
+        if let super::draft::LoadSite::Node(name) = &load.site
+            && let Some(p) = graph.index.get(name).and_then(|&node| part[node])
+        {
+            watts[p] += load.watts;
+        }
+    }
+    watts
+}
+
+/// Warns of switches with an end where nothing else connects.
+pub(super) fn report_isolated_switches(
+    draft: &Draft,
+    graph: &Graph,
+    root: Option<usize>,
+    diagnostics: &mut Diagnostics,
+) {
+    if graph.branches.iter().all(|b| !matches!(b.kind, RawKind::Switch(_))) {
+        return;
+    }
+    let mut used: HashSet<usize> = root.into_iter().collect();
+    let sites = draft.loads.iter().filter_map(|l| match &l.site {
+        super::draft::LoadSite::Node(name) => Some(name),
+        super::draft::LoadSite::Line(_) => None,
+    });
+    used.extend(
+        sites.chain(draft.capacitors.iter().map(|c| &c.node)).filter_map(|n| graph.index.get(n).copied()),
+    );
+    for (b, branch) in graph.branches.iter().enumerate() {
+        if !is_switch(graph, b) {
+            continue;
+        }
+        let lonely: Vec<usize> = [branch.from, branch.to]
+            .into_iter()
+            .filter(|&n| graph.at(n).count() == 1 && !used.contains(&n))
+            .collect();
+        if let Some(&node) = lonely.first() {
+            let column = if branch.from == node { "from" } else { "to" };
+            diagnostics.warning(
+                Code::IsolatedSwitch,
+                place(draft, branch.origin, column, &graph.names[node]),
+                format!(
+                    "{} leads nowhere: nothing else connects at node {}",
+                    branch.called(),
+                    graph.names[node]
+                ),
+                "check the node's name, or take the switch out",
+            );
+        }
+    }
+}
+
+/// Conductors a record of the draft names for a branch; `None` for transformers and banks.
+pub(super) fn written_conductors(draft: &Draft, kind: RawKind) -> Option<Conductors> {
+    match kind {
+        RawKind::Line(i) => Some(draft.lines[i].conductors),
+        RawKind::Switch(i) => Some(draft.switches[i].conductors),
+        RawKind::Transformer(_) | RawKind::Bank(_) => None,
+    }
+}

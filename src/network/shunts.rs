@@ -1,0 +1,175 @@
+//! Loads and capacitors of the network from the records of the draft, each checked against its node.
+
+use super::branches::Branches;
+use super::build::{Builder, Joined};
+use super::conductor::{Conductors, Connection};
+use super::draft::{LoadSite, SwitchState};
+use super::graph::place;
+use super::load::{Capacitor, Load, LoadPlace};
+use super::model::NodeId;
+use crate::diagnostic::{Code, Origin, nearest};
+
+impl Builder<'_> {
+    pub(super) fn shunts(
+        &mut self,
+        joined: &Joined,
+        new_node: &[Option<NodeId>],
+        parts: &Branches,
+    ) -> (Vec<Load>, Vec<Capacitor>) {
+        let mut loads = Vec::with_capacity(self.draft.loads.len());
+        for record in &self.draft.loads {
+            let origin = record.origin;
+            let place = match &record.site {
+                LoadSite::Node(name) => {
+                    let who = format!("load {} is at", record.load);
+                    let Some(node) = self.shunt_node(joined, name, &who, record.connection, origin) else {
+                        continue;
+                    };
+                    new_node[node].map(LoadPlace::Node)
+                }
+                LoadSite::Line(name) => {
+                    self.load_line(joined, parts, name, &record.load, record.connection, origin)
+                }
+            };
+            let Some(place) = place else { continue };
+            loads.push(Load {
+                name: record.load.clone(),
+                place,
+                connection: record.connection,
+                watts: record.watts,
+                vars: record.vars,
+                model: record.model,
+            });
+        }
+        let capacitors = self.capacitors(joined, new_node);
+        if loads.is_empty() && !self.diagnostics.has_errors() {
+            self.diagnostics.warning(
+                Code::NoLoad,
+                None,
+                "nothing on the feeder draws power",
+                "give loads in loads.csv",
+            );
+        }
+        (loads, capacitors)
+    }
+
+    fn capacitors(&mut self, joined: &Joined, new_node: &[Option<NodeId>]) -> Vec<Capacitor> {
+        let mut capacitors = Vec::new();
+        for record in &self.draft.capacitors {
+            let who = format!("capacitor {} is at", record.capacitor);
+            let Some(node) = self.shunt_node(joined, &record.node, &who, record.connection, record.origin)
+            else {
+                continue;
+            };
+            let (Some(id), SwitchState::Closed) = (new_node[node], record.state) else { continue };
+            let line_to_line = joined.carried.nominal_volts[node];
+            let nominal = match record.connection {
+                Connection::Star(_) => line_to_line / crate::units::SQRT_3,
+                Connection::Delta(_) => line_to_line,
+            };
+            let rated_volts = record.rated_volts.unwrap_or(nominal);
+            if !(0.75..=1.4).contains(&(rated_volts / nominal)) {
+                self.diagnostics.error(
+                    Code::VoltageMismatch,
+                    place(self.draft, record.origin, "kv", &(rated_volts / 1e3).to_string()),
+                    format!(
+                        "capacitor {} is rated {} kV across each unit, which is joined at {:.4} kV",
+                        record.capacitor,
+                        rated_volts / 1e3,
+                        nominal / 1e3
+                    ),
+                    "give the voltage across one unit: phase-to-neutral for a star, line-to-line for a delta",
+                );
+            }
+            capacitors.push(Capacitor {
+                name: record.capacitor.clone(),
+                node: id,
+                connection: record.connection,
+                vars: record.vars,
+                rated_volts,
+            });
+        }
+        capacitors
+    }
+
+    /// The graph node of a load or capacitor, its conductors checked; `None` where it cannot be placed.
+    fn shunt_node(
+        &mut self,
+        joined: &Joined,
+        name: &str,
+        who: &str,
+        connection: Connection,
+        origin: Option<Origin>,
+    ) -> Option<usize> {
+        let Some(&node) = joined.graph.index.get(name) else {
+            self.unknown_node(&joined.graph, name, origin, who);
+            return None;
+        };
+        if joined.tree.fed[node] {
+            self.check_connection(joined, node, joined.carried.conductors[node], who, connection, origin);
+        }
+        Some(node)
+    }
+
+    fn check_connection(
+        &mut self,
+        joined: &Joined,
+        node: usize,
+        carried: Conductors,
+        who: &str,
+        connection: Connection,
+        origin: Option<Origin>,
+    ) {
+        let missing = connection.phases().minus(carried);
+        let name = &joined.graph.names[node];
+        let text = connection.to_string();
+        if !missing.is_empty() {
+            self.diagnostics.error(
+                Code::PhaseNotCarried,
+                place(self.draft, origin, "phases", &text),
+                format!("{who} node {name} on {text}, but that node carries only {carried}"),
+                format!("use conductors of {carried}, or carry {missing} to node {name}"),
+            );
+            return;
+        }
+        let head = joined.carried.side[node];
+        let to_earth = matches!(connection, Connection::Star(_)) && !carried.has_neutral();
+        if to_earth && joined.references[head] > 0.0 {
+            self.diagnostics.error(
+                Code::NoReturnPath,
+                place(self.draft, origin, "phases", &text),
+                format!(
+                    "{who} node {name} from phase to earth, but nothing earths the side that begins at node {}",
+                    joined.graph.names[head]
+                ),
+                "join it phase to phase (ab, bc, ca, abc), carry n there, or choose a winding with an earthed neutral",
+            );
+        }
+    }
+
+    fn load_line(
+        &mut self,
+        joined: &Joined,
+        parts: &Branches,
+        line: &str,
+        load: &str,
+        connection: Connection,
+        origin: Option<Origin>,
+    ) -> Option<LoadPlace> {
+        let Some(&b) = parts.lines.get(line) else {
+            let cure = match nearest(line, parts.lines.keys().map(|n| &**n)) {
+                Some(near) => format!("did you mean {near:?}?"),
+                None => "give the name of a line in lines.csv, or a node".to_string(),
+            };
+            let message = format!("load {load} is spread along line {line:?}, which does not exist");
+            self.diagnostics.error(Code::UnknownLine, place(self.draft, origin, "line", line), message, cure);
+            return None;
+        };
+        let id = parts.new_branch[b]?;
+        let raw = &joined.graph.branches[b];
+        let who = format!("load {load} is spread along line {line}, at");
+        let carried = joined.carried.ends[b][0];
+        self.check_connection(joined, raw.to, carried, &who, connection, origin);
+        Some(LoadPlace::Line(id))
+    }
+}

@@ -1,0 +1,155 @@
+//! From the last iterate to a solution: currents at every branch end, the independent check, the status.
+
+use super::branch::Seen;
+use super::residual::residual;
+use super::settings::Settings;
+use super::solution::{Solution, Status};
+use super::sweep::Iterations;
+use super::terminals::Terminals;
+use super::workspace::Workspace;
+use crate::math::{Complex64, PhaseVector};
+use crate::network::{BranchKind, Conductors, End, Feed, NodeId};
+
+const N: usize = 3;
+
+impl Workspace<'_> {
+    /// Solves from a flat start and checks the result.
+    ///
+    /// Where the voltages have settled but the independent check still finds too large a current
+    /// mismatch, the iteration goes on with a tighter test.
+    pub fn solve(&mut self, settings: &Settings) -> Solution {
+        self.start_flat();
+        let mut tolerance = settings.voltage_tolerance_pu;
+        let mut total = Iterations { count: 0, change_pu: f64::INFINITY };
+        loop {
+            let done = self.iterate(tolerance, settings.iteration_limit.saturating_sub(total.count));
+            total = Iterations { count: total.count + done.count, change_pu: done.change_pu.min(f64::MAX) };
+            let settled = done.change_pu <= tolerance;
+            let solution = self.checked(settings, total, done, settled);
+            let spent = total.count >= settings.iteration_limit;
+            if solution.status == Status::Converged || !settled || spent || tolerance < 1e-14 {
+                return solution;
+            }
+            tolerance /= 10.0;
+        }
+    }
+
+    /// The solution of the present state with its status.
+    fn checked(
+        &mut self,
+        settings: &Settings,
+        total: Iterations,
+        last: Iterations,
+        settled: bool,
+    ) -> Solution {
+        let before = if settled { Vec::new() } else { self.state.volts.clone() };
+        self.settle();
+        let mut solution = self.solution();
+        solution.iterations = total.count;
+        solution.change_pu = last.change_pu;
+        let check = residual(self.network, &solution);
+        solution.mismatch_amps = check.amps;
+        solution.mismatch_volts = check.volts;
+        solution.worst_node = check.node;
+        let feeder = solution.source_amps.iter().map(|i| i.norm()).fold(0.0, f64::max);
+        let allowed = settings.current_tolerance_amps.max(settings.current_tolerance_share * feeder);
+        let volts_allowed = settings.voltage_tolerance_pu * self.network.supply.nominal_volts;
+        solution.status = if !last.change_pu.is_finite() {
+            Status::Diverged
+        } else if settled && check.amps <= allowed && check.volts <= volts_allowed {
+            Status::Converged
+        } else {
+            Status::IterationLimit
+        };
+        if !settled {
+            solution.worst_node = self.largest_change(&before);
+        }
+        solution
+    }
+
+    /// Node whose voltage still moves most, per unit.
+    fn largest_change(&self, before: &[super::lanes::Slots]) -> NodeId {
+        let change = |position: usize| {
+            let (now, then) =
+                (PhaseVector::from(&self.state.volts[position]), PhaseVector::from(&before[position]));
+            let squares = (now - then).map(|d| d.norm_sqr());
+            squares.max() * self.layout.per_nominal2[position]
+        };
+        let worst = (1..self.state.volts.len()).max_by(|&a, &b| change(a).total_cmp(&change(b)));
+        worst.map_or(self.network.supply.node, |position| self.nodes[position - 1])
+    }
+
+    /// Voltages and branch currents of the present state.
+    fn solution(&self) -> Solution {
+        let network = self.network;
+        let mut solution = Solution::unsolved(network);
+        for (i, id) in self.nodes.iter().enumerate() {
+            let conductors = network.node(*id).conductors;
+            solution.volts[id.index()] = carried(&PhaseVector::from(&self.state.volts[i + 1]), conductors);
+        }
+        for (i, id) in self.nodes.iter().enumerate() {
+            let volts = &solution.volts[id.index()];
+            // J = Y V + K: all that the node and what hangs below it draw.
+            let mut drawn = PhaseVector::from(&self.state.amps[i + 1]);
+            match &self.seen[id.index()] {
+                Seen::Neutral(alpha) => drawn[N] += alpha * volts[N],
+                Seen::Full(y) => drawn += **y * volts,
+            }
+            match network.feeds[id.index()] {
+                Some(feed) => self.branch_currents(&feed, *id, &drawn, &mut solution),
+                None => solution.source_amps = carried(&drawn, network.node(*id).conductors),
+            }
+        }
+        solution
+    }
+
+    /// End currents of the branch that feeds a node drawing `drawn`.
+    fn branch_currents(&self, feed: &Feed, id: NodeId, drawn: &PhaseVector, solution: &mut Solution) {
+        let network = self.network;
+        let branch = network.branch(feed.branch);
+        let (parent, node) = (&solution.volts[feed.parent.index()], &solution.volts[id.index()]);
+        let conductors = match feed.upstream {
+            End::From => (branch.from_conductors, branch.to_conductors),
+            End::To => (branch.to_conductors, branch.from_conductors),
+        };
+        let (near, far) = match &branch.kind {
+            BranchKind::Line(line) => {
+                let half = network.line_shunt(line) * Complex64::from(0.5);
+                // What the node draws includes the charging of this end.
+                (drawn + half * carried(parent, conductors.0), drawn - half * node)
+            }
+            BranchKind::Switch => (*drawn, *drawn),
+            BranchKind::Regulator(bank) => {
+                let ratio = bank.ratio_matrix(branch.from_conductors.has_neutral());
+                let up = match feed.upstream {
+                    End::From => ratio.transpose() * drawn,
+                    End::To => ratio.transpose().lu().solve(drawn).unwrap_or(*drawn),
+                };
+                (up, *drawn)
+            }
+            BranchKind::Transformer(t) => {
+                let y = Terminals::of(t);
+                let into = match feed.upstream {
+                    End::From => y.from * parent + y.across * node,
+                    End::To => y.to * parent + y.across.transpose() * node,
+                };
+                (into, *drawn)
+            }
+        };
+        let (near, far) = (carried(&near, conductors.0), carried(&far, conductors.1));
+        let b = feed.branch.index();
+        (solution.from_amps[b], solution.to_amps[b]) = match feed.upstream {
+            End::From => (near, far),
+            End::To => (-far, -near),
+        };
+    }
+}
+
+/// The vector with the slots that are not carried set to zero.
+fn carried(v: &PhaseVector, conductors: Conductors) -> PhaseVector {
+    let mut kept = PhaseVector::zeros();
+    for c in conductors.iter() {
+        kept[c.slot()] = v[c.slot()];
+    }
+    kept
+}
