@@ -221,6 +221,9 @@ fn report_ring(draft: &Draft, graph: &Graph, tree: &Tree, closing: usize, diagno
         two.pop();
     }
     two.reverse();
+    if let (&[other], []) | ([], &[other]) = (&one[..], &two[..]) {
+        return report_parallel(draft, graph, closing, other, diagnostics);
+    }
     let ring: Vec<String> =
         [closing].into_iter().chain(one).chain(two).map(|b| graph.branches[b].called()).collect();
     let called = branch.called();
@@ -229,6 +232,36 @@ fn report_ring(draft: &Draft, graph: &Graph, tree: &Tree, closing: usize, diagno
         place(draft, branch.origin, "to", &graph.names[branch.to]),
         format!("{called} closes a ring: {}", shorten(&ring, 12)),
         "open one of them (`state` open), or take it out; only radial feeders are solved",
+    );
+}
+
+/// A ring of two branches: mostly parallel circuits, or units of one bank written apart.
+fn report_parallel(
+    draft: &Draft,
+    graph: &Graph,
+    closing: usize,
+    other: usize,
+    diagnostics: &mut Diagnostics,
+) {
+    let (branch, other) = (&graph.branches[closing], &graph.branches[other]);
+    let cure = match (branch.kind, other.kind) {
+        (RawKind::Line(_), RawKind::Line(_)) => {
+            "write equal parallel circuits as one row with their number in `sets`, or open or take out one of them"
+        }
+        (RawKind::Bank(_), RawKind::Bank(_)) => {
+            "write all units of one bank with the same `from` and the same `to`"
+        }
+        (RawKind::Transformer(_), RawKind::Transformer(_)) => {
+            "write equal transformers in parallel as one with the sum of their kva, or take one of them out"
+        }
+        _ => "open one of them (`state` open), or take it out; only radial feeders are solved",
+    };
+    let (from, to) = (&graph.names[branch.from], &graph.names[branch.to]);
+    diagnostics.error(
+        Code::ClosedRing,
+        place(draft, branch.origin, "to", to),
+        format!("{} closes a ring with {}: both join nodes {from} and {to}", branch.called(), other.called()),
+        cure,
     );
 }
 
@@ -267,6 +300,7 @@ pub(super) fn report_unfed(draft: &Draft, graph: &Graph, tree: &Tree, diagnostic
             1 => format!("node {}", names[0]),
             n => format!("{n} nodes ({})", shorten(&names, 6)),
         };
+        let verb = |one: &'static str, many: &'static str| if nodes.len() == 1 { one } else { many };
         let load =
             if watts[p] == 0.0 { String::new() } else { format!(", with {} kW of load,", watts[p] / 1e3) };
         let at = nodes.first().and_then(|&n| first_place(draft, graph, n));
@@ -275,8 +309,8 @@ pub(super) fn report_unfed(draft: &Draft, graph: &Graph, tree: &Tree, diagnostic
             diagnostics.warning(
                 Code::SwitchedOff,
                 place(draft, graph.branches[open].origin, "state", "open"),
-                format!("{what}{load} have no supply: {called} is open"),
-                format!("they are left out; close {called} to feed them"),
+                format!("{what}{load} {} no supply: {called} is open", verb("has", "have")),
+                format!("{} left out; close {called} for a supply", verb("it is", "they are")),
             );
             continue;
         }
@@ -285,12 +319,13 @@ pub(super) fn report_unfed(draft: &Draft, graph: &Graph, tree: &Tree, diagnostic
             Some(format!("did you mean node {:?} where {:?} is written?", graph.names[near], graph.names[n]))
         });
         let cure = slip.unwrap_or_else(|| {
-            "join them to the feeder with a line, switch or transformer, or take them out".into()
+            let it = verb("it", "them");
+            format!("join {it} to the feeder with a line, switch or transformer, or take {it} out")
         });
         diagnostics.error(
             Code::NotFed,
             at,
-            format!("{what}{load} not fed from the source: no closed path leads there"),
+            format!("{what}{load} {} not fed from the source: no closed path leads there", verb("is", "are")),
             cure,
         );
     }
