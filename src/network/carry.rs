@@ -132,6 +132,12 @@ impl Walk<'_> {
             false => (
                 format!("{} {missing}", if missing.count() == 1 { "conductor" } else { "conductors" }),
                 match wanted.intersection(parent) {
+                    _ if matches!(branch.kind, RawKind::Transformer(i) if self.draft.transformers[i].terminals.is_none()) =>
+                    {
+                        format!(
+                            "carry {missing} as far as node {node}, or choose a single-phase transformer (Ii0)"
+                        )
+                    }
                     common if common.phases().is_empty() => {
                         format!("carry {missing} as far as node {node}, or use another phase here")
                     }
