@@ -312,7 +312,7 @@ impl fmt::Display for Diagnostic {
             if let Some(cell) = &place.cell {
                 write!(f, " (cell {cell})")?;
             }
-            if let Some(found) = &place.found {
+            if let Some(found) = place.found.as_deref().filter(|f| !f.is_empty()) {
                 write!(f, " \"{}\"", one_line(found))?;
             }
         }

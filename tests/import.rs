@@ -4,6 +4,8 @@
 mod dialects;
 #[path = "import/faults.rs"]
 mod faults;
+#[path = "import/network_faults.rs"]
+mod network_faults;
 #[path = "import/places.rs"]
 mod places;
 #[path = "import/robust.rs"]

@@ -135,8 +135,9 @@ fn sort_out(
     for other in others {
         other_ending(other, &known, diagnostics);
     }
+    // Unreadable or misspelt: that was said already.
     let unread = |d: &crate::diagnostic::Diagnostic| {
-        d.place.as_ref().is_some_and(|p| p.file.eq_ignore_ascii_case("source.csv"))
+        d.place.as_ref().is_some_and(|p| nearest(&p.file, KNOWN) == Some("source.csv"))
     };
     if !known.iter().any(|(i, ..)| KNOWN.get(*i) == Some(&"source.csv"))
         && !diagnostics.items().iter().any(unread)
@@ -157,8 +158,8 @@ fn sort_out(
 fn unknown_file(name: &str, diagnostics: &mut Diagnostics) {
     let (message, cure) = match nearest(name, KNOWN) {
         Some(near) => (
-            format!("the format has no file `{name}`; did you mean `{near}`?"),
-            format!("rename it to `{near}`, or take it out of the folder"),
+            format!("the format has no file `{name}`"),
+            format!("did you mean `{near}`? Rename it, or take it out of the folder"),
         ),
         None => (
             format!("the format has no file `{name}`"),

@@ -157,8 +157,10 @@ impl Finder<'_> {
             (message, format!("put the unit into the name: {}", list(family.into_iter())))
         } else if let Some(near) = near(name, self.schema) {
             self.suggested.push(near);
-            let message = format!("{file} has no column `{name}`; did you mean `{near}`?");
-            (message, format!("rename it to `{near}`, or let its name begin with `note` to have it ignored"))
+            let cure = format!(
+                "did you mean `{near}`? Rename it, or let its name begin with `note` to have it ignored"
+            );
+            (format!("{file} has no column `{name}`"), cure)
         } else {
             let message = format!("{file} has no column `{name}`");
             let known = list(self.schema.names());
@@ -172,7 +174,7 @@ impl Finder<'_> {
             let misspelt = column.headers().any(|h| self.suggested.contains(&h.name));
             if column.need == Need::Required && found.is_empty() && !misspelt {
                 let message = format!("the column for {} is missing", column.what);
-                let cure = format!("add a column {}", column.names());
+                let cure = format!("add a column: {}", column.names());
                 self.error(Code::MissingColumn, None, message, cure);
             }
         }

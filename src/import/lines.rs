@@ -24,7 +24,7 @@ static LINES: Schema = Schema {
         Column::text("line", "the name of the line").required(),
         Column::text("from", "the node at the from end").required(),
         Column::text("to", "the node at the to end").required(),
-        Column::text("phases", "the conductors carried").required(),
+        Column::text("phases", "the set of conductors").required(),
         Column::family(LENGTH, "the length").required().range(Range::Positive),
         Column::text("construction", "the construction").required(),
         Column::number("sets", 1.0, "", "the number of parallel sets").range(Range::Within(1.0, 1000.0)),

@@ -31,6 +31,8 @@ pub(super) enum NumberFault {
         /// The mark taken as separator of thousands.
         thousands: String,
     },
+    /// `1.234` in a file whose other numbers have a decimal comma.
+    DotAmongCommas,
     /// A decimal comma where commas separate columns; the number with a dot.
     DecimalComma(String),
     /// Digits in groups; the number without.

@@ -30,7 +30,7 @@ static REGULATORS: Schema = Schema {
         Column::text("regulator", "the name of the regulator").required(),
         Column::text("from", "the node at the source side").required(),
         Column::text("to", "the node at the regulated side").required(),
-        Column::text("phases", "the phases regulated").required(),
+        Column::text("phases", "the set of phases").required(),
         Column::text("across", "the conductor regulated against"),
         Column::number("tap_a", 1.0, "steps", "the tap of phase a"),
         Column::number("tap_b", 1.0, "steps", "the tap of phase b"),
@@ -138,7 +138,7 @@ fn taps(row: &mut Row<'_>, phases: Option<Conductors>, steps: u32) -> [Option<i3
     for ((conductor, column), slot) in Conductor::PHASES.into_iter().zip(TAPS).zip(&mut taps) {
         let Some(tap) = row.whole_number(column) else { continue };
         if i64::from(tap).abs() > limit {
-            let message = format!("the regulator has taps from -{limit} to {limit}, so {tap} cannot be");
+            let message = format!("the taps of this regulator run from -{limit} to {limit}");
             let cure = "write a tap within that range, or give the number of steps each way in `steps`";
             row.error(Code::TapRange, column, message, cure);
         } else if phases.is_some_and(|p| !p.has(conductor)) {

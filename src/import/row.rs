@@ -103,7 +103,7 @@ impl<'r> Row<'r> {
         let message = format!("{} is missing", spec.what);
         let cure = match self.header_name(column) {
             Some(name) => format!("fill in `{name}`"),
-            None => format!("add a column {}", spec.names()),
+            None => format!("add a column: {}", spec.names()),
         };
         self.error(Code::MissingValue, column, message, cure);
     }
@@ -226,7 +226,7 @@ impl<'r> Row<'r> {
                 }
             }
             Ok(_) if number::is_group_of_three(text, '.') && self.layout.evidence().comma => {
-                result_of_ambiguous(text, '.')
+                Err(NumberFault::DotAmongCommas)
             }
             other => other,
         }
@@ -265,9 +265,9 @@ impl<'r> Row<'r> {
         if let Some((_, value)) = words.iter().find(|(word, _)| word.eq_ignore_ascii_case(text)) {
             return *value;
         }
-        let all: Vec<String> = words.iter().map(|(word, _)| format!("`{word}`")).collect();
+        let all = one_of(words.iter().map(|(word, _)| *word));
         let near = nearest(text, words.iter().map(|(word, _)| *word));
-        let message = format!("{} must be {}", self.column(column).what, all.join(" or "));
+        let message = format!("{} must be {}", self.column(column).what, all);
         let cure = match near {
             Some(near) => format!("did you mean `{near}`?"),
             None => "write one of these words, or leave the cell blank for the default".to_owned(),
@@ -333,6 +333,15 @@ fn result_of_ambiguous(text: &str, mark: char) -> Result<f64, NumberFault> {
     Err(NumberFault::Ambiguous { decimal: text.replace(mark, "."), thousands: text.replace(mark, "") })
 }
 
+/// "`a`, `b` or `c`".
+fn one_of<'a>(words: impl Iterator<Item = &'a str>) -> String {
+    let all: Vec<String> = words.map(|word| format!("`{word}`")).collect();
+    match all.split_last() {
+        Some((last, others)) if !others.is_empty() => format!("{} or {last}", others.join(", ")),
+        _ => all.concat(),
+    }
+}
+
 /// What a column expects: "the length in km".
 fn quantity(spec: &Column, header: &Header) -> String {
     if header.unit.is_empty() { spec.what.to_owned() } else { format!("{} in {}", spec.what, header.unit) }
@@ -348,6 +357,13 @@ fn explain(fault: &NumberFault, text: &str, spec: &Column, header: &Header) -> (
             format!("can be read as {decimal} or as {thousands}; expected {expected}"),
             format!("write {} or {thousands}, without a mark between thousands", with_more_decimals(decimal)),
         ),
+        NumberFault::DotAmongCommas => {
+            let thousands = text.replace('.', "");
+            let message = format!(
+                "can be read as {text} or as {thousands}, because other numbers in this file have a decimal comma"
+            );
+            (Code::AmbiguousNumber, message, format!("write {} or {thousands}", text.replace('.', ",")))
+        }
         NumberFault::DecimalComma(dotted) => {
             let cure = format!("write {dotted}, or separate the columns with semicolons and keep the comma");
             (
@@ -368,8 +384,10 @@ fn explain(fault: &NumberFault, text: &str, spec: &Column, header: &Header) -> (
         NumberFault::Unit(unit) => {
             let number = text.strip_suffix(unit.as_str()).map(str::trim).filter(|n| !n.is_empty());
             let cure = match number {
-                Some(number) => format!("write {number} alone; the unit belongs in the column name"),
-                None => "write digits alone; the unit belongs in the column name".to_owned(),
+                Some(number) => {
+                    format!("write {number} alone, without letters; the unit stands in the column name")
+                }
+                None => "write digits alone; the unit stands in the column name".to_owned(),
             };
             not_number(cure)
         }
@@ -404,8 +422,13 @@ fn out_of_range_cure(value: f64, spec: &Column, unit: &str) -> String {
         Range::Positive if value == 0.0 && spec.need == Need::Optional => {
             "write the value, or leave the cell blank for the default".to_owned()
         }
-        Range::Within(low, high) if unit.is_empty() && (low..=high).contains(&(value / 100.0)) => {
+        Range::Within(low, high)
+            if matches!(unit, "" | "per unit") && (low..=high).contains(&(value / 100.0)) =>
+        {
             format!("write {} if {value} percent is meant", value / 100.0)
+        }
+        Range::UpTo(high) if unit.starts_with("kV") && value > high && value / 1000.0 <= high => {
+            format!("write {} if {value} V is meant", value / 1000.0)
         }
         _ if unit.is_empty() => "check the value".to_owned(),
         _ => format!("check the value; the column is in {unit}"),

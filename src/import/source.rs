@@ -58,12 +58,13 @@ fn read_row(row: &mut Row<'_>) -> Option<SupplyRecord> {
     let held_pu = held(row);
     let angle_rad = row.number_or(ANGLE, 0.0);
     let three_phase = fault_level(row, MVA_3PH, X_OVER_R_3PH);
-    let single_phase = fault_level(row, MVA_1PH, X_OVER_R_1PH);
+    let mut single_phase = fault_level(row, MVA_1PH, X_OVER_R_1PH);
     if row.is_filled(MVA_1PH) && !row.is_filled(MVA_3PH) {
         let message = "a single-phase fault level is given without the three-phase one";
         let cure =
             "fill in `mva_3ph` and `x_over_r_3ph` too, or leave both fault levels blank for a stiff source";
         row.error(Code::MissingValue, MVA_1PH, message, cure);
+        single_phase = None;
     }
     let earth_ohm = row.number_or(EARTH, 0.0);
     Some(SupplyRecord {

@@ -144,13 +144,13 @@ fn read_setting(row: &mut Row<'_>, study: &mut Study, unique: &mut Unique) {
 }
 
 fn unknown(row: &mut Row<'_>, name: &str) {
-    let known = || SETTINGS.iter().map(|s| s.spec.name()).chain(TEXT_SETTINGS);
+    let known = || TEXT_SETTINGS.into_iter().chain(SETTINGS.iter().map(|s| s.spec.name()));
     let all: Vec<String> = known().map(|k| format!("`{k}`")).collect();
     let (message, cure) = match nearest(name, known()) {
-        Some(near) => {
-            let message = format!("there is no setting `{name}`; did you mean `{near}`?");
-            (message, format!("write `{near}`, or delete the row"))
-        }
+        Some(near) => (
+            format!("there is no setting `{name}`"),
+            format!("did you mean `{near}`? Correct it, or delete the row"),
+        ),
         None => {
             let message = format!("there is no setting `{name}`");
             (message, format!("delete the row; the settings are {}", all.join(", ")))

@@ -20,7 +20,7 @@ static SWITCHES: Schema = Schema {
         Column::text("switch", "the name of the switch").required(),
         Column::text("from", "the node at the from end").required(),
         Column::text("to", "the node at the to end").required(),
-        Column::text("phases", "the conductors switched").required(),
+        Column::text("phases", "the set of conductors").required(),
         Column::text("state", "the state"),
     ],
 };

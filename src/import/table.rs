@@ -127,8 +127,7 @@ fn has_fitting_length(intake: &mut Intake, origin: Origin, layout: &Layout, reco
         }
         None => "name the column (begin with `note` to have it ignored), or clear the cell",
     };
-    let found = surplus.or(unnamed);
-    let found = found.map(|i| trim(cells.get(i)).to_owned());
+    let found = unnamed.filter(|_| surplus.is_none()).map(|i| trim(cells.get(i)).to_owned());
     let place = intake.sources.place(origin, None, found.as_deref());
     intake.diagnostics.error(Code::RowLength, place, message, cure);
     false

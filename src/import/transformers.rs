@@ -128,16 +128,23 @@ fn group(row: &mut Row<'_>) -> Option<VectorGroup> {
 
 fn group_cure(text: &str) -> String {
     let lower = text.to_ascii_lowercase();
+    let letters = lower.trim_end_matches(|c: char| c.is_ascii_digit());
+    let clocks: Vec<String> = (0..12)
+        .filter(|n| VectorGroup::parse(&format!("{letters}{n}")).is_some())
+        .map(|n| n.to_string())
+        .collect();
+    if !clocks.is_empty() {
+        let letters = text.trim_end_matches(|c: char| c.is_ascii_digit());
+        return format!(
+            "write {letters} with the clock number of the nameplate, one of {}",
+            clocks.join(", ")
+        );
+    }
     if lower.contains('z') {
         return "zigzag windings are not solved in this version".to_owned();
     }
-    if !lower.contains(|c: char| c.is_ascii_digit()) && !lower.is_empty() {
-        return "add the clock number from the nameplate, such as the 11 of Dyn11".to_owned();
-    }
     match nearest(text, GROUPS) {
-        Some(near) => format!(
-            "did you mean `{near}`? Star-star and delta-delta have even clock numbers, star-delta odd ones"
-        ),
+        Some(near) => format!("did you mean `{near}`?"),
         None => "write the symbols of the from and the to side (Y, YN or D) and the clock number".to_owned(),
     }
 }

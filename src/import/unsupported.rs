@@ -19,7 +19,7 @@ pub(super) fn profiles(intake: &mut Intake, file: FileId) {
     if is_used(intake, file) {
         let place = intake.whole_file(file);
         let message = "this version does not use profiles: every load is taken at the kW of its row";
-        let cure = "nothing to mend, if that is what you want; take the file out of the folder to be rid of this warning";
+        let cure = "if full load is what you want, take the file out of the folder to be rid of this warning";
         intake.diagnostics.warning(Code::NotSupported, place, message, cure);
     }
 }
