@@ -1,1 +1,3 @@
 //! Questions asked of a solved network. Pure: input to result, no printing, no files.
+
+pub mod loadability;
