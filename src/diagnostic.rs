@@ -403,10 +403,11 @@ impl Diagnostics {
 /// The candidate nearest to `text`, if near enough to be a slip of the keyboard.
 ///
 /// Spelling is compared without regard to case by the Damerau-Levenshtein distance; at most a
-/// third of the letters may differ.
+/// third of the letters may differ, and one of three; names of one or two letters only by case.
 pub fn nearest<'a>(text: &str, candidates: impl IntoIterator<Item = &'a str>) -> Option<&'a str> {
     let wanted = text.trim().to_lowercase();
-    let limit = (wanted.chars().count() / 3).max(1);
+    let letters = wanted.chars().count();
+    let limit = if letters < 3 { 0 } else { letters / 3 };
     candidates
         .into_iter()
         .map(|c| (strsim::damerau_levenshtein(&wanted, &c.to_lowercase()), c))
@@ -434,6 +435,8 @@ mod tests {
         assert_eq!(nearest("lenght_km", known), Some("length_km"));
         assert_eq!(nearest("Construcion", known), Some("construction"));
         assert_eq!(nearest("kvar", known), None);
+        assert_eq!(nearest("L2", ["L1", "l2"]), Some("l2"));
+        assert_eq!(nearest("L3", ["L1", "l2"]), None);
     }
 
     #[test]

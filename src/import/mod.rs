@@ -1,6 +1,6 @@
 //! From a folder of CSV files to a [`crate::network::Draft`], with every fault of every cell.
 //!
-//! [`text`] decodes a file, [`table`] splits it into rows whose cells know where they stand,
+//! [`text`] decodes a file, [`records`] splits it and [`table`] gives its rows, whose cells know where they stand,
 //! [`header`] finds the columns a [`schema`] declares, and [`row`] reads cells as names,
 //! numbers, words and conductors. Each kind of file has a module of its own that declares its
 //! columns and makes its records; [`folder`] calls them all.
@@ -16,6 +16,7 @@ mod names;
 mod nodes;
 mod number;
 mod phases;
+mod records;
 mod regulators;
 mod row;
 mod schema;
@@ -26,6 +27,7 @@ mod table;
 mod text;
 mod transformers;
 mod unsupported;
+mod words;
 
 use crate::diagnostic::{Diagnostics, FileId, Place, Sources};
 use crate::network::Draft;

@@ -5,9 +5,10 @@ use super::Intake;
 use super::header::Layout;
 use super::number::{self, Marks, NumberFault, PercentSign, is_spreadsheet_error};
 use super::phases;
+use super::records::Cells;
 use super::schema::{Column, Header, Need};
-use super::table::Cells;
 use super::text::trim;
+use super::words::{explain, one_of, out_of_range_cure};
 use crate::diagnostic::{Code, Origin, nearest};
 use crate::network::{Conductors, Connection, Name, SwitchState};
 
@@ -331,106 +332,4 @@ impl<'r> Row<'r> {
 
 fn result_of_ambiguous(text: &str, mark: char) -> Result<f64, NumberFault> {
     Err(NumberFault::Ambiguous { decimal: text.replace(mark, "."), thousands: text.replace(mark, "") })
-}
-
-/// "`a`, `b` or `c`".
-fn one_of<'a>(words: impl Iterator<Item = &'a str>) -> String {
-    let all: Vec<String> = words.map(|word| format!("`{word}`")).collect();
-    match all.split_last() {
-        Some((last, others)) if !others.is_empty() => format!("{} or {last}", others.join(", ")),
-        _ => all.concat(),
-    }
-}
-
-/// What a column expects: "the length in km".
-fn quantity(spec: &Column, header: &Header) -> String {
-    if header.unit.is_empty() { spec.what.to_owned() } else { format!("{} in {}", spec.what, header.unit) }
-}
-
-fn explain(fault: &NumberFault, text: &str, spec: &Column, header: &Header) -> (Code, String, String) {
-    let expected = quantity(spec, header);
-    let not_number = |cure: String| (Code::BadNumber, format!("expected a number, {expected}"), cure);
-    match fault {
-        NumberFault::NotNumber => not_number("write digits with one decimal mark, such as 12.5".to_owned()),
-        NumberFault::Ambiguous { decimal, thousands } => (
-            Code::AmbiguousNumber,
-            format!("can be read as {decimal} or as {thousands}; expected {expected}"),
-            format!("write {} or {thousands}, without a mark between thousands", with_more_decimals(decimal)),
-        ),
-        NumberFault::DotAmongCommas => {
-            let thousands = text.replace('.', "");
-            let message = format!(
-                "can be read as {text} or as {thousands}, because other numbers in this file have a decimal comma"
-            );
-            (Code::AmbiguousNumber, message, format!("write {} or {thousands}", text.replace('.', ",")))
-        }
-        NumberFault::DecimalComma(dotted) => {
-            let cure = format!("write {dotted}, or separate the columns with semicolons and keep the comma");
-            (
-                Code::BadNumber,
-                "a decimal comma cannot be read where commas separate the columns".to_owned(),
-                cure,
-            )
-        }
-        NumberFault::Grouped(plain) => not_number(format!("write {plain}, without marks between thousands")),
-        NumberFault::Percent(value) => {
-            let message = format!("a percent sign where {expected} is expected");
-            (
-                Code::BadNumber,
-                message,
-                format!("write {} if a share is meant, else delete the sign", value / 100.0),
-            )
-        }
-        NumberFault::Unit(unit) => {
-            let number = text.strip_suffix(unit.as_str()).map(str::trim).filter(|n| !n.is_empty());
-            let cure = match number {
-                Some(number) => {
-                    format!("write {number} alone, without letters; the unit stands in the column name")
-                }
-                None => "write digits alone; the unit stands in the column name".to_owned(),
-            };
-            not_number(cure)
-        }
-        NumberFault::NotFinite => {
-            let cure = match spec.need {
-                Need::Required => "write the value itself",
-                Need::Optional => "write the value itself, or leave the cell blank",
-            };
-            (Code::BadNumber, format!("expected a finite number, {expected}"), cure.to_owned())
-        }
-        NumberFault::Hexadecimal => not_number("write the number in decimal digits".to_owned()),
-        NumberFault::Date => {
-            let message = format!("this is a date; expected {expected}");
-            let cure = "set the cell's format to number or text in the spreadsheet and type the value again";
-            (Code::BadNumber, message, cure.to_owned())
-        }
-    }
-}
-
-/// `1.234` as `1.2340`: with a fourth decimal it cannot be read as thousands.
-fn with_more_decimals(decimal: &str) -> String {
-    match decimal.split_once('.') {
-        Some((_, tail)) if tail.len() == 3 => format!("{decimal}0"),
-        _ => decimal.to_owned(),
-    }
-}
-
-fn out_of_range_cure(value: f64, spec: &Column, unit: &str) -> String {
-    use super::schema::Range;
-    match spec.range {
-        Range::Positive | Range::NotNegative if value < 0.0 => "check the sign".to_owned(),
-        Range::Positive if value == 0.0 && spec.need == Need::Optional => {
-            "write the value, or leave the cell blank for the default".to_owned()
-        }
-        Range::Within(low, high)
-            if matches!(unit, "" | "per unit") && (low..=high).contains(&(value / 100.0)) =>
-        {
-            format!("write {} if {value} percent is meant", value / 100.0)
-        }
-        Range::UpTo(high) if unit.starts_with("kV") && value > high && value / 1000.0 <= high => {
-            format!("write {} if {value} V is meant", value / 1000.0)
-        }
-        _ if unit.is_empty() => "check the value".to_owned(),
-        _ => format!("check the value; the column is in {unit}"),
-    }
 }

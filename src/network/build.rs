@@ -55,6 +55,9 @@ impl Builder<'_> {
         let line_constructions = self.line_constructions();
         let electrodes = self.electrodes(&graph);
         let root = root?;
+        if self.is_source_lonely(&graph, root) {
+            return None;
+        }
         let tree = grow(draft, &graph, root, self.diagnostics);
         report_unfed(draft, &graph, &tree, self.diagnostics);
         let carried = carry(draft, &graph, &tree, &electrodes, self.diagnostics);
@@ -85,6 +88,24 @@ impl Builder<'_> {
         }
         validate::supply(self.draft, first, self.diagnostics);
         Some(0)
+    }
+
+    /// Reports a source at a node that nothing joins; all else would be reported as not fed.
+    fn is_source_lonely(&mut self, graph: &Graph, root: usize) -> bool {
+        if graph.branches.is_empty() || graph.at(root).next().is_some() {
+            return false;
+        }
+        let name = &graph.names[root];
+        let others = graph.names.iter().filter(|n| *n != name).map(|n| &**n);
+        let cure = match nearest(name, others) {
+            Some(near) => format!("did you mean {near:?}?"),
+            None => "write the node where the feeder begins, as it is written in the other files".to_string(),
+        };
+        let origin = self.draft.supplies.first().and_then(|s| s.origin);
+        let message =
+            format!("the source is at node {name:?}, but no line, switch or transformer connects it");
+        self.diagnostics.error(Code::UnknownNode, place(self.draft, origin, "node", name), message, cure);
+        true
     }
 
     /// Electrode of each node of the graph; data for a node that does not exist is an error.

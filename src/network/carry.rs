@@ -130,19 +130,44 @@ impl Walk<'_> {
                 ),
             ),
             false => (
-                format!("conductor {missing}"),
-                format!("carry {missing} as far as node {node}, or use {} here", wanted.intersection(parent)),
+                format!("{} {missing}", if missing.count() == 1 { "conductor" } else { "conductors" }),
+                match wanted.intersection(parent) {
+                    _ if matches!(branch.kind, RawKind::Transformer(i) if self.draft.transformers[i].terminals.is_none()) =>
+                    {
+                        format!(
+                            "carry {missing} as far as node {node}, or choose a single-phase transformer (Ii0)"
+                        )
+                    }
+                    common if common.phases().is_empty() => {
+                        format!("carry {missing} as far as node {node}, or use another phase here")
+                    }
+                    common => format!("carry {missing} as far as node {node}, or use {common} here"),
+                },
             ),
         };
         self.diagnostics.error(
             Code::PhaseNotCarried,
-            place(self.draft, branch.origin, "phases", &wanted.to_string()),
+            place(self.draft, branch.origin, "phases", &self.written_phases(branch.kind)),
             format!(
                 "{} uses {what}, but node {node}, where it begins, carries only {parent}",
                 branch.called()
             ),
             cure,
         );
+    }
+
+    /// The `phases` a branch is written with, blank for a three-phase bank.
+    fn written_phases(&self, kind: RawKind) -> String {
+        match kind {
+            RawKind::Line(_) | RawKind::Switch(_) => {
+                written_conductors(self.draft, kind).map(|c| c.to_string())
+            }
+            RawKind::Transformer(i) => self.draft.transformers[i].terminals.map(|t| t.to_string()),
+            RawKind::Bank(bank) => {
+                self.graph.banks[bank].first().map(|&i| self.draft.regulators[i].phases.to_string())
+            }
+        }
+        .unwrap_or_default()
     }
 
     fn transformer(&mut self, node: usize, feed: RawFeed, record: &TransformerRecord) {
@@ -227,14 +252,18 @@ impl Walk<'_> {
             format!("check {}, and to which node that side is joined", near.volts_column)
         };
         let kv = near.volts / 1e3;
+        let across = if near.phase_to_neutral {
+            format!("{:.3} kV phase to neutral", nominal / SQRT_3 / 1e3)
+        } else {
+            format!("{} kV line-to-line", nominal / 1e3)
+        };
         self.diagnostics.error(
             Code::VoltageMismatch,
             place(self.draft, branch.origin, near.volts_column, &kv.to_string()),
             format!(
-                "{} is rated {kv} kV at node {}, which is at {} kV line-to-line",
+                "{} is rated {kv} kV at node {}, which is at {across}",
                 branch.called(),
                 self.graph.names[feed.parent],
-                nominal / 1e3,
             ),
             cure,
         );

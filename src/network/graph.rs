@@ -5,6 +5,7 @@ use std::collections::{HashMap, HashSet, VecDeque};
 use super::conductor::Conductors;
 use super::draft::{Draft, Name, SwitchState};
 use super::model::End;
+use super::ring::report_ring;
 use crate::diagnostic::{Code, Diagnostics, Origin, Place};
 
 /// What a branch of the draft is: the kind and the index of its record.
@@ -205,33 +206,6 @@ pub(super) fn grow(draft: &Draft, graph: &Graph, root: usize, diagnostics: &mut 
     tree
 }
 
-fn report_ring(draft: &Draft, graph: &Graph, tree: &Tree, closing: usize, diagnostics: &mut Diagnostics) {
-    let branch = &graph.branches[closing];
-    let path = |mut node: usize| {
-        let mut branches = Vec::new();
-        while let Some(feed) = tree.feeds[node] {
-            branches.push(feed.branch);
-            node = feed.parent;
-        }
-        branches
-    };
-    let (mut one, mut two) = (path(branch.from), path(branch.to));
-    while one.last().is_some() && one.last() == two.last() {
-        one.pop();
-        two.pop();
-    }
-    two.reverse();
-    let ring: Vec<String> =
-        [closing].into_iter().chain(one).chain(two).map(|b| graph.branches[b].called()).collect();
-    let called = branch.called();
-    diagnostics.error(
-        Code::ClosedRing,
-        place(draft, branch.origin, "to", &graph.names[branch.to]),
-        format!("{called} closes a ring: {}", shorten(&ring, 12)),
-        "open one of them (`state` open), or take it out; only radial feeders are solved",
-    );
-}
-
 /// Joins names with commas, the first `most` of them, and counts the rest.
 pub(super) fn shorten(names: &[String], most: usize) -> String {
     let shown = names.iter().take(most).cloned().collect::<Vec<_>>().join(", ");
@@ -267,6 +241,7 @@ pub(super) fn report_unfed(draft: &Draft, graph: &Graph, tree: &Tree, diagnostic
             1 => format!("node {}", names[0]),
             n => format!("{n} nodes ({})", shorten(&names, 6)),
         };
+        let verb = |one: &'static str, many: &'static str| if nodes.len() == 1 { one } else { many };
         let load =
             if watts[p] == 0.0 { String::new() } else { format!(", with {} kW of load,", watts[p] / 1e3) };
         let at = nodes.first().and_then(|&n| first_place(draft, graph, n));
@@ -275,8 +250,8 @@ pub(super) fn report_unfed(draft: &Draft, graph: &Graph, tree: &Tree, diagnostic
             diagnostics.warning(
                 Code::SwitchedOff,
                 place(draft, graph.branches[open].origin, "state", "open"),
-                format!("{what}{load} have no supply: {called} is open"),
-                format!("they are left out; close {called} to feed them"),
+                format!("{what}{load} {} no supply: {called} is open", verb("has", "have")),
+                format!("{} left out; close {called} for a supply", verb("it is", "they are")),
             );
             continue;
         }
@@ -285,12 +260,13 @@ pub(super) fn report_unfed(draft: &Draft, graph: &Graph, tree: &Tree, diagnostic
             Some(format!("did you mean node {:?} where {:?} is written?", graph.names[near], graph.names[n]))
         });
         let cure = slip.unwrap_or_else(|| {
-            "join them to the feeder with a line, switch or transformer, or take them out".into()
+            let it = verb("it", "them");
+            format!("join {it} to the feeder with a line, switch or transformer, or take {it} out")
         });
         diagnostics.error(
             Code::NotFed,
             at,
-            format!("{what}{load} not fed from the source: no closed path leads there"),
+            format!("{what}{load} {} not fed from the source: no closed path leads there", verb("is", "are")),
             cure,
         );
     }

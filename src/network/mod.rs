@@ -11,6 +11,7 @@ mod graph;
 mod load;
 mod model;
 mod regulator;
+mod ring;
 mod shunts;
 mod study;
 mod supply;

@@ -113,8 +113,10 @@ pub(super) fn supply(draft: &Draft, record: &SupplyRecord, diagnostics: &mut Dia
             Code::BadFaultLevel,
             place(draft, record.origin, "mva_1ph", &found.to_string()),
             format!(
-                "the fault levels give a zero-sequence impedance of {:.4} + j{:.4} ohm, which cannot be: the single-phase level is too high for the three-phase one",
-                z0.re, z0.im
+                "the fault levels give a zero-sequence impedance of {:.4} {} j{:.4} ohm, which cannot be: the single-phase level is too high for the three-phase one",
+                z0.re,
+                if z0.im < 0.0 { '-' } else { '+' },
+                z0.im.abs()
             ),
             "it may be at most 1.5 times the three-phase level; both as sqrt(3) x line voltage x fault current",
         );
