@@ -197,9 +197,10 @@ impl Builder<'_> {
             Code::MissingValue,
             place(self.draft, record.origin, missing[0], ""),
             format!(
-                "regulator {} is automatic on phase {phase} (tap_{phase} is blank), but {} is not given",
+                "regulator {} is automatic on phase {phase} (tap_{phase} is blank), but {} {} not given",
                 record.regulator,
-                missing.join(", ")
+                missing.join(", "),
+                if missing.len() == 1 { "is" } else { "are" }
             ),
             format!("give {}, or the tap to hold in tap_{phase} (0 is neutral)", missing.join(", ")),
         );
