@@ -10,7 +10,14 @@ use std::path::{Path, PathBuf};
 /// What the file system says; the old file is then untouched.
 pub fn write_file(path: &Path, write: impl FnOnce(&mut dyn Write) -> io::Result<()>) -> io::Result<()> {
     let folder = path.parent().filter(|p| !p.as_os_str().is_empty()).unwrap_or(Path::new("."));
-    let temporary = tempfile::NamedTempFile::new_in(folder)?;
+    let mut builder = tempfile::Builder::new();
+    #[cfg(unix)]
+    {
+        // As any new file: readable to whom the user's mask allows, not to the user alone.
+        use std::os::unix::fs::PermissionsExt as _;
+        builder.permissions(fs::Permissions::from_mode(0o666));
+    }
+    let temporary = builder.tempfile_in(folder)?;
     let mut writer = BufWriter::with_capacity(1 << 16, temporary);
     write(&mut writer)?;
     writer.into_inner().map_err(io::IntoInnerError::into_error)?.persist(path).map_err(|e| e.error)?;

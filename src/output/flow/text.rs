@@ -63,8 +63,10 @@ fn totals(text: &mut String, report: &FlowReport) {
     row("loads and capacitors", t.load_kw, Some(t.load_kvar));
     row("losses", t.loss_kw, Some(t.loss_kvar));
     row("  phase conductors", t.line_loss_kw, None);
-    row("  neutral conductors", t.neutral_loss_kw, None);
-    row("  earth electrodes", t.earth_loss_kw, None);
+    if report.glance.neutral_volts.is_some() {
+        row("  neutral conductors", t.neutral_loss_kw, None);
+        row("  earth electrodes", t.earth_loss_kw, None);
+    }
     row("  transformers", t.transformer_loss_kw, None);
     let _ = writeln!(text, "{}", table.text());
 }
