@@ -1,3 +1,7 @@
-//! Command line of fourwire.
+//! Command line of fourwire: arguments to exit status.
 
-fn main() {}
+use std::process::ExitCode;
+
+fn main() -> ExitCode {
+    fourwire::cli::run()
+}

@@ -10,8 +10,10 @@ use std::path::PathBuf;
 
 use fourwire::import::read_folder;
 use fourwire::math::{Complex64, degrees};
-use fourwire::network::{Conductor, Conductors, Connection, Draft, Network, VectorGroup, build};
-use fourwire::solver::{Settings, Solution, Status, solve};
+use fourwire::network::{
+    BranchKind, Conductor, Conductors, Connection, Draft, Network, RegulatorControl, VectorGroup, build,
+};
+use fourwire::solver::{Settings, Solution, Status, TapState, solve, solve_regulated};
 
 fn path(relative: &str) -> PathBuf {
     PathBuf::from(env!("CARGO_MANIFEST_DIR")).join(relative)
@@ -112,6 +114,31 @@ fn thirteen_node_feeder() {
         "13-node: {compared} values, worst {worst_pu:.6} pu, {worst_degrees:.4} degrees, {} iterations; source {source:.3} kVA, losses {losses:.3} kVA",
         solution.iterations
     );
+}
+
+/// Regulator settings published with the feeder: each phase 122 V, band 2 V, PT 20, CT 700 A, R 3 V, X 9 V.
+#[test]
+fn thirteen_node_feeder_with_automatic_taps_lands_on_the_published_ones() {
+    let mut draft = draft("networks/ieee-13-node");
+    draft.regulators[0].taps = [None; 3];
+    draft.regulators[0].control = RegulatorControl {
+        set_volts: Some(122.0),
+        band_volts: Some(2.0),
+        pt_ratio: Some(20.0),
+        ct_amps: Some(700.0),
+        r_volts: 3.0,
+        x_volts: 9.0,
+    };
+    let mut network = build(&draft).network.expect("settings are complete");
+    let (solution, units) = solve_regulated(&mut network, &Settings::default());
+    assert_eq!(solution.status, Status::Converged);
+    assert!(units.iter().all(|u| u.state == TapState::Settled), "{units:?}");
+    let bank = network.branches.iter().find_map(|b| match &b.kind {
+        BranchKind::Regulator(bank) => Some(bank),
+        _ => None,
+    });
+    let taps: Vec<i32> = bank.expect("a bank").units.iter().map(|u| u.tap).collect();
+    assert_eq!(taps, [10, 8, 11]);
 }
 
 /// The four-node feeder with another transformer and another load: star loads on a star

@@ -3,10 +3,11 @@
 use std::collections::HashMap;
 
 use super::build::{Builder, Joined};
-use super::draft::{Across, Construction, LineRecord, Name, SwitchState, TransformerRecord};
+use super::conductor::Conductor;
+use super::draft::{Across, Construction, LineRecord, Name, RegulatorRecord, SwitchState, TransformerRecord};
 use super::graph::{RawKind, place};
 use super::model::{Branch, BranchId, BranchKind, ConstructionId, Line, NodeId};
-use super::regulator::{Regulator, RegulatorUnit};
+use super::regulator::{Regulator, RegulatorUnit, TapMode};
 use super::transformer::{NeutralPoint, Transformer};
 use crate::diagnostic::{Code, nearest};
 
@@ -127,7 +128,7 @@ impl Builder<'_> {
         Some(parts)
     }
 
-    /// The units of one bank; a phase regulated twice, or automatic taps, are errors.
+    /// The units of one bank; a phase regulated twice, or an automatic one without settings, is an error.
     fn bank(&mut self, records: &[usize]) -> Regulator {
         let mut units: Vec<RegulatorUnit> = Vec::new();
         for &i in records {
@@ -156,20 +157,17 @@ impl Builder<'_> {
                     );
                     continue;
                 }
-                let Some(tap) = record.taps[phase.slot()] else {
-                    self.diagnostics.error(
-                        Code::NotSupported,
-                        place(self.draft, record.origin, &format!("tap_{phase}"), ""),
-                        format!("regulator {} has no tap for phase {phase}; automatic regulators are not solved by this version", record.regulator),
-                        format!("give the tap to hold in tap_{phase} (0 is neutral)"),
-                    );
-                    continue;
+                let (tap, mode) = match record.taps[phase.slot()] {
+                    Some(tap) => (tap, TapMode::Held),
+                    None if self.has_settings(record, phase) => (0, TapMode::Automatic),
+                    None => continue,
                 };
                 units.push(RegulatorUnit {
                     name: record.regulator.clone(),
                     phase,
                     across: record.across,
                     tap,
+                    mode,
                     step_pu: record.step_pu,
                     steps: record.steps,
                     control: record.control,
@@ -177,6 +175,36 @@ impl Builder<'_> {
             }
         }
         Regulator { units }
+    }
+
+    /// An automatic unit needs its set point, band and potential-transformer ratio, and with
+    /// line-drop compensation its current-transformer rating.
+    fn has_settings(&mut self, record: &RegulatorRecord, phase: Conductor) -> bool {
+        let control = &record.control;
+        let compensated = control.r_volts != 0.0 || control.x_volts != 0.0;
+        let needed = [
+            ("set_v", control.set_volts.is_some()),
+            ("band_v", control.band_volts.is_some()),
+            ("pt_ratio", control.pt_ratio.is_some()),
+            ("ct_a", !compensated || control.ct_amps.is_some()),
+        ];
+        let missing: Vec<&str> =
+            needed.into_iter().filter(|(_, given)| !given).map(|(name, _)| name).collect();
+        if missing.is_empty() {
+            return true;
+        }
+        self.diagnostics.error(
+            Code::MissingValue,
+            place(self.draft, record.origin, missing[0], ""),
+            format!(
+                "regulator {} is automatic on phase {phase} (tap_{phase} is blank), but {} {} not given",
+                record.regulator,
+                missing.join(", "),
+                if missing.len() == 1 { "is" } else { "are" }
+            ),
+            format!("give {}, or the tap to hold in tap_{phase} (0 is neutral)", missing.join(", ")),
+        );
+        false
     }
 }
 

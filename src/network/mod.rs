@@ -29,7 +29,7 @@ pub use load::{Capacitor, Load, LoadModel, LoadPlace};
 pub use model::{
     Branch, BranchId, BranchKind, ConstructionId, End, Feed, Line, Network, Node, NodeId, SOLID_EARTH_OHM,
 };
-pub use regulator::{Regulator, RegulatorUnit};
+pub use regulator::{Regulator, RegulatorUnit, TapMode};
 pub use study::Study;
 pub use supply::Supply;
 pub use transformer::{NeutralPoint, Transformer, VectorGroup, Winding};

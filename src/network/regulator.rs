@@ -4,6 +4,15 @@ use super::conductor::Conductor;
 use super::draft::{Across, Name, RegulatorControl};
 use crate::math::{Complex64, ONE, PhaseMatrix};
 
+/// Who sets a tap.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum TapMode {
+    /// The user: it is held.
+    Held,
+    /// The unit's control, from its settings.
+    Automatic,
+}
+
 /// One regulated phase of a bank.
 #[derive(Debug, Clone)]
 pub struct RegulatorUnit {
@@ -13,8 +22,10 @@ pub struct RegulatorUnit {
     pub phase: Conductor,
     /// What that phase is regulated against.
     pub across: Across,
-    /// Tap position held, steps.
+    /// Tap position, steps: held, or where the control has moved it.
     pub tap: i32,
+    /// Whether the control may move it.
+    pub mode: TapMode,
     /// Change of voltage of one step, per unit.
     pub step_pu: f64,
     /// Steps each way.

@@ -1,1 +1,15 @@
 //! From a result to text, JSON or CSV: one result, one table, many writers.
+
+mod check;
+mod csv;
+mod diagnostics;
+mod files;
+mod flow;
+mod table;
+
+pub use check::summary_text;
+pub use csv::guarded;
+pub use diagnostics::{diagnostics_json, diagnostics_lines, diagnostics_text};
+pub use files::{Folder, write_file};
+pub use flow::{Length, flow_csv, flow_json, flow_text};
+pub use table::{Align, Cell, Column, Table, WIDTH};

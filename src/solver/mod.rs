@@ -6,6 +6,7 @@
 
 mod accelerate;
 mod branch;
+mod control;
 mod injection;
 mod lanes;
 mod recover;
@@ -16,6 +17,7 @@ mod sweep;
 mod terminals;
 mod workspace;
 
+pub use control::{RegulatedUnit, TapState, solve_regulated};
 pub use residual::{Residual, load_current, residual};
 pub use settings::Settings;
 pub use solution::{Solution, Status};

@@ -1,0 +1,75 @@
+//! `fourwire check`.
+
+use super::args::{Check, CheckFormat};
+use super::{Outcome, Screen};
+use crate::diagnostic::Diagnostics;
+use crate::import::{Reading, read_folder};
+use crate::network::{Network, build};
+use crate::output::{diagnostics_lines, diagnostics_text, summary_text};
+use crate::study::summary::summary;
+
+/// A folder read and joined: the network where nothing is wrong, all remarks in the order of the files.
+pub(super) struct Loaded {
+    pub network: Option<Network>,
+    pub diagnostics: Diagnostics,
+    pub input_sha256: String,
+}
+
+/// Reads a folder and builds its network, gathering the faults of both.
+pub(super) fn load(folder: &std::path::Path, screen: &mut Screen) -> Loaded {
+    screen.doing("reading");
+    let Reading { draft, mut diagnostics, input_sha256 } = read_folder(folder);
+    let unreadable = draft.sources.files().is_empty();
+    let mut network = None;
+    if !unreadable {
+        let built = build(&draft);
+        diagnostics.append(built.diagnostics);
+        diagnostics.sort_by_place(&draft.sources);
+        network = built.network.filter(|_| !diagnostics.has_errors());
+    }
+    Loaded { network, diagnostics, input_sha256 }
+}
+
+/// Prints faults and a summary of what was read.
+pub(super) fn check(options: &Check, screen: &mut Screen) -> Outcome {
+    let loaded = load(&options.folder, screen);
+    let summary = loaded.network.as_ref().map(summary);
+    match options.format {
+        CheckFormat::Lines => screen.print(&diagnostics_lines(&loaded.diagnostics)),
+        CheckFormat::Json => {
+            let object = serde_json::json!({
+                "fourwire": env!("CARGO_PKG_VERSION"),
+                "input_sha256": loaded.input_sha256,
+                "diagnostics": loaded.diagnostics.items(),
+                "summary": summary,
+            });
+            screen.print(&format!("{object:#}\n"));
+        }
+        CheckFormat::Text => {
+            let mut text = diagnostics_text(&loaded.diagnostics, screen.colour_on_stdout());
+            if let Some(summary) = &summary {
+                text.push_str(&summary_text(summary));
+            }
+            text.push_str(&verdict(&loaded.diagnostics));
+            screen.print(&text);
+        }
+    }
+    if loaded.diagnostics.has_errors() { Outcome::WrongInput } else { Outcome::Done }
+}
+
+/// The last line: how many faults.
+pub(super) fn verdict(diagnostics: &Diagnostics) -> String {
+    let counted = |n: usize, one: &str| format!("{n} {one}{}", if n == 1 { "" } else { "s" });
+    match diagnostics.counts() {
+        (0, 0) => "Nothing wrong found.\n".to_string(),
+        (0, warnings) => format!("No errors, {}.\n", counted(warnings, "warning")),
+        (errors, 0) => format!("{}; nothing was solved or written.\n", counted(errors, "error")),
+        (errors, warnings) => {
+            format!(
+                "{} and {}; nothing was solved or written.\n",
+                counted(errors, "error"),
+                counted(warnings, "warning")
+            )
+        }
+    }
+}

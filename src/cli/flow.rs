@@ -1,0 +1,114 @@
+//! `fourwire flow`.
+
+use std::fmt::Write as _;
+use std::io;
+
+use super::args::{Flow, FlowFormat};
+use super::check::{load, verdict};
+use super::{Outcome, Screen};
+use crate::network::Network;
+use crate::output::{Folder, Length, diagnostics_text, flow_csv, flow_json, flow_text};
+use crate::solver::{Settings, Solution, Status, solve_regulated};
+use crate::study::flow::FlowReport;
+use crate::study::loadability::{Loadability, loadability};
+
+/// Reads, solves and prints or writes the results.
+pub(super) fn flow(options: &Flow, screen: &mut Screen) -> Outcome {
+    if options.format == FlowFormat::Csv && options.out.is_none() {
+        screen.tell("error: --format csv writes several files; say where with --out DIR\n");
+        return Outcome::WrongInput;
+    }
+    let loaded = load(&options.folder, screen);
+    if !loaded.diagnostics.items().is_empty() {
+        let text = diagnostics_text(&loaded.diagnostics, screen.colour_on_stderr());
+        screen.tell(&text);
+    }
+    let Some(mut network) = loaded.network else {
+        screen.tell(&verdict(&loaded.diagnostics));
+        return Outcome::WrongInput;
+    };
+    screen.doing("solving");
+    let settings = Settings::default();
+    let (solution, units) = solve_regulated(&mut network, &settings);
+    let Some(report) = FlowReport::new(&network, &solution, &units, &loaded.input_sha256) else {
+        screen.tell(&no_solution(&network, &solution));
+        return Outcome::NoSolution;
+    };
+    screen.doing("writing");
+    if let Err(error) = deliver(options, &network, &solution, &report, screen) {
+        screen.tell(&format!("error: the results cannot be written: {error}\n"));
+        return Outcome::WrongInput;
+    }
+    if options.loadability {
+        screen.doing("looking for the loadability limit");
+        let found = loadability(&network, &settings);
+        let text = loadability_text(&found);
+        if options.format == FlowFormat::Text { screen.print(&text) } else { screen.tell(&text) }
+    }
+    if options.strict && report.exceeds_a_limit() { Outcome::LimitExceeded } else { Outcome::Done }
+}
+
+fn deliver(
+    options: &Flow,
+    network: &Network,
+    solution: &Solution,
+    report: &FlowReport,
+    screen: &mut Screen,
+) -> io::Result<()> {
+    let length = if options.all { Length::Full } else { Length::Short };
+    let page = || flow_text(network, solution, report, length);
+    let Some(out) = &options.out else {
+        match options.format {
+            FlowFormat::Json => screen.print_with(|writer| flow_json(report, writer)),
+            FlowFormat::Text | FlowFormat::Csv => screen.print(&page()),
+        }
+        return Ok(());
+    };
+    let folder = Folder::new(out, &options.folder)?;
+    match options.format {
+        FlowFormat::Json => folder.write("flow.json", |writer| flow_json(report, writer))?,
+        FlowFormat::Text => folder.write("flow.txt", |writer| writer.write_all(page().as_bytes()))?,
+        FlowFormat::Csv => flow_csv(report, &folder)?,
+    }
+    screen.tell(&format!("results written to {}\n", out.display()));
+    Ok(())
+}
+
+/// What to say instead of results.
+fn no_solution(network: &Network, solution: &Solution) -> String {
+    let place = &network.node(solution.worst_node).name;
+    let mut text = String::new();
+    let why = match solution.status {
+        Status::Singular(node) => format!(
+            "the linear part of the network has no solution at node {}: a side without any path to earth, or impedances that cancel",
+            network.node(node).name
+        ),
+        Status::Diverged => {
+            format!("the iteration grew beyond all bounds after {} iterations", solution.iterations)
+        }
+        _ => format!("the voltages have not settled after {} iterations", solution.iterations),
+    };
+    let _ = writeln!(text, "error[no-solution]: {why}.");
+    if !matches!(solution.status, Status::Singular(_)) {
+        let _ = writeln!(
+            text,
+            "  Worst at node {place}: last change {:.1e} of nominal, current mismatch {:.1e} A.",
+            solution.change_pu, solution.mismatch_amps
+        );
+    }
+    text.push_str(
+        "  Look at: load beyond what the feeder can carry, a length or impedance in the wrong unit,\n  \
+         a missing transformer, a load in kW that was meant in W. No results are shown, since none are good.\n",
+    );
+    text
+}
+
+fn loadability_text(found: &Loadability) -> String {
+    match (found.factor, &found.weakest_node, found.weakest_pu) {
+        (None, ..) => format!("Loadability: loads can grow {} times and more\n", found.solved_factor),
+        (Some(factor), Some(node), Some(pu)) => format!(
+            "Loadability: all loads can grow to {factor:.3} times; then node {node} gives way, at {pu:.3} pu\n"
+        ),
+        (Some(factor), ..) => format!("Loadability: all loads can grow to {factor:.3} times\n"),
+    }
+}

@@ -1,0 +1,118 @@
+//! The one-screen summary of `check`.
+
+use std::fmt::Write as _;
+
+use super::table::{Cell, Column, Table, number};
+use crate::study::summary::Summary;
+
+/// The summary as text.
+pub fn summary_text(summary: &Summary) -> String {
+    let mut text = String::new();
+    let name = if summary.network.is_empty() { "Network without a name" } else { &summary.network };
+    let level = match summary.source_mva {
+        Some(mva) => format!("fault level {} MVA", number(mva, 1)),
+        None => "stiff".to_string(),
+    };
+    let _ = writeln!(text, "{name}");
+    let _ = writeln!(
+        text,
+        "Source at node {}, {} kV, {} Hz, {level}\n",
+        summary.source_node, summary.source_kv, summary.frequency_hz
+    );
+    section(&mut text, "Nodes", &nodes(summary));
+    section(&mut text, "Lines", &lines(summary));
+    section(&mut text, "Transformers", &transformers(summary));
+    section(&mut text, "Loads at nominal voltage", &loads(summary));
+    section(&mut text, "Load by phase", &phases(summary));
+    let _ = writeln!(
+        text,
+        "Closed switches {}, regulated phases {}, capacitors {} ({} kvar)",
+        summary.switches,
+        summary.regulated_phases,
+        summary.capacitors,
+        number(summary.capacitor_kvar, 1)
+    );
+    text
+}
+
+fn section(text: &mut String, heading: &str, table: &Table) {
+    if table.rows.is_empty() {
+        let _ = writeln!(text, "{heading}: none\n");
+    } else {
+        let _ = writeln!(text, "{heading}\n{}", table.text());
+    }
+}
+
+fn nodes(summary: &Summary) -> Table {
+    let mut table = Table::new(&[
+        Column::number("nominal", "kV", 3),
+        Column::number("nodes", "", 0),
+        Column::number("earthed", "", 0),
+    ]);
+    for row in &summary.nodes {
+        table.rows.push(vec![Cell::Number(row.kv), count(row.nodes), count(row.electrodes)]);
+    }
+    table
+}
+
+fn lines(summary: &Summary) -> Table {
+    let mut table = Table::new(&[
+        Column::text("conductors"),
+        Column::number("lines", "", 0),
+        Column::number("length", "km", 3),
+    ]);
+    for row in &summary.lines {
+        table.rows.push(vec![Cell::Text(row.conductors.clone()), count(row.lines), Cell::Number(row.km)]);
+    }
+    table
+}
+
+fn transformers(summary: &Summary) -> Table {
+    let mut table = Table::new(&[
+        Column::text("group"),
+        Column::number("number", "", 0),
+        Column::number("rating", "kVA", 1),
+    ]);
+    for row in &summary.transformers {
+        table.rows.push(vec![Cell::Text(row.group.clone()), count(row.transformers), Cell::Number(row.kva)]);
+    }
+    table
+}
+
+fn loads(summary: &Summary) -> Table {
+    let mut table = Table::new(&[
+        Column::text("constant"),
+        Column::number("loads", "", 0),
+        Column::number("active", "kW", 2),
+        Column::number("reactive", "kvar", 2),
+    ]);
+    for row in &summary.loads {
+        table.rows.push(vec![
+            Cell::Text(row.model.to_string()),
+            count(row.loads),
+            Cell::Number(row.kw),
+            Cell::Number(row.kvar),
+        ]);
+    }
+    table
+}
+
+fn phases(summary: &Summary) -> Table {
+    let mut table = Table::new(&[
+        Column::text("phase"),
+        Column::number("active", "kW", 2),
+        Column::number("reactive", "kvar", 2),
+    ]);
+    for row in &summary.phases {
+        table.rows.push(vec![
+            Cell::Text(row.phase.to_string()),
+            Cell::Number(row.kw),
+            Cell::Number(row.kvar),
+        ]);
+    }
+    table
+}
+
+fn count(number: usize) -> Cell {
+    Cell::Number(number as f64)
+}

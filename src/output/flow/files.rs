@@ -1,0 +1,178 @@
+//! Results of `flow` as JSON and as a folder of CSV files, with the same names in both.
+
+use std::io::{self, Write};
+
+use crate::output::csv::{Field, write_row};
+use crate::output::files::Folder;
+use crate::study::flow::FlowReport;
+
+/// Writes the report as one JSON object.
+///
+/// # Errors
+/// What the writer says.
+pub fn flow_json(report: &FlowReport, writer: &mut dyn Write) -> io::Result<()> {
+    serde_json::to_writer_pretty(&mut *writer, report)?;
+    writeln!(writer)
+}
+
+/// Writes every list of the report as a CSV file of the folder.
+///
+/// # Errors
+/// What the file system says; a file is written whole or not at all.
+pub fn flow_csv(report: &FlowReport, folder: &Folder) -> io::Result<()> {
+    voltages(report, folder)?;
+    currents(report, folder)?;
+    elements(report, folder)?;
+    list(
+        folder,
+        "nodes_summary.csv",
+        &["node", "unbalance_percent", "neutral_volts"],
+        &report.nodes_summary,
+        |r| vec![Field::Text(&r.node), r.unbalance_percent.into(), r.neutral_volts.into()],
+    )?;
+    list(folder, "source.csv", &["conductor", "kw", "kvar", "amps", "degrees"], &report.source, |r| {
+        vec![
+            Field::Text(r.conductor),
+            Field::Number(r.kw),
+            Field::Number(r.kvar),
+            Field::Number(r.amps),
+            Field::Number(r.degrees),
+        ]
+    })?;
+    list(
+        folder,
+        "regulators.csv",
+        &["regulator", "phase", "tap", "automatic", "at_limit"],
+        &report.regulators,
+        |r| {
+            vec![
+                Field::Text(&r.regulator),
+                Field::Text(r.phase),
+                Field::Whole(i64::from(r.tap)),
+                Field::Flag(r.automatic),
+                Field::Flag(r.at_limit),
+            ]
+        },
+    )?;
+    list(
+        folder,
+        "loads.csv",
+        &["load", "at", "kw", "kvar", "lowest_pu", "below_floor"],
+        &report.loads,
+        |r| {
+            vec![
+                Field::Text(&r.load),
+                Field::Text(&r.at),
+                Field::Number(r.kw),
+                Field::Number(r.kvar),
+                Field::Number(r.lowest_pu),
+                Field::Flag(r.below_floor),
+            ]
+        },
+    )?;
+    findings(report, folder)?;
+    totals(report, folder)
+}
+
+fn list<T>(
+    folder: &Folder,
+    name: &str,
+    columns: &[&str],
+    rows: &[T],
+    fields: impl Fn(&T) -> Vec<Field<'_>>,
+) -> io::Result<()> {
+    folder.write(name, |out| {
+        let mut writer = csv::Writer::from_writer(out);
+        writer.write_record(columns)?;
+        for row in rows {
+            write_row(&mut writer, &fields(row))?;
+        }
+        writer.flush()
+    })
+}
+
+fn voltages(report: &FlowReport, folder: &Folder) -> io::Result<()> {
+    list(folder, "nodes.csv", &["node", "conductor", "volts", "degrees", "pu"], &report.nodes, |r| {
+        vec![
+            Field::Text(&r.node),
+            Field::Text(r.conductor),
+            Field::Number(r.volts),
+            Field::Number(r.degrees),
+            r.pu.into(),
+        ]
+    })
+}
+
+fn currents(report: &FlowReport, folder: &Folder) -> io::Result<()> {
+    let columns = ["element", "kind", "conductor", "from_amps", "from_degrees", "to_amps", "to_degrees"];
+    list(folder, "currents.csv", &columns, &report.currents, |r| {
+        vec![
+            Field::Text(&r.element),
+            Field::Text(r.kind),
+            Field::Text(r.conductor),
+            Field::Number(r.from_amps),
+            Field::Number(r.from_degrees),
+            Field::Number(r.to_amps),
+            Field::Number(r.to_degrees),
+        ]
+    })
+}
+
+fn elements(report: &FlowReport, folder: &Folder) -> io::Result<()> {
+    let columns = ["element", "kind", "loss_kw", "loss_kvar", "rating_percent"];
+    list(folder, "elements.csv", &columns, &report.elements, |r| {
+        vec![
+            Field::Text(&r.element),
+            Field::Text(r.kind),
+            Field::Number(r.loss_kw),
+            Field::Number(r.loss_kvar),
+            r.rating_percent.into(),
+        ]
+    })
+}
+
+fn findings(report: &FlowReport, folder: &Folder) -> io::Result<()> {
+    let columns = ["severity", "rule", "where", "value", "limit", "text"];
+    list(folder, "findings.csv", &columns, &report.findings, |r| {
+        vec![
+            Field::Text(r.severity.word()),
+            Field::Text(r.rule.text()),
+            Field::Text(&r.place),
+            Field::Number(r.value),
+            r.limit.into(),
+            Field::Text(&r.text),
+        ]
+    })
+}
+
+/// Totals, and what identifies the run, as rows of name and value.
+fn totals(report: &FlowReport, folder: &Folder) -> io::Result<()> {
+    let t = &report.totals;
+    let rows: Vec<(&str, Field)> = vec![
+        ("fourwire", Field::Text(report.fourwire)),
+        ("network", Field::Text(&report.network)),
+        ("input_sha256", Field::Text(&report.input_sha256)),
+        ("converged", Field::Flag(report.converged)),
+        ("iterations", Field::Number(report.iterations as f64)),
+        ("mismatch_a", Field::Number(report.mismatch_a)),
+        ("source_kw", Field::Number(t.source_kw)),
+        ("source_kvar", Field::Number(t.source_kvar)),
+        ("load_kw", Field::Number(t.load_kw)),
+        ("load_kvar", Field::Number(t.load_kvar)),
+        ("loss_kw", Field::Number(t.loss_kw)),
+        ("loss_kvar", Field::Number(t.loss_kvar)),
+        ("line_loss_kw", Field::Number(t.line_loss_kw)),
+        ("neutral_loss_kw", Field::Number(t.neutral_loss_kw)),
+        ("transformer_loss_kw", Field::Number(t.transformer_loss_kw)),
+        ("earth_loss_kw", Field::Number(t.earth_loss_kw)),
+        ("capacitor_kvar", Field::Number(t.capacitor_kvar)),
+    ];
+    folder.write("totals.csv", |out| {
+        let mut writer = csv::Writer::from_writer(out);
+        writer.write_record(["total", "value"])?;
+        for (name, value) in rows {
+            write_row(&mut writer, &[Field::Text(name), value])?;
+        }
+        writer.flush()
+    })
+}

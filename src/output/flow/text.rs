@@ -1,0 +1,276 @@
+//! The terminal page of `flow`: the answer at a glance, findings, then tables.
+
+use std::collections::HashMap;
+use std::fmt::Write as _;
+
+use crate::math::degrees;
+use crate::network::{BranchKind, Conductor, Network, NodeId};
+use crate::output::table::{Cell, Column, Table, WIDTH, number};
+use crate::solver::Solution;
+use crate::study::flow::{Extreme, Finding, FlowReport};
+
+/// How much of the tables is shown.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Length {
+    /// The worst twenty rows of a long table, the first few findings of a rule.
+    Short,
+    /// Everything.
+    Full,
+}
+
+/// Rows of a long table that are shown.
+const WORST: usize = 20;
+/// Findings of one rule that are shown.
+const FINDINGS: usize = 5;
+
+/// The page as text, at most 100 columns wide.
+pub fn flow_text(network: &Network, solution: &Solution, report: &FlowReport, length: Length) -> String {
+    let mut text = String::new();
+    head(&mut text, report);
+    totals(&mut text, report);
+    glance(&mut text, network, report);
+    findings(&mut text, report, length);
+    nodes(&mut text, network, solution, report, length);
+    branches(&mut text, network, solution, report, length);
+    regulators(&mut text, report);
+    text
+}
+
+fn head(text: &mut String, report: &FlowReport) {
+    let name = if report.network.is_empty() { "Network without a name" } else { &report.network };
+    let _ = writeln!(text, "{name}");
+    let _ = writeln!(
+        text,
+        "Converged in {} iterations; largest current mismatch {:.1e} A by an independent check.\n",
+        report.iterations, report.mismatch_a
+    );
+}
+
+fn totals(text: &mut String, report: &FlowReport) {
+    let t = &report.totals;
+    let share =
+        |kw: f64| if t.source_kw.abs() > 0.0 { Cell::Number(100.0 * kw / t.source_kw) } else { Cell::Blank };
+    let mut table = Table::new(&[
+        Column::text("Power"),
+        Column::number("active", "kW", 3),
+        Column::number("reactive", "kvar", 3),
+        Column::number("of source", "%", 2),
+    ]);
+    let mut row = |name: &str, kw: f64, kvar: Option<f64>| {
+        table.rows.push(vec![Cell::Text(name.to_string()), Cell::Number(kw), kvar.into(), share(kw)]);
+    };
+    row("source", t.source_kw, Some(t.source_kvar));
+    row("loads and capacitors", t.load_kw, Some(t.load_kvar));
+    row("losses", t.loss_kw, Some(t.loss_kvar));
+    row("  phase conductors", t.line_loss_kw, None);
+    if report.glance.neutral_volts.is_some() {
+        row("  neutral conductors", t.neutral_loss_kw, None);
+        row("  earth electrodes", t.earth_loss_kw, None);
+    }
+    row("  transformers", t.transformer_loss_kw, None);
+    let _ = writeln!(text, "{}", table.text());
+}
+
+fn glance(text: &mut String, network: &Network, report: &FlowReport) {
+    let study = &network.study;
+    let g = &report.glance;
+    let mut table = Table::new(&[
+        Column::text("At a glance"),
+        Column::number("value", "", 0),
+        Column::text("where"),
+        Column::text("limit"),
+    ]);
+    let mut row =
+        |name: &str, extreme: &Option<Extreme>, decimals: usize, unit: &str, limit: String, none: &str| {
+            let (value, place) = match extreme {
+                Some(e) => (format!("{} {unit}", number(e.value, decimals)), e.place.clone()),
+                None => ("-".to_string(), none.to_string()),
+            };
+            table.rows.push(vec![
+                Cell::Text(name.to_string()),
+                Cell::Text(value),
+                Cell::Text(place),
+                Cell::Text(limit),
+            ]);
+        };
+    let pu = |percent: f64| format!("{} pu", number(percent / 100.0, 3));
+    row("lowest voltage", &g.lowest_pu, 4, "pu", pu(study.voltage_low_percent), "no phases");
+    row("highest voltage", &g.highest_pu, 4, "pu", pu(study.voltage_high_percent), "no phases");
+    let drop = format!("{} %", study.drop_limit_percent);
+    row("largest drop since last set", &g.drop_percent, 2, "%", drop, "no lines");
+    let unbalance = format!("{} %", study.unbalance_limit_percent);
+    row("largest unbalance factor", &g.unbalance_percent, 2, "%", unbalance, "no three-phase node");
+    row("highest neutral current", &g.neutral_amps, 2, "A", String::new(), "no line carries a neutral");
+    let neutral = study.neutral_limit_v.map_or("none given".to_string(), |v| format!("{v} V"));
+    row("highest neutral to earth", &g.neutral_volts, 2, "V", neutral, "no node carries a neutral");
+    row("most loaded element", &g.rating_percent, 1, "%", "100 %".to_string(), "no ratings given");
+    let _ = writeln!(text, "{}", table.text());
+    let _ = writeln!(
+        text,
+        "  Voltages are phase to neutral where the neutral is carried, else to earth. The drop is counted\n  from the last source, transformer or regulator.\n"
+    );
+}
+
+fn findings(text: &mut String, report: &FlowReport, length: Length) {
+    if report.findings.is_empty() {
+        let _ = writeln!(text, "Findings: none, every limit of the study is kept.\n");
+        return;
+    }
+    let _ = writeln!(text, "Findings: {}", report.findings.len());
+    let mut rest = report.findings.as_slice();
+    while let Some(first) = rest.first() {
+        let same = rest.iter().take_while(|f| f.rule == first.rule).count();
+        let (group, others) = rest.split_at(same);
+        let most = if length == Length::Full { same } else { FINDINGS };
+        for finding in group.iter().take(most) {
+            text.push_str(&wrapped(finding));
+        }
+        if same > most {
+            let _ = writeln!(text, "  {}: and {} more (--all)", first.rule.text(), same - most);
+        }
+        rest = others;
+    }
+    if report.findings.iter().any(|f| matches!(f.rule.text(), "overload" | "neutral voltage")) {
+        let _ = writeln!(
+            text,
+            "  Ratings and touch voltages: the local code and a licensed engineer decide, not this table."
+        );
+    }
+    text.push('\n');
+}
+
+/// One finding, its text folded to the width.
+fn wrapped(finding: &Finding) -> String {
+    let mut lines = String::new();
+    let mut line = format!("  {}: {}:", finding.rule.text(), finding.place);
+    for word in finding.text.split_whitespace() {
+        if line.chars().count() + 1 + word.chars().count() > WIDTH {
+            lines.push_str(&line);
+            lines.push('\n');
+            line = "     ".to_string();
+        }
+        line.push(' ');
+        line.push_str(word);
+    }
+    lines.push_str(&line);
+    lines.push('\n');
+    lines
+}
+
+fn nodes(text: &mut String, network: &Network, solution: &Solution, report: &FlowReport, length: Length) {
+    let lowest = |id: NodeId| -> f64 {
+        let node = network.node(id);
+        phase_pu(network, solution, id)
+            .into_iter()
+            .zip(Conductor::PHASES)
+            .filter(|(_, c)| node.conductors.has(*c))
+            .map(|(v, _)| v.0)
+            .fold(f64::INFINITY, f64::min)
+    };
+    let mut order = network.order.clone();
+    let (shown, heading) = if length == Length::Short && order.len() > WORST {
+        order.sort_by(|&a, &b| lowest(a).total_cmp(&lowest(b)));
+        (WORST, format!("Nodes: the {WORST} lowest of {} (--all for all)", network.nodes.len()))
+    } else {
+        (order.len(), "Nodes, from the source outwards".to_string())
+    };
+    let mut table = Table::new(&[
+        Column::text("node"),
+        Column::number("nominal", "kV", 3),
+        Column::number("a", "pu", 4),
+        Column::number("a", "deg", 2),
+        Column::number("b", "pu", 4),
+        Column::number("b", "deg", 2),
+        Column::number("c", "pu", 4),
+        Column::number("c", "deg", 2),
+        Column::number("n", "V", 2),
+        Column::number("unb.", "%", 2),
+    ]);
+    for &id in order.iter().take(shown) {
+        let node = network.node(id);
+        let mut row = vec![Cell::Text(node.name.to_string()), Cell::Number(node.nominal_volts / 1e3)];
+        for (value, c) in phase_pu(network, solution, id).into_iter().zip(Conductor::PHASES) {
+            let carried = node.conductors.has(c);
+            row.push(if carried { Cell::Number(value.0) } else { Cell::Blank });
+            row.push(if carried { Cell::Number(value.1) } else { Cell::Blank });
+        }
+        let summary = &report.nodes_summary[id.index()];
+        row.push(summary.neutral_volts.into());
+        row.push(summary.unbalance_percent.into());
+        table.rows.push(row);
+    }
+    let _ = writeln!(text, "{heading}\n{}", table.text());
+}
+
+/// Voltage of each phase, per unit and degrees, to neutral where it is carried.
+fn phase_pu(network: &Network, solution: &Solution, id: NodeId) -> [(f64, f64); 3] {
+    let node = network.node(id);
+    let volts = &solution.volts[id.index()];
+    let n = if node.conductors.has_neutral() { volts[Conductor::N.slot()] } else { Default::default() };
+    std::array::from_fn(|k| ((volts[k] - n).norm() / node.nominal_phase_volts(), degrees(volts[k] - n)))
+}
+
+fn branches(text: &mut String, network: &Network, solution: &Solution, report: &FlowReport, length: Length) {
+    if network.branches.is_empty() {
+        return;
+    }
+    let mut order: Vec<usize> = (0..network.branches.len()).collect();
+    let (shown, heading) = if length == Length::Short && order.len() > WORST {
+        let key = |b: usize| (report.elements[b].rating_percent.unwrap_or(0.0), report.elements[b].loss_kw);
+        order.sort_by(|&a, &b| key(b).0.total_cmp(&key(a).0).then(key(b).1.total_cmp(&key(a).1)));
+        (WORST, format!("Branches: the {WORST} most loaded of {} (--all for all)", network.branches.len()))
+    } else {
+        (order.len(), "Branches, currents at the from end".to_string())
+    };
+    let mut table = Table::new(&[
+        Column::text("branch"),
+        Column::text("kind"),
+        Column::number("a", "A", 2),
+        Column::number("b", "A", 2),
+        Column::number("c", "A", 2),
+        Column::number("n", "A", 2),
+        Column::number("loss", "kW", 3),
+        Column::number("rating", "%", 1),
+    ]);
+    for &b in order.iter().take(shown) {
+        let branch = &network.branches[b];
+        let kind = match &branch.kind {
+            BranchKind::Transformer(t) => t.group.to_string(),
+            other => other.word().to_string(),
+        };
+        let mut row = vec![Cell::Text(branch.name.to_string()), Cell::Text(kind)];
+        for c in Conductor::ALL {
+            let amps = solution.from_amps[b][c.slot()].norm();
+            row.push(if branch.from_conductors.has(c) { Cell::Number(amps) } else { Cell::Blank });
+        }
+        row.push(Cell::Number(report.elements[b].loss_kw));
+        row.push(report.elements[b].rating_percent.into());
+        table.rows.push(row);
+    }
+    let _ = writeln!(text, "{heading}\n{}", table.text());
+}
+
+fn regulators(text: &mut String, report: &FlowReport) {
+    if report.regulators.is_empty() {
+        return;
+    }
+    let mut taps: HashMap<&str, String> = HashMap::new();
+    let mut names: Vec<&str> = Vec::new();
+    for r in &report.regulators {
+        let entry = taps.entry(&r.regulator).or_insert_with(|| {
+            names.push(&r.regulator);
+            String::new()
+        });
+        let how = match (r.automatic, r.at_limit) {
+            (false, _) => "held",
+            (true, false) => "automatic",
+            (true, true) => "automatic, at its limit",
+        };
+        let _ = write!(entry, "  {} {:+} ({how})", r.phase, r.tap);
+    }
+    let _ = writeln!(text, "Regulator taps");
+    for name in names {
+        let _ = writeln!(text, "  {name}:{}", taps[name]);
+    }
+    text.push('\n');
+}

@@ -1,0 +1,267 @@
+//! Findings: limits of the study that are exceeded, and what a reader must know to trust the numbers.
+
+use serde::Serialize;
+
+use super::losses::Totals;
+use super::places::{drop_percent, floating_nodes, judged, set_points};
+use super::{ElementLoss, LoadDraw, NodeSummary};
+use crate::network::{BranchKind, Network, NodeId};
+use crate::solver::{RegulatedUnit, Solution, TapState};
+
+/// Conventional limit of touch voltage in normal dry conditions, volts AC (IEC 60364-4-41; from memory).
+const TOUCH_VOLTAGE_V: f64 = 50.0;
+
+/// How much a finding matters.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
+#[serde(rename_all = "lowercase")]
+pub enum FindingSeverity {
+    /// Worth knowing.
+    Note,
+    /// A limit is exceeded, or a number needs care.
+    Warning,
+}
+
+impl FindingSeverity {
+    /// Lower-case word.
+    pub fn word(self) -> &'static str {
+        match self {
+            FindingSeverity::Note => "note",
+            FindingSeverity::Warning => "warning",
+        }
+    }
+}
+
+/// What a finding is about. The text of each is stable.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Serialize)]
+pub enum Rule {
+    /// Voltage below the study's lower limit.
+    #[serde(rename = "low voltage")]
+    LowVoltage,
+    /// Voltage above the study's upper limit.
+    #[serde(rename = "high voltage")]
+    HighVoltage,
+    /// Drop beyond the study's limit.
+    #[serde(rename = "voltage drop")]
+    VoltageDrop,
+    /// Unbalance factor beyond the study's limit.
+    #[serde(rename = "unbalance")]
+    Unbalance,
+    /// Neutral-to-earth voltage beyond the study's limit, or beyond the conventional touch voltage.
+    #[serde(rename = "neutral voltage")]
+    NeutralVoltage,
+    /// Current above rating.
+    #[serde(rename = "overload")]
+    Overload,
+    /// Constant-power load below the floor voltage.
+    #[serde(rename = "load below floor")]
+    BelowFloor,
+    /// Regulator at the end of its range, hunting, or fed backwards.
+    #[serde(rename = "regulator")]
+    Regulator,
+    /// A side that nothing but a stated reference holds to earth.
+    #[serde(rename = "no earth")]
+    NoEarth,
+    /// Source power and the sum of loads and losses differ.
+    #[serde(rename = "power balance")]
+    Balance,
+}
+
+impl Rule {
+    /// The rule as printed.
+    pub fn text(self) -> &'static str {
+        match self {
+            Rule::LowVoltage => "low voltage",
+            Rule::HighVoltage => "high voltage",
+            Rule::VoltageDrop => "voltage drop",
+            Rule::Unbalance => "unbalance",
+            Rule::NeutralVoltage => "neutral voltage",
+            Rule::Overload => "overload",
+            Rule::BelowFloor => "load below floor",
+            Rule::Regulator => "regulator",
+            Rule::NoEarth => "no earth",
+            Rule::Balance => "power balance",
+        }
+    }
+}
+
+/// One finding.
+#[derive(Debug, Clone, PartialEq, Serialize)]
+pub struct Finding {
+    /// How much it matters.
+    pub severity: FindingSeverity,
+    /// What it is about.
+    pub rule: Rule,
+    /// Where.
+    #[serde(rename = "where")]
+    pub place: String,
+    /// The value found, in the unit the text names.
+    pub value: f64,
+    /// The limit it exceeds; none for a remark.
+    pub limit: Option<f64>,
+    /// In words, with unit.
+    pub text: String,
+}
+
+/// What findings are drawn from.
+pub(super) struct Seen<'a> {
+    pub network: &'a Network,
+    pub solution: &'a Solution,
+    pub elements: &'a [ElementLoss],
+    pub nodes: &'a [NodeSummary],
+    pub loads: &'a [LoadDraw],
+    pub units: &'a [RegulatedUnit],
+    pub totals: &'a Totals,
+}
+
+/// All findings, by rule, worst first.
+pub(super) fn all(seen: &Seen) -> Vec<Finding> {
+    let mut found = Vec::new();
+    voltages(seen, &mut found);
+    nodes(seen, &mut found);
+    overloads(seen, &mut found);
+    remarks(seen, &mut found);
+    let excess = |f: &Finding| match (f.rule, f.limit) {
+        (Rule::LowVoltage | Rule::BelowFloor, _) => -f.value,
+        _ => f.value,
+    };
+    found.sort_by(|a, b| a.rule.cmp(&b.rule).then(excess(b).total_cmp(&excess(a))));
+    found
+}
+
+fn warning(rule: Rule, place: String, value: f64, limit: Option<f64>, text: String) -> Finding {
+    Finding { severity: FindingSeverity::Warning, rule, place, value, limit, text }
+}
+
+fn voltages(seen: &Seen, found: &mut Vec<Finding>) {
+    let study = &seen.network.study;
+    let (low, high) = (study.voltage_low_percent / 100.0, study.voltage_high_percent / 100.0);
+    let (floating, set_at) = (floating_nodes(seen.network), set_points(seen.network));
+    for &id in &seen.network.order {
+        let name = &seen.network.node(id).name;
+        for (letters, pu) in judged(seen.network, seen.solution, &floating, id) {
+            let place = || format!("node {name}, {letters}");
+            if pu < low {
+                let text = format!("{:.2} % of nominal, limit {} %", 100.0 * pu, study.voltage_low_percent);
+                found.push(warning(Rule::LowVoltage, place(), pu, Some(low), text));
+            } else if pu > high {
+                let text = format!("{:.2} % of nominal, limit {} %", 100.0 * pu, study.voltage_high_percent);
+                found.push(warning(Rule::HighVoltage, place(), pu, Some(high), text));
+            }
+        }
+        if let Some((percent, c)) = drop_percent(seen.network, seen.solution, &set_at, id)
+            && percent > study.drop_limit_percent
+        {
+            let from = &seen.network.node(set_at[id.index()]).name;
+            let text = format!("{percent:.2} % below node {from}, limit {} %", study.drop_limit_percent);
+            found.push(warning(
+                Rule::VoltageDrop,
+                format!("node {name}, {c}"),
+                percent,
+                Some(study.drop_limit_percent),
+                text,
+            ));
+        }
+    }
+}
+
+fn nodes(seen: &Seen, found: &mut Vec<Finding>) {
+    let study = &seen.network.study;
+    for node in seen.nodes {
+        let place = || format!("node {}", node.node);
+        if let Some(percent) = node.unbalance_percent
+            && percent > study.unbalance_limit_percent
+        {
+            let text = format!("unbalance factor {percent:.2} %, limit {} %", study.unbalance_limit_percent);
+            found.push(warning(Rule::Unbalance, place(), percent, Some(study.unbalance_limit_percent), text));
+        }
+        let Some(volts) = node.neutral_volts else { continue };
+        match study.neutral_limit_v {
+            Some(limit) if volts > limit => {
+                let text = format!("neutral {volts:.2} V above remote earth, limit {limit} V");
+                found.push(warning(Rule::NeutralVoltage, place(), volts, Some(limit), text));
+            }
+            None if volts > TOUCH_VOLTAGE_V => {
+                let text = format!(
+                    "neutral {volts:.2} V above remote earth; {TOUCH_VOLTAGE_V} V is the conventional touch limit"
+                );
+                found.push(warning(Rule::NeutralVoltage, place(), volts, None, text));
+            }
+            _ => {}
+        }
+    }
+}
+
+fn overloads(seen: &Seen, found: &mut Vec<Finding>) {
+    for element in seen.elements {
+        if let Some(percent) = element.rating_percent
+            && percent > 100.0
+        {
+            let text = format!("{percent:.1} % of rating");
+            found.push(warning(
+                Rule::Overload,
+                format!("{} {}", element.kind, element.element),
+                percent,
+                Some(100.0),
+                text,
+            ));
+        }
+    }
+}
+
+fn remarks(seen: &Seen, found: &mut Vec<Finding>) {
+    let floor = seen.network.study.constant_power_floor_percent;
+    for load in seen.loads.iter().filter(|l| l.below_floor) {
+        let text = format!(
+            "{:.1} % of nominal, below {floor} %: taken between constant power and constant impedance, draws {:.2} kW",
+            100.0 * load.lowest_pu,
+            load.kw
+        );
+        found.push(warning(Rule::BelowFloor, format!("load {}", load.load), load.lowest_pu, None, text));
+    }
+    for unit in seen.units {
+        let (word, value) = match unit.state {
+            TapState::Settled => continue,
+            TapState::AtLimit => ("at the end of its range and still outside its band", unit.relay_volts),
+            TapState::Hunting => ("hunts: no tap holds it within its band", unit.relay_volts),
+            TapState::Reversed => ("is fed at its regulated side; its tap was held", unit.relay_volts),
+        };
+        let branch = seen.network.branch(unit.branch);
+        let phase = match &branch.kind {
+            BranchKind::Regulator(bank) => bank.units.get(unit.unit).map_or("", |u| u.phase.letter()),
+            _ => "",
+        };
+        let text = format!("{word} ({value:.2} V at its relay)");
+        found.push(warning(
+            Rule::Regulator,
+            format!("regulator {}, {phase}", branch.name),
+            value,
+            None,
+            text,
+        ));
+    }
+    for (i, node) in seen.network.nodes.iter().enumerate().filter(|(_, n)| n.reference_siemens > 0.0) {
+        let fed = seen.network.feeds[i]
+            .map_or(String::new(), |f| format!(" fed by {}", seen.network.branch(f.branch).name));
+        let what = if node.conductors.has_neutral() { "neutral" } else { "side" };
+        let text = format!(
+            "{what}{fed} is earthed nowhere; held near earth by {:.3} microsiemens, voltages to earth are not to be relied on",
+            node.reference_siemens * 1e6
+        );
+        let place = format!("node {}", seen.network.node(NodeId(i as u32)).name);
+        found.push(Finding {
+            severity: FindingSeverity::Note,
+            rule: Rule::NoEarth,
+            place,
+            value: node.reference_siemens,
+            limit: None,
+            text,
+        });
+    }
+    let t = seen.totals;
+    let off = (t.source_kw - t.load_kw - t.loss_kw).hypot(t.source_kvar - t.load_kvar - t.loss_kvar);
+    let size = t.source_kw.hypot(t.source_kvar).max(t.load_kw.hypot(t.load_kvar));
+    if off > 1e-6 * size {
+        let text = format!("source, loads and losses differ by {off:.6} kVA: do not rely on these results");
+        found.push(warning(Rule::Balance, "network".to_string(), off, None, text));
+    }
+}

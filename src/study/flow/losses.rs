@@ -1,0 +1,147 @@
+//! Losses by element and by kind, and the totals.
+
+use serde::Serialize;
+
+use super::{ElementLoss, LoadDraw, element_volts};
+use crate::math::{Complex64, PhaseVector, SLOTS};
+use crate::network::{Branch, BranchKind, Conductor, Network, Transformer, VectorGroup};
+use crate::solver::Solution;
+use crate::units::SQRT_3;
+
+/// Sums over the network, kilowatts and kilovars. `source` equals `load` plus `loss` to rounding.
+#[derive(Debug, Clone, Copy, PartialEq, Default, Serialize)]
+pub struct Totals {
+    /// Active power at the supply node.
+    pub source_kw: f64,
+    /// Reactive power at the supply node.
+    pub source_kvar: f64,
+    /// Active power of loads and capacitors.
+    pub load_kw: f64,
+    /// Reactive power of loads and capacitors; capacitors count negative.
+    pub load_kvar: f64,
+    /// All losses.
+    pub loss_kw: f64,
+    /// Reactive losses; the charging of lines counts negative.
+    pub loss_kvar: f64,
+    /// Losses of the phase conductors of lines.
+    pub line_loss_kw: f64,
+    /// Losses of neutral conductors.
+    pub neutral_loss_kw: f64,
+    /// Losses of transformers.
+    pub transformer_loss_kw: f64,
+    /// Losses in earth electrodes.
+    pub earth_loss_kw: f64,
+    /// Reactive power of capacitors, which `load_kvar` includes.
+    pub capacitor_kvar: f64,
+}
+
+fn power(volts: &PhaseVector, amps: &PhaseVector) -> Complex64 {
+    (0..SLOTS).map(|k| volts[k] * amps[k].conj()).sum()
+}
+
+/// Loss and loading of every branch, then of every electrode and of every reference to earth.
+pub(super) fn elements(network: &Network, solution: &Solution) -> Vec<ElementLoss> {
+    let mut rows = Vec::with_capacity(network.branches.len());
+    for (b, branch) in network.branches.iter().enumerate() {
+        let (from, to) = (&solution.volts[branch.from.index()], &solution.volts[branch.to.index()]);
+        let (from_amps, to_amps) = (&solution.from_amps[b], &solution.to_amps[b]);
+        let loss = (power(from, from_amps) - power(to, to_amps)) / 1e3;
+        rows.push(ElementLoss {
+            element: branch.name.clone(),
+            kind: branch.kind.word(),
+            loss_kw: loss.re,
+            loss_kvar: loss.im,
+            rating_percent: rating_percent(branch, from_amps, to_amps),
+        });
+    }
+    for (node, volts) in network.nodes.iter().zip(&solution.volts) {
+        let loss: Complex64 = node
+            .earth_admittance()
+            .iter()
+            .enumerate()
+            .map(|(k, y)| volts[k].norm_sqr() * y.conj())
+            .sum::<Complex64>()
+            / 1e3;
+        if node.earth_ohm.is_some() || node.reference_siemens > 0.0 {
+            rows.push(ElementLoss {
+                element: node.name.clone(),
+                kind: if node.earth_ohm.is_some() { "electrode" } else { "reference" },
+                loss_kw: loss.re,
+                loss_kvar: loss.im,
+                rating_percent: None,
+            });
+        }
+    }
+    rows
+}
+
+/// Largest phase current over the rating, percent.
+fn rating_percent(branch: &Branch, from: &PhaseVector, to: &PhaseVector) -> Option<f64> {
+    let largest =
+        |amps: &PhaseVector| Conductor::PHASES.iter().map(|c| amps[c.slot()].norm()).fold(0.0, f64::max);
+    match &branch.kind {
+        BranchKind::Line(_) => Some(100.0 * largest(from).max(largest(to)) / branch.rating_amps?),
+        BranchKind::Transformer(t) => {
+            let share = |amps: f64, volts: f64| 100.0 * amps / rated_amps(t, volts);
+            Some(share(largest(from), t.from_volts).max(share(largest(to), t.to_volts)))
+        }
+        BranchKind::Switch | BranchKind::Regulator(_) => None,
+    }
+}
+
+/// Rated current of a side, amperes: in each line conductor of a bank, in the winding of a single-phase unit.
+fn rated_amps(t: &Transformer, volts: f64) -> f64 {
+    match t.group {
+        VectorGroup::Three { .. } => t.rated_va / (SQRT_3 * volts),
+        VectorGroup::Single { .. } => t.rated_va / volts,
+    }
+}
+
+/// Totals of the network.
+pub(super) fn totals(
+    network: &Network,
+    solution: &Solution,
+    elements: &[ElementLoss],
+    loads: &[LoadDraw],
+) -> Totals {
+    let source = power(&solution.volts[network.supply.node.index()], &solution.source_amps) / 1e3;
+    let mut totals = Totals { source_kw: source.re, source_kvar: source.im, ..Totals::default() };
+    for load in loads {
+        totals.load_kw += load.kw;
+        totals.load_kvar += load.kvar;
+    }
+    for capacitor in &network.capacitors {
+        let siemens =
+            capacitor.vars / capacitor.connection.elements().max(1) as f64 / capacitor.rated_volts.powi(2);
+        let volts = element_volts(network, solution, capacitor.node, capacitor.connection);
+        totals.capacitor_kvar -= volts.map(|u| u.norm_sqr() * siemens).sum::<f64>() / 1e3;
+    }
+    totals.load_kvar += totals.capacitor_kvar;
+    for element in elements {
+        totals.loss_kw += element.loss_kw;
+        totals.loss_kvar += element.loss_kvar;
+        match element.kind {
+            "transformer" => totals.transformer_loss_kw += element.loss_kw,
+            "electrode" | "reference" => totals.earth_loss_kw += element.loss_kw,
+            _ => totals.line_loss_kw += element.loss_kw,
+        }
+    }
+    totals.neutral_loss_kw = neutral_loss_kw(network, solution);
+    totals.line_loss_kw -= totals.neutral_loss_kw;
+    totals
+}
+
+/// Losses of the neutrals of lines: `Re((V_from,n - V_to,n) conj(I_n))`, with `I_n` the mean of both ends,
+/// which leaves the charging out. Its share of the common earth path is in it.
+fn neutral_loss_kw(network: &Network, solution: &Solution) -> f64 {
+    let n = Conductor::N.slot();
+    let lines = network.branches.iter().enumerate().filter(|(_, b)| matches!(b.kind, BranchKind::Line(_)));
+    lines
+        .filter(|(_, branch)| branch.from_conductors.has_neutral())
+        .map(|(b, branch)| {
+            let drop = solution.volts[branch.from.index()][n] - solution.volts[branch.to.index()][n];
+            let amps = (solution.from_amps[b][n] + solution.to_amps[b][n]) / 2.0;
+            (drop * amps.conj()).re / 1e3
+        })
+        .sum()
+}

@@ -1,0 +1,163 @@
+//! The extremes that a reader looks for first.
+
+use super::{ElementLoss, NodeSummary, phase_volts};
+use crate::network::{BranchKind, Conductor, Conductors, Network, NodeId};
+use crate::solver::Solution;
+
+/// An extreme value and where it is.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Extreme {
+    /// The value, in the unit its field names.
+    pub value: f64,
+    /// Node or element, with the conductors where they matter: `node 652, a`.
+    pub place: String,
+}
+
+/// Extremes of a solved network; `None` where there is nothing to compare.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub struct Glance {
+    /// Lowest voltage across a load's terminals at any node, per unit.
+    pub lowest_pu: Option<Extreme>,
+    /// Highest, per unit.
+    pub highest_pu: Option<Extreme>,
+    /// Largest drop from the last source, transformer or regulator, percent of nominal.
+    pub drop_percent: Option<Extreme>,
+    /// Largest unbalance factor, percent.
+    pub unbalance_percent: Option<Extreme>,
+    /// Highest neutral current of a line, amperes.
+    pub neutral_amps: Option<Extreme>,
+    /// Highest voltage of a neutral to remote earth, volts.
+    pub neutral_volts: Option<Extreme>,
+    /// Most loaded element, percent of its rating.
+    pub rating_percent: Option<Extreme>,
+}
+
+/// Voltages that are judged at a node: phase to neutral (or earth); between phases on a side that no earth holds.
+pub(super) fn judged(
+    network: &Network,
+    solution: &Solution,
+    floating: &[bool],
+    id: NodeId,
+) -> Vec<(String, f64)> {
+    let node = network.node(id);
+    let volts = phase_volts(node, &solution.volts[id.index()]);
+    if floating[id.index()] && !node.conductors.has_neutral() {
+        let pairs = Conductor::PHASES.into_iter().map(|c| (c, c.next()));
+        return pairs
+            .filter(|(p, q)| node.conductors.has(*p) && node.conductors.has(*q))
+            .map(|(p, q)| {
+                (format!("{p}{q}"), (volts[p.slot()] - volts[q.slot()]).norm() / node.nominal_volts)
+            })
+            .collect();
+    }
+    let phases = node.conductors.phases().iter();
+    phases.map(|c| (c.letter().to_string(), volts[c.slot()].norm() / node.nominal_phase_volts())).collect()
+}
+
+/// Whether each node's side has no earth of its own but a stated reference.
+pub(super) fn floating_nodes(network: &Network) -> Vec<bool> {
+    let mut floating = vec![false; network.nodes.len()];
+    for &id in &network.order {
+        let inherits = network.feeds[id.index()]
+            .filter(|feed| !matches!(network.branch(feed.branch).kind, BranchKind::Transformer(_)))
+            .is_some_and(|feed| floating[feed.parent.index()]);
+        floating[id.index()] = inherits || network.node(id).reference_siemens > 0.0;
+    }
+    floating
+}
+
+/// For each node, where the voltage was last set on its way: the supply, a transformer's or a regulator's far node.
+pub(super) fn set_points(network: &Network) -> Vec<NodeId> {
+    let mut set_at = vec![network.supply.node; network.nodes.len()];
+    for &id in &network.order {
+        set_at[id.index()] = match network.feeds[id.index()] {
+            None => id,
+            Some(feed) => match network.branch(feed.branch).kind {
+                BranchKind::Transformer(_) | BranchKind::Regulator(_) => id,
+                BranchKind::Line(_) | BranchKind::Switch => set_at[feed.parent.index()],
+            },
+        };
+    }
+    set_at
+}
+
+/// Largest drop at a node from where its voltage was last set, percent of nominal, with the phase.
+pub(super) fn drop_percent(
+    network: &Network,
+    solution: &Solution,
+    set_at: &[NodeId],
+    id: NodeId,
+) -> Option<(f64, Conductor)> {
+    let head = set_at[id.index()];
+    if head == id {
+        return None;
+    }
+    let (node, start) = (network.node(id), network.node(head));
+    let here = phase_volts(node, &solution.volts[id.index()]);
+    let there = phase_volts(start, &solution.volts[head.index()]);
+    let drop = |c: Conductor| {
+        let fall = there[c.slot()].norm() - here[c.slot()].norm();
+        (100.0 * fall / node.nominal_phase_volts(), c)
+    };
+    node.conductors.phases().iter().map(drop).max_by(|a, b| a.0.total_cmp(&b.0))
+}
+
+fn keep(
+    slot: &mut Option<Extreme>,
+    value: f64,
+    place: impl FnOnce() -> String,
+    better: impl Fn(f64, f64) -> bool,
+) {
+    if slot.as_ref().is_none_or(|e| better(value, e.value)) {
+        *slot = Some(Extreme { value, place: place() });
+    }
+}
+
+/// Finds the extremes.
+pub(super) fn glance(
+    network: &Network,
+    solution: &Solution,
+    elements: &[ElementLoss],
+    nodes: &[NodeSummary],
+) -> Glance {
+    let mut glance = Glance::default();
+    let greater = |a: f64, b: f64| a > b;
+    let (floating, set_at) = (floating_nodes(network), set_points(network));
+    for (i, summary) in nodes.iter().enumerate() {
+        let id = NodeId(i as u32);
+        let name = &network.node(id).name;
+        for (letters, pu) in judged(network, solution, &floating, id) {
+            keep(&mut glance.lowest_pu, pu, || format!("node {name}, {letters}"), |a, b| a < b);
+            keep(&mut glance.highest_pu, pu, || format!("node {name}, {letters}"), greater);
+        }
+        if let Some((percent, c)) = drop_percent(network, solution, &set_at, id) {
+            keep(&mut glance.drop_percent, percent, || format!("node {name}, {c}"), greater);
+        }
+        if let Some(percent) = summary.unbalance_percent {
+            keep(&mut glance.unbalance_percent, percent, || format!("node {name}"), greater);
+        }
+        if let Some(volts) = summary.neutral_volts {
+            keep(&mut glance.neutral_volts, volts, || format!("node {name}"), greater);
+        }
+    }
+    for (b, branch) in network.branches.iter().enumerate() {
+        let neutral =
+            matches!(branch.kind, BranchKind::Line(_)) && Conductors::N.is_subset_of(branch.from_conductors);
+        if neutral {
+            let n = Conductor::N.slot();
+            let amps = solution.from_amps[b][n].norm().max(solution.to_amps[b][n].norm());
+            keep(&mut glance.neutral_amps, amps, || format!("line {}", branch.name), greater);
+        }
+    }
+    for element in elements {
+        if let Some(percent) = element.rating_percent {
+            keep(
+                &mut glance.rating_percent,
+                percent,
+                || format!("{} {}", element.kind, element.element),
+                greater,
+            );
+        }
+    }
+    glance
+}

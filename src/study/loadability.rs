@@ -1,0 +1,92 @@
+//! How far all loads can grow together until the feeder has no solution, and where it gives way.
+
+use crate::network::{Network, NodeId};
+use crate::solver::{Settings, Solution, Status, solve};
+
+/// Factors are told apart down to this share.
+const RESOLUTION: f64 = 1e-3;
+/// Growth beyond this is not looked for.
+const MOST: f64 = 1000.0;
+
+/// Result of [`loadability`].
+#[derive(Debug, Clone, PartialEq, serde::Serialize)]
+pub struct Loadability {
+    /// Largest factor on all loads with a solution; `None` where none is found up to the highest tried.
+    pub factor: Option<f64>,
+    /// Largest factor that was solved.
+    pub solved_factor: f64,
+    /// Name of the node whose voltage falls fastest with load at that factor.
+    pub weakest_node: Option<String>,
+    /// Lowest voltage of that node's phases at that factor, per unit.
+    pub weakest_pu: Option<f64>,
+}
+
+/// Grows all loads by one factor and finds, by bisection to 0.1 %, the largest with a solution.
+///
+/// Constant-power loads stay constant power at any voltage here (the floor of the study is left
+/// out): it is their demand that a feeder cannot meet. A factor counts as solved only where the
+/// solve passes both convergence tests. A network that has no solution as it stands gives a
+/// factor below 1.
+pub fn loadability(network: &Network, settings: &Settings) -> Loadability {
+    let attempt = |factor: f64| {
+        let grown = grown(network, factor);
+        let solution = solve(&grown, settings);
+        (solution.status == Status::Converged).then_some(solution)
+    };
+    let (mut low, mut high, mut solved) = (0.0, None, None);
+    let mut factor = 1.0;
+    while high.is_none() && factor <= MOST {
+        match attempt(factor) {
+            Some(solution) => (low, solved) = (factor, Some(solution)),
+            None => high = Some(factor),
+        }
+        factor *= 2.0;
+    }
+    let Some(mut high) = high else {
+        return Loadability { factor: None, solved_factor: low, weakest_node: None, weakest_pu: None };
+    };
+    while high - low > RESOLUTION * high && high > 1e-6 {
+        let middle = 0.5 * (low + high);
+        match attempt(middle) {
+            Some(solution) => (low, solved) = (middle, Some(solution)),
+            None => high = middle,
+        }
+    }
+    let weakest = solved.and_then(|at_limit| {
+        let before = attempt(low * 0.99)?;
+        weakest(network, &before, &at_limit)
+    });
+    Loadability {
+        factor: Some(low),
+        solved_factor: low,
+        weakest_node: weakest.map(|(id, _)| network.node(id).name.to_string()),
+        weakest_pu: weakest.map(|(_, pu)| pu),
+    }
+}
+
+/// The network with every load multiplied and the floor of constant power taken away.
+fn grown(network: &Network, factor: f64) -> Network {
+    let mut grown = network.clone();
+    grown.study.constant_power_floor_percent = 0.0;
+    for load in &mut grown.loads {
+        load.watts *= factor;
+        load.vars *= factor;
+    }
+    grown
+}
+
+/// The node whose voltage fell most between two solutions, with its lowest phase voltage in the second.
+fn weakest(network: &Network, before: &Solution, after: &Solution) -> Option<(NodeId, f64)> {
+    let mut found: Option<(NodeId, f64, f64)> = None;
+    for &id in &network.order {
+        let node = network.node(id);
+        for c in node.conductors.phases().iter() {
+            let pu = |s: &Solution| s.volts[id.index()][c.slot()].norm() / node.nominal_phase_volts();
+            let fall = pu(before) - pu(after);
+            if found.is_none_or(|(_, most, _)| fall > most) {
+                found = Some((id, fall, pu(after)));
+            }
+        }
+    }
+    found.map(|(id, _, pu)| (id, pu))
+}
