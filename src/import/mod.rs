@@ -1,9 +1,9 @@
 //! From a folder of CSV files to a [`crate::network::Draft`], with every fault of every cell.
 //!
-//! [`text`] decodes a file, [`records`] splits it and [`table`] gives its rows, whose cells know where they stand,
-//! [`header`] finds the columns a [`schema`] declares, and [`row`] reads cells as names,
+//! `text` decodes a file, `records` splits it, and `table` gives its rows, whose cells know where
+//! they stand; `header` finds the columns a `schema` declares, and `row` reads cells as names,
 //! numbers, words and conductors. Each kind of file has a module of its own that declares its
-//! columns and makes its records; [`folder`] calls them all.
+//! columns and makes its records; `folder` calls them all.
 
 mod capacitors;
 mod constructions;
