@@ -1,6 +1,7 @@
 //! Names kept once, and checks that they are unique and not confusingly alike.
 
 use std::collections::{HashMap, HashSet};
+use std::hash::{BuildHasher, Hasher, RandomState};
 
 use super::row::Row;
 use crate::diagnostic::{Code, Diagnostics, Origin, Sources};
@@ -27,42 +28,62 @@ impl SharedNames {
 /// Names of nodes, with the place where each was first written.
 #[derive(Debug, Default)]
 pub(crate) struct NodeNames {
-    set: SharedNames,
+    set: HashSet<Name>,
     first: Vec<(Name, Origin, &'static str)>,
 }
 
 impl NodeNames {
     /// The kept name equal to `text`.
     pub(crate) fn name(&mut self, text: &str, origin: Origin, column: &'static str) -> Name {
-        if let Some(name) = self.set.set.get(text) {
+        if let Some(name) = self.set.get(text) {
             return name.clone();
         }
-        let name = self.set.name(text);
+        let name = Name::from(text);
+        self.set.insert(name.clone());
         self.first.push((name.clone(), origin, column));
         name
     }
 
     /// Warns of nodes whose names differ only by case or spaces.
     pub(crate) fn warn_of_similar(&self, sources: &Sources, diagnostics: &mut Diagnostics) {
-        let mut seen: HashMap<String, &(Name, Origin, &'static str)> =
-            HashMap::with_capacity(self.first.len());
-        for entry in &self.first {
-            let (name, origin, column) = entry;
-            let key = name.chars().filter(|c| !c.is_whitespace()).flat_map(char::to_lowercase).collect();
-            let Some((other, at, _)) = seen.get(&key) else {
-                seen.insert(key, entry);
+        let hasher = RandomState::new();
+        let mut seen: HashMap<u64, usize> = HashMap::with_capacity(self.first.len());
+        for (at, (name, origin, column)) in self.first.iter().enumerate() {
+            let hash = hash_of(plain(name), &hasher);
+            let Some(other) = seen.get(&hash).and_then(|&i| self.first.get(i)) else {
+                seen.insert(hash, at);
                 continue;
             };
+            if !plain(name).eq(plain(&other.0)) {
+                continue; // the same hash by chance
+            }
             let place = sources.place(*origin, Some(column), Some(name));
-            let other_file = sources.file(at.file).map_or("", |f| f.name.as_str());
+            let other_file = sources.file(other.1.file).map_or("", |f| f.name.as_str());
             let message = format!(
-                "node `{name}` and node `{other}` ({other_file} row {}) differ only by capital letters or spaces",
-                at.line
+                "node `{name}` and node `{}` ({other_file} row {}) differ only by capital letters or spaces",
+                other.0, other.1.line
             );
             let cure = "if they are one node, write its name the same way everywhere";
             diagnostics.warning(Code::SimilarName, place, message, cure);
         }
     }
+}
+
+/// A name without spaces and capitals.
+fn plain(name: &str) -> impl Iterator<Item = char> + '_ {
+    name.chars().filter(|c| !c.is_whitespace()).flat_map(lower)
+}
+
+fn lower(c: char) -> impl Iterator<Item = char> {
+    let (one, many) =
+        if c.is_ascii() { (Some(c.to_ascii_lowercase()), None) } else { (None, Some(c.to_lowercase())) };
+    one.into_iter().chain(many.into_iter().flatten())
+}
+
+fn hash_of(chars: impl Iterator<Item = char>, hasher: &RandomState) -> u64 {
+    let mut state = hasher.build_hasher();
+    chars.for_each(|c| state.write_u32(c.into()));
+    state.finish()
 }
 
 /// Names of one kind of element, which must be unique.

@@ -31,6 +31,15 @@ impl<'r> Cells<'r> {
         start.zip(end).and_then(|(s, e)| self.text.get(s..e)).unwrap_or("")
     }
 
+    /// True for a row of nothing but separators, and for a comment that a spreadsheet has put in quotes.
+    pub(super) fn is_blank_or_comment(&self) -> bool {
+        let first = trim(self.get(0));
+        if first.is_empty() {
+            return self.iter().all(|c| trim(c).is_empty());
+        }
+        first.starts_with('#') && !is_spreadsheet_error(first)
+    }
+
     /// All cells.
     pub(super) fn iter(&self) -> impl Iterator<Item = &'r str> + use<'r> {
         let cells = *self;
@@ -209,16 +218,6 @@ impl<'t> Records<'t> {
         let joined = self.joined.get(..self.length).unwrap_or_default();
         let text = std::str::from_utf8(joined).unwrap_or("");
         Cells { text, ends: self.ends.get(..self.count).unwrap_or_default() }
-    }
-
-    /// True for a row of nothing but separators, and for a comment that a spreadsheet has put in quotes.
-    pub(super) fn is_blank_or_comment(&self) -> bool {
-        let cells = self.cells();
-        let first = trim(cells.get(0));
-        if first.is_empty() {
-            return cells.iter().all(|c| trim(c).is_empty());
-        }
-        first.starts_with('#') && !is_spreadsheet_error(first)
     }
 
     pub(super) fn quote_fault(&self) -> Option<QuoteFault> {

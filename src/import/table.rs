@@ -28,12 +28,10 @@ pub(crate) fn read_table(
     let mut rows = 0;
     let mut broken = 0;
     while let Some(origin) = records.next(file) {
-        if records.is_blank_or_comment() {
-            continue;
-        }
-        rows += 1;
+        // Before the look for comments: an open quote there would swallow the rest unseen.
         if let Some(fault) = records.quote_fault() {
-            report_quote(intake, origin, &layout, fault);
+            report_quote(intake, origin, layout.width, fault);
+            rows += 1;
             broken += 1;
             if broken >= MAX_BROKEN_QUOTES {
                 break;
@@ -41,8 +39,13 @@ pub(crate) fn read_table(
             records.resume_at_next_line(origin);
             continue;
         }
-        if has_fitting_length(intake, origin, &layout, &records) {
-            each(&mut Row::new(&layout, records.cells(), origin, intake));
+        let cells = records.cells();
+        if cells.is_blank_or_comment() {
+            continue;
+        }
+        rows += 1;
+        if has_fitting_length(intake, origin, &layout, cells) {
+            each(&mut Row::new(&layout, cells, origin, intake));
         }
     }
     rows
@@ -55,7 +58,7 @@ pub(crate) fn has_rows(text: &str) -> bool {
     records.separator = find_separator(records.line_at_record());
     let mut rows = 0;
     while rows < 2 && records.next(FileId(0)).is_some() {
-        rows += usize::from(!records.is_blank_or_comment());
+        rows += usize::from(!records.cells().is_blank_or_comment());
     }
     rows == 2
 }
@@ -87,7 +90,11 @@ fn open<'t>(
             intake.diagnostics.error(Code::EmptyFile, place, message, cure);
             return None;
         };
-        if records.is_blank_or_comment() {
+        if let Some(fault) = records.quote_fault() {
+            report_quote(intake, origin, 0, fault);
+            return None;
+        }
+        if records.cells().is_blank_or_comment() {
             continue;
         }
         let names = normal_names(records.cells().iter());
@@ -99,8 +106,7 @@ fn open<'t>(
     }
 }
 
-fn has_fitting_length(intake: &mut Intake, origin: Origin, layout: &Layout, records: &Records<'_>) -> bool {
-    let cells = records.cells();
+fn has_fitting_length(intake: &mut Intake, origin: Origin, layout: &Layout, cells: Cells<'_>) -> bool {
     let surplus = first_filled(cells, layout.width..cells.len());
     let unnamed = first_filled(cells, layout.unnamed.iter().copied());
     let message = if surplus.is_some() {
@@ -133,7 +139,7 @@ fn first_filled(cells: Cells<'_>, mut positions: impl Iterator<Item = usize>) ->
     positions.find(|&i| !trim(cells.get(i)).is_empty())
 }
 
-fn report_quote(intake: &mut Intake, origin: Origin, layout: &Layout, fault: QuoteFault) {
+fn report_quote(intake: &mut Intake, origin: Origin, width: usize, fault: QuoteFault) {
     let (position, message, cure) = match fault {
         QuoteFault::NotClosed(position) => (
             position,
@@ -150,7 +156,7 @@ fn report_quote(intake: &mut Intake, origin: Origin, layout: &Layout, fault: Quo
         }
     };
     let name = intake.sources.file(origin.file).and_then(|f| f.columns.get(position)).cloned();
-    let name = name.filter(|n| !n.is_empty() && position < layout.width);
+    let name = name.filter(|n| !n.is_empty() && position < width);
     let place = intake.sources.place(origin, name.as_deref(), None);
     intake.diagnostics.error(Code::BadQuote, place, message, cure);
 }

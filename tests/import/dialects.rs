@@ -85,26 +85,17 @@ fn separators_and_line_ends() {
 
 #[test]
 fn blank_rows_comments_and_empty_columns() {
-    assert_same(
-        &with_texts(|t| format!("# survey of May\n\n{}\n\n", t.replace('\n', "\n\n# more, \"less\n"))),
-        "comments",
-    );
-    assert_same(
-        &with_texts(|t| t.replace('\n', ",,\n") + ",,,\n , ,\n"),
-        "empty columns and rows of separators",
-    );
-    assert_same(&with_texts(|t| t.replacen('\n', "\n\"# a, quoted\ncomment\",\n", 1)), "quoted comment");
-    assert_same(
-        &with_texts(|t| {
-            t.replacen('\n', ",Notes\n", 1)
-                .replace("\nA,", "\nA,")
-                .lines()
-                .enumerate()
-                .map(|(i, l)| if i == 0 { format!("{l}\n") } else { format!("{l},\"ask, \"\"Bea\"\"\"\n") })
-                .collect()
-        }),
-        "notes",
-    );
+    let commented = |t: &str| format!("# survey of May\n\n{}\n\n", t.replace('\n', "\n\n# more, \"less\n"));
+    assert_same(&with_texts(commented), "comments");
+    let padded = |t: &str| t.replace('\n', ",,\n") + ",,,\n , ,\n";
+    assert_same(&with_texts(padded), "empty columns and rows of separators");
+    let quoted = |t: &str| t.replacen('\n', "\n\"# a, quoted\ncomment\",\n", 1);
+    assert_same(&with_texts(quoted), "quoted comment");
+    let noted = |t: &str| -> String {
+        let note = |i: usize| if i == 0 { "Notes" } else { "\"ask, \"\"Bea\"\"\"" };
+        t.lines().enumerate().map(|(i, l)| format!("{l},{}\n", note(i))).collect()
+    };
+    assert_same(&with_texts(noted), "notes");
 }
 
 #[test]

@@ -135,6 +135,11 @@ const CELLS: &[(&str, Files)] = &[
     ("row cut off", &[("lines.csv", "line,from,to,phases,length_m,construction\nL1,S,A,abcn,10\n")]),
     ("column without name", &[("loads.csv", "load,node,phases,kw,pf,,\nhouse,A,an,2,1,,ask Bea\n")]),
     ("quote not closed", &[("loads.csv", "load,node,phases,kw,pf\n\"house,A,an,2,1\nshop,A,bn,x,1\n")]),
+    (
+        "quote not closed in a comment",
+        &[("loads.csv", "load,node,phases,kw,pf\n\"# old,A,an,2,1\nshop,A,bn,x,1\n")],
+    ),
+    ("quote not closed in the header", &[("loads.csv", "load,\"node,phases,kw,pf\nshop,A,bn,1,1\n")]),
     ("text after a quote", &[("loads.csv", "load,node,phases,kw,pf\n\"house\"2,A,an,2,1\nshop,A,bn,x,1\n")]),
     ("space before a quote", &[("loads.csv", "load,node,phases,kw,pf\nhouse, \"A\",an,2,1\n")]),
     // Files.
