@@ -55,8 +55,11 @@ fn example_4_1(neutral: Target) -> Vec<Wire> {
     ]
 }
 
+/// Row and column, and the printed resistance and reactance.
+type Printed = ((usize, usize), (f64, f64));
+
 /// Elements per metre against printed ones per mile.
-fn agree(what: &str, z_per_m: &PhaseMatrix, printed: &[((usize, usize), (f64, f64))], tolerance: f64) {
+fn agree(what: &str, z_per_m: &PhaseMatrix, printed: &[Printed], tolerance: f64) {
     for &((i, j), (re, im)) in printed {
         let z = z_per_m[(i, j)] * METRES_PER_MILE;
         assert!(

@@ -3,7 +3,7 @@
 use super::branches::Branches;
 use super::carry::{Carried, carry};
 use super::draft::Draft;
-use super::earth::{Given, references};
+use super::earth::{Given, SideEarth, sides};
 use super::graph::{Graph, Tree, grow, place, report_isolated_switches, report_unfed};
 use super::model::{BranchId, Feed, Network, Node, NodeId, SOLID_EARTH_OHM};
 use super::supply::{Supply, circulant, held_volts, sequence_impedance};
@@ -42,7 +42,7 @@ pub(super) struct Joined {
     pub(super) tree: Tree,
     pub(super) carried: Carried,
     pub(super) given: Given,
-    pub(super) references: Vec<f64>,
+    pub(super) sides: Vec<SideEarth>,
 }
 
 impl Builder<'_> {
@@ -63,8 +63,8 @@ impl Builder<'_> {
         let carried = carry(draft, &graph, &tree, &electrodes, self.diagnostics);
         self.check_electrodes(&graph, &tree, &carried);
         let given = Given { electrodes, line_constructions };
-        let references = references(draft, &graph, &tree, &carried, &given, self.diagnostics);
-        self.assemble(&Joined { graph, tree, carried, given, references })
+        let sides = sides(draft, &graph, &tree, &carried, &given, self.diagnostics);
+        self.assemble(&Joined { graph, tree, carried, given, sides })
     }
 
     /// Index of the supply node: always 0, where there is a supply.
@@ -158,7 +158,8 @@ impl Builder<'_> {
                 conductors: joined.carried.conductors[node],
                 nominal_volts: joined.carried.nominal_volts[node],
                 earth_ohm: joined.given.electrodes[node],
-                reference_siemens: joined.references[node],
+                reference_siemens: joined.sides[node].reference_siemens,
+                reference_on: joined.sides[node].on,
                 xy: None,
             });
         }

@@ -3,9 +3,13 @@
 //! A side is what lines, switches and regulators join without a transformer between. A delta
 //! side, or a neutral earthed nowhere, has no defined voltage to earth; it gets a susceptance of
 //! [`REFERENCE_SHARE`] of its transformer's rating at its first node, and a warning says so.
+//!
+//! A star winding with neutral whose other winding is a star without (Yyn) cannot carry unbalanced
+//! current: nothing balances it on the other side. Its phases float even where its neutral is
+//! earthed, and loads from phase to neutral have no return path there.
 
 use super::carry::Carried;
-use super::conductor::Connection;
+use super::conductor::{Conductors, Connection};
 use super::draft::{Draft, TransformerRecord};
 use super::graph::{Graph, RawKind, Tree, place};
 use super::load::LoadModel;
@@ -14,8 +18,9 @@ use super::transformer::{NeutralPoint, VectorGroup, Winding};
 use crate::diagnostic::{Code, Diagnostics};
 use crate::math::PhaseMatrix;
 
-/// Reference susceptance of a side without earth, as a share of the transformer's `S / U^2`.
-const REFERENCE_SHARE: f64 = 1e-6;
+/// Reference susceptance of a side without earth, as a share of the transformer's `S / U^2`: of the
+/// order of the stray capacitance of a real system (from memory). Much less would drown in rounding.
+const REFERENCE_SHARE: f64 = 1e-4;
 
 /// What the draft gives, resolved to indices: electrode of each node, construction of each line.
 pub(super) struct Given {
@@ -23,102 +28,138 @@ pub(super) struct Given {
     pub line_constructions: Vec<Option<usize>>,
 }
 
-/// Reference susceptance of each node, siemens: zero but at the first node of a side without earth.
-pub(super) fn references(
+/// How the side that begins at a node stands to earth.
+#[derive(Debug, Clone, Copy, Default)]
+pub(super) struct SideEarth {
+    /// Reference susceptance on each of `on`, siemens; zero where something holds the side.
+    pub reference_siemens: f64,
+    pub on: Conductors,
+    /// True where the winding that feeds the side cannot carry unbalanced current.
+    pub unbalance_blocked: bool,
+}
+
+/// How each side stands to earth, at the index of its first node.
+pub(super) fn sides(
     draft: &Draft,
     graph: &Graph,
     tree: &Tree,
     carried: &Carried,
     given: &Given,
     diagnostics: &mut Diagnostics,
-) -> Vec<f64> {
-    let mut reference = vec![0.0; graph.names.len()];
-    let heads: Vec<usize> =
-        tree.order.iter().copied().filter(|&n| carried.side[n] == n && tree.feeds[n].is_some()).collect();
+) -> Vec<SideEarth> {
+    let mut sides = vec![SideEarth::default(); graph.names.len()];
+    let is_head = |n: &usize| carried.side[*n] == *n && tree.feeds[*n].is_some();
+    let heads: Vec<usize> = tree.order.iter().copied().filter(is_head).collect();
     if heads.is_empty() {
-        return reference;
+        return sides;
     }
-    let held = held_siemens(draft, graph, tree, carried, given);
+    let held = holds(draft, graph, tree, carried, given);
     for head in heads {
         let Some(feed) = tree.feeds[head] else { continue };
         let RawKind::Transformer(i) = graph.branches[feed.branch].kind else { continue };
         let record = &draft.transformers[i];
         let volts = carried.nominal_volts[head];
         let wanted = REFERENCE_SHARE * record.rated_va / (volts * volts);
-        if held[head] >= wanted || !wanted.is_finite() {
+        let (hold, side) = (&held[head], &mut sides[head]);
+        side.unbalance_blocked = blocks_unbalance(record, feed.upstream);
+        let neutral = Conductors::N.intersection(carried.conductors[head]);
+        let floats = match side.unbalance_blocked {
+            true if hold.neutral => carried.conductors[head].phases(),
+            true => carried.conductors[head],
+            false if hold.neutral => continue,
+            false if neutral.is_empty() => carried.conductors[head],
+            false => neutral,
+        };
+        if hold.phases >= wanted || !wanted.is_finite() {
             continue;
         }
-        reference[head] = wanted;
-        warn(draft, graph, carried, head, record, wanted, diagnostics);
+        side.reference_siemens = wanted;
+        side.on = floats;
+        warn(draft, graph, head, record, side, diagnostics);
     }
-    reference
+    sides
 }
 
 fn warn(
     draft: &Draft,
     graph: &Graph,
-    carried: &Carried,
     head: usize,
     record: &TransformerRecord,
-    siemens: f64,
+    side: &SideEarth,
     diagnostics: &mut Diagnostics,
 ) {
-    let neutral = carried.conductors[head].has_neutral();
-    let (what, cure) = if neutral {
-        ("the neutral", format!("give its electrode: earth_ohm at node {} in nodes.csv", graph.names[head]))
+    let node = &graph.names[head];
+    let (what, cure) = if side.unbalance_blocked {
+        let cure = "three single-phase units joined so cannot carry unbalanced current; choose YNyn or Dyn where loads go from phase to neutral";
+        ("the phases", cure.to_string())
+    } else if side.on == Conductors::N {
+        ("the neutral", format!("give its electrode: earth_ohm at node {node} in nodes.csv"))
     } else {
-        ("the side", "where it is earthed, say how; if it is meant to float, voltages between phases are right and those to earth are not to be relied on".to_string())
+        let cure = "where it is earthed, say how; if it is meant to float, voltages between phases are right and those to earth are not to be relied on";
+        ("the side", cure.to_string())
     };
+    let verb = if what == "the phases" { "are" } else { "is" };
+    let pronoun = if what == "the phases" { "they are" } else { "it is" };
     diagnostics.warning(
         Code::NotEarthed,
         place(draft, record.origin, "group", &record.group.to_string()),
         format!(
-            "{what} fed by transformer {} at node {} is earthed nowhere; it is held near earth by {:.3} microsiemens",
+            "{what} fed by transformer {} at node {node} {verb} earthed nowhere; {pronoun} held near earth by {:.3} microsiemens",
             record.transformer,
-            graph.names[head],
-            siemens * 1e6,
+            side.reference_siemens * 1e6,
         ),
         cure,
     );
 }
 
-/// Admittance that holds each side to earth, siemens, at the index of its first node; infinite for a firm earth.
-fn held_siemens(draft: &Draft, graph: &Graph, tree: &Tree, carried: &Carried, given: &Given) -> Vec<f64> {
-    let mut held = vec![0.0; graph.names.len()];
-    let firm = f64::INFINITY;
+/// What holds a side to earth.
+#[derive(Debug, Clone, Copy, Default)]
+struct Hold {
+    /// Through its phases, siemens.
+    phases: f64,
+    /// Its neutral, by an electrode or the winding's earthing.
+    neutral: bool,
+}
+
+/// What holds each side, at the index of its first node.
+fn holds(draft: &Draft, graph: &Graph, tree: &Tree, carried: &Carried, given: &Given) -> Vec<Hold> {
+    let mut held = vec![Hold::default(); graph.names.len()];
     for &node in &tree.order {
         let side = carried.side[node];
-        if given.electrodes[node].is_some() {
-            held[side] = firm;
-        }
+        held[side].neutral |= given.electrodes[node].is_some();
         let Some(feed) = tree.feeds[node] else {
-            held[side] = firm;
+            held[side] = Hold { phases: f64::INFINITY, neutral: true };
             continue;
         };
         match graph.branches[feed.branch].kind {
-            RawKind::Line(i) => held[side] += charging_siemens(draft, &given.line_constructions, i),
+            RawKind::Line(i) => held[side].phases += charging_siemens(draft, &given.line_constructions, i),
             RawKind::Transformer(i) => {
                 let points = carried.neutrals[feed.branch];
                 let (near, far) = match feed.upstream {
                     End::From => (points[0], points[1]),
                     End::To => (points[1], points[0]),
                 };
-                if matches!(far, NeutralPoint::Earthed(_)) {
-                    held[side] = firm;
-                }
+                held[side].neutral |= matches!(far, NeutralPoint::Earthed(_));
                 if matches!(near, NeutralPoint::Earthed(_))
                     && conducts_zero_sequence(&draft.transformers[i], feed.upstream)
                 {
-                    held[carried.side[feed.parent]] = firm;
+                    held[carried.side[feed.parent]].phases = f64::INFINITY;
                 }
             }
             RawKind::Switch(_) | RawKind::Bank(_) => {}
         }
     }
     for (node, siemens) in linear_shunts(draft, graph, carried) {
-        held[carried.side[node]] += siemens;
+        held[carried.side[node]].phases += siemens;
     }
     held
+}
+
+/// True where the far winding is a star with neutral and the near one a star without.
+fn blocks_unbalance(record: &TransformerRecord, upstream: End) -> bool {
+    let VectorGroup::Three { from, to, .. } = record.group else { return false };
+    let (near, far) = if upstream == End::From { (from, to) } else { (to, from) };
+    near == Winding::Star && far == Winding::StarNeutral
 }
 
 /// An earthed star winding holds its side where the other winding is a delta, or where it carries the no-load shunt.

@@ -53,9 +53,12 @@ pub struct Node {
     pub nominal_volts: f64,
     /// Electrode from the neutral to remote earth, ohms (at least [`SOLID_EARTH_OHM`]); `None`: none.
     pub earth_ohm: Option<f64>,
-    /// Susceptance to earth, siemens, that gives a side earthed nowhere its reference: on `n`
-    /// where the node carries it, else on each phase. Zero at every other node.
+    /// Susceptance to earth, siemens, that gives a side earthed nowhere its reference. Zero at
+    /// every other node.
     pub reference_siemens: f64,
+    /// Conductors that each have that susceptance: the neutral where earthing it would hold the
+    /// side, else the phases.
+    pub reference_on: Conductors,
     /// Coordinates for drawing.
     pub xy: Option<[f64; 2]>,
 }
@@ -81,13 +84,8 @@ impl Node {
         if let Some(ohm) = self.earth_ohm {
             y[n] += 1.0 / ohm;
         }
-        let reference = Complex64::new(0.0, self.reference_siemens);
-        if self.conductors.has_neutral() {
-            y[n] += reference;
-        } else {
-            for c in self.conductors.iter() {
-                y[c.slot()] += reference;
-            }
+        for c in self.reference_on.iter() {
+            y[c.slot()] += Complex64::new(0.0, self.reference_siemens);
         }
         y
     }

@@ -132,19 +132,33 @@ impl Builder<'_> {
             );
             return;
         }
-        let head = joined.carried.side[node];
-        let to_earth = matches!(connection, Connection::Star(_)) && !carried.has_neutral();
-        if to_earth && joined.references[head] > 0.0 {
-            self.diagnostics.error(
-                Code::NoReturnPath,
-                place(self.draft, origin, "phases", &text),
-                format!(
-                    "{who} node {name} from phase to earth, but nothing earths the side that begins at node {}",
-                    joined.graph.names[head]
-                ),
-                "join it phase to phase (ab, bc, ca, abc), carry n there, or choose a winding with an earthed neutral",
-            );
+        if !matches!(connection, Connection::Star(_)) {
+            return;
         }
+        let head = joined.carried.side[node];
+        let side = &joined.sides[head];
+        let begins = &joined.graph.names[head];
+        let (what, cure) = if side.unbalance_blocked {
+            (
+                format!(
+                    "from phase to neutral, but the winding that feeds its side at node {begins} cannot carry unbalanced current: the star of its other side is not earthed"
+                ),
+                "join it phase to phase (ab, bc, ca, abc), or choose a transformer with YNyn or Dyn",
+            )
+        } else if side.reference_siemens > 0.0 && !carried.has_neutral() {
+            (
+                format!("from phase to earth, but nothing earths the side that begins at node {begins}"),
+                "join it phase to phase (ab, bc, ca, abc), carry n there, or choose a winding with an earthed neutral",
+            )
+        } else {
+            return;
+        };
+        self.diagnostics.error(
+            Code::NoReturnPath,
+            place(self.draft, origin, "phases", &text),
+            format!("{who} node {name} {what}"),
+            cure,
+        );
     }
 
     fn load_line(

@@ -146,11 +146,9 @@ fn terminals(
     far: Conductors,
     below: &Seen,
 ) -> Result<(Eliminated, Seen), SingularNode> {
-    let together = PhaseVector::from_fn(|i, _| if far.iter().any(|c| c.slot() == i) { ONE } else { ZERO });
-    let isolated = (own * together).norm() <= 1e-12 * own.norm();
-    let (eliminated, m) = if isolated {
-        let parts = isolated_winding(across, own, far, &together, below)?;
-        if (parts.scale.norm()) * parts.q.norm_squared() > 1e3 * parts.n.norm() {
+    let (eliminated, m) = if let Some(together) = moves_freely(own, far) {
+        let parts = isolated_winding(across, own, far, together, below)?;
+        if parts.scale.norm() * parts.q.norm_squared() > 1e3 * parts.n.norm() {
             let m = parts.m;
             (Eliminated::Floating(Box::new(parts)), m)
         } else {
@@ -182,26 +180,42 @@ fn invert_over(y: &PhaseMatrix, set: Conductors) -> Result<PhaseMatrix, Singular
     Ok(w)
 }
 
-/// The far side of a winding joined to earth nowhere itself (`Y_own u = 0`, `u` all conductors together).
+/// Conductors that a winding leaves free to move together (`Y_own u = 0`, `u` one on each of them):
+/// the phases where that is so, else all with the neutral; `None` where the winding itself is earthed.
+fn moves_freely(own: &PhaseMatrix, far: Conductors) -> Option<Conductors> {
+    let free = |set: &Conductors| (own * together(*set)).norm() <= 1e-12 * own.norm();
+    [far.phases(), far].into_iter().find(free)
+}
+
+/// One on each conductor of a set.
+fn together(set: Conductors) -> PhaseVector {
+    PhaseVector::from_fn(|i, _| if set.iter().any(|c| c.slot() == i) { ONE } else { ZERO })
+}
+
+/// The far side of a winding that leaves the conductors `moving` free (`Y_own u = 0`, `u` one on each).
 ///
-/// In the basis of differences `D` against one conductor, and `u`: `A = D^T S D`, `S = Y_own + Y`,
-/// `r = Y u`, `q = u - D A^-1 D^T r`, `1/scale = u^T r - r^T D A^-1 D^T r`; then
-/// `S^-1 = D A^-1 D^T + q q^T scale`, and `M = -(D A^-1 D^T - q r^T D A^-1 D^T scale) Y_across^T`.
+/// In the basis `D` of their differences against one of them and of the other conductors, and `u`:
+/// `A = D^T S D`, `S = Y_own + Y`, `r = Y u`, `q = u - D A^-1 D^T r`,
+/// `1/scale = u^T r - r^T D A^-1 D^T r`; then `S^-1 = D A^-1 D^T + q q^T scale`, and
+/// `M = -(D A^-1 D^T - q r^T D A^-1 D^T scale) Y_across^T`.
 fn isolated_winding(
     across: &PhaseMatrix,
     own: &PhaseMatrix,
     far: Conductors,
-    together: &PhaseVector,
+    moving: Conductors,
     below: &Seen,
 ) -> Result<Floating, SingularNode> {
     let below = below.matrix();
-    let last = far.iter().last().ok_or(SingularNode)?;
+    let last = moving.iter().last().ok_or(SingularNode)?;
     let others = far.without(last);
     let mut d = PhaseMatrix::zeros();
     for c in others.iter() {
         d[(c.slot(), c.slot())] = ONE;
-        d[(last.slot(), c.slot())] = -ONE;
+        if moving.has(c) {
+            d[(last.slot(), c.slot())] = -ONE;
+        }
     }
+    let together = together(moving);
     let a = invert_over(&(d.transpose() * (own + below) * d), others)?;
     let n = d * a * d.transpose();
     let r = below * together;
@@ -302,10 +316,9 @@ mod tests {
         for k in 0..3 {
             below[(k, k)] = Complex64::new(0.4 + 0.1 * k as f64, -0.2);
         }
-        let together = PhaseVector::from_fn(|k, _| if k < 3 { ONE } else { ZERO });
+        let below_seen = Seen::Full(Box::new(below));
         let parts =
-            isolated_winding(&y.across, &y.to, Conductors::ABC, &together, &Seen::Full(Box::new(below)))
-                .unwrap();
+            isolated_winding(&y.across, &y.to, Conductors::ABC, Conductors::ABC, &below_seen).unwrap();
         let w = invert_over(&(y.to + below), Conductors::ABC).unwrap();
         let joined = parts.n + parts.q * parts.q.transpose() * parts.scale;
         assert!((joined - w).norm() < 1e-12 * w.norm());

@@ -179,7 +179,16 @@ mod tests {
 
     fn node(conductors: Conductors) -> Node {
         let name = "n".into();
-        Node { name, conductors, nominal_volts: 400.0, earth_ohm: None, reference_siemens: 0.0, xy: None }
+        let reference_on = Conductors::NONE;
+        Node {
+            name,
+            conductors,
+            nominal_volts: 400.0,
+            earth_ohm: None,
+            reference_siemens: 0.0,
+            reference_on,
+            xy: None,
+        }
     }
 
     fn drawn(gathered: &Gathered, volts: &PhaseVector) -> PhaseVector {

@@ -242,7 +242,7 @@ fn remarks(seen: &Seen, found: &mut Vec<Finding>) {
     for (i, node) in seen.network.nodes.iter().enumerate().filter(|(_, n)| n.reference_siemens > 0.0) {
         let fed = seen.network.feeds[i]
             .map_or(String::new(), |f| format!(" fed by {}", seen.network.branch(f.branch).name));
-        let what = if node.conductors.has_neutral() { "neutral" } else { "side" };
+        let what = if node.reference_on.phases().is_empty() { "neutral" } else { "side" };
         let text = format!(
             "{what}{fed} is earthed nowhere; held near earth by {:.3} microsiemens, voltages to earth are not to be relied on",
             node.reference_siemens * 1e6

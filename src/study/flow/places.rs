@@ -41,7 +41,7 @@ pub(super) fn judged(
 ) -> Vec<(String, f64)> {
     let node = network.node(id);
     let volts = phase_volts(node, &solution.volts[id.index()]);
-    if floating[id.index()] && !node.conductors.has_neutral() {
+    if floating[id.index()] {
         let pairs = Conductor::PHASES.into_iter().map(|c| (c, c.next()));
         return pairs
             .filter(|(p, q)| node.conductors.has(*p) && node.conductors.has(*q))
@@ -54,14 +54,14 @@ pub(super) fn judged(
     phases.map(|c| (c.letter().to_string(), volts[c.slot()].norm() / node.nominal_phase_volts())).collect()
 }
 
-/// Whether each node's side has no earth of its own but a stated reference.
+/// Whether the phases of each node's side have no earth of their own but a stated reference.
 pub(super) fn floating_nodes(network: &Network) -> Vec<bool> {
     let mut floating = vec![false; network.nodes.len()];
     for &id in &network.order {
         let inherits = network.feeds[id.index()]
             .filter(|feed| !matches!(network.branch(feed.branch).kind, BranchKind::Transformer(_)))
             .is_some_and(|feed| floating[feed.parent.index()]);
-        floating[id.index()] = inherits || network.node(id).reference_siemens > 0.0;
+        floating[id.index()] = inherits || !network.node(id).reference_on.phases().is_empty();
     }
     floating
 }

@@ -1,0 +1,430 @@
+//! A second way to solve a network, for comparison: nodal admittance of every conductor terminal,
+//! with a current unknown for every ideal element and a voltage unknown for every star point, in
+//! rectangular coordinates by Newton's method and dense LU.
+//!
+//! Written from the equations in the documentation of `fourwire::network`; it uses the network's
+//! data and nothing of the solver.
+
+use std::collections::HashMap;
+
+use fourwire::math::Complex64;
+use fourwire::network::{
+    Across, Branch, BranchKind, Conductor, Connection, LoadModel, Network, NeutralPoint, NodeId, Transformer,
+    VectorGroup, Winding,
+};
+use nalgebra::{DMatrix, DVector};
+
+/// Solved voltages by node and slot, current drawn from the source, and total losses.
+pub struct NodalSolution {
+    /// Volts to earth, slots a, b, c, n.
+    pub volts: Vec<[Complex64; 4]>,
+    /// Amperes from the supply in each slot.
+    pub source_amps: [Complex64; 4],
+    /// Source power less power drawn by loads and capacitors, volt-amperes.
+    pub losses: Complex64,
+}
+
+/// One end of something: an unknown voltage, or earth.
+type Terminal = Option<usize>;
+
+/// A single-phase load element.
+struct Element {
+    from: Terminal,
+    to: Terminal,
+    power: Complex64,
+    model: LoadModel,
+    nominal: f64,
+    floor: f64,
+}
+
+impl Element {
+    /// Current `conj(S) u g(m)` with `m = |u|^2`; gives `g` and its derivative.
+    fn gain(&self, m: f64) -> (f64, f64) {
+        let floor2 = (self.floor * self.nominal).powi(2);
+        match self.model {
+            LoadModel::Impedance => (self.nominal.powi(-2), 0.0),
+            LoadModel::Current => (1.0 / (self.nominal * m.sqrt()), -0.5 / (self.nominal * m.powf(1.5))),
+            LoadModel::Power if m >= floor2 => (1.0 / m, -1.0 / (m * m)),
+            LoadModel::Power => ((2.0 - m / floor2) / floor2, -1.0 / (floor2 * floor2)),
+        }
+    }
+
+    fn current(&self, u: Complex64) -> Complex64 {
+        self.power.conj() * u * self.gain(u.norm_sqr()).0
+    }
+}
+
+/// Sparse complex rows of the linear part: `sum y x = right`.
+struct System {
+    count: usize,
+    linear: Vec<(usize, usize, Complex64)>,
+    right: Vec<Complex64>,
+    elements: Vec<Element>,
+}
+
+impl System {
+    fn unknown(&mut self) -> usize {
+        self.count += 1;
+        self.right.push(Complex64::default());
+        self.count - 1
+    }
+
+    fn add(&mut self, row: Terminal, column: Terminal, value: Complex64) {
+        if let (Some(row), Some(column)) = (row, column) {
+            self.linear.push((row, column, value));
+        }
+    }
+
+    /// Admittance between two terminals.
+    fn admittance(&mut self, a: Terminal, b: Terminal, y: Complex64) {
+        self.add(a, a, y);
+        self.add(b, b, y);
+        self.add(a, b, -y);
+        self.add(b, a, -y);
+    }
+}
+
+/// Numbers of the voltage unknowns by node and slot.
+struct Numbering(Vec<[Terminal; 4]>);
+
+impl Numbering {
+    fn at(&self, node: NodeId, c: Conductor) -> Terminal {
+        self.0[node.index()][c.slot()]
+    }
+}
+
+/// Solves a network; `None` where Newton's method does not settle.
+pub fn solve_nodal(network: &Network) -> Option<NodalSolution> {
+    let mut system = System { count: 0, linear: Vec::new(), right: Vec::new(), elements: Vec::new() };
+    let numbering = Numbering(
+        network
+            .nodes
+            .iter()
+            .map(|node| Conductor::ALL.map(|c| node.conductors.has(c).then(|| system.unknown())))
+            .collect(),
+    );
+    let source = add_supply(network, &numbering, &mut system);
+    for branch in &network.branches {
+        add_branch(network, branch, &numbering, &mut system);
+    }
+    add_shunts(network, &numbering, &mut system);
+    let x = newton(&system)?;
+    Some(gather(network, &numbering, &source, &system, &x))
+}
+
+fn add_supply(network: &Network, numbering: &Numbering, system: &mut System) -> HashMap<Conductor, usize> {
+    let supply = &network.supply;
+    let carried: Vec<Conductor> = network.node(supply.node).conductors.iter().collect();
+    let currents: HashMap<Conductor, usize> = carried.iter().map(|&c| (c, system.unknown())).collect();
+    for &c in &carried {
+        let row = Some(currents[&c]);
+        // V + Zs J + r sum(J) = E.
+        system.add(row, numbering.at(supply.node, c), Complex64::from(1.0));
+        for &other in &carried {
+            let z = supply.impedance[(c.slot(), other.slot())] + supply.earth_ohm;
+            system.add(row, Some(currents[&other]), z);
+        }
+        system.right[currents[&c]] = supply.held_volts[c.slot()];
+        system.add(numbering.at(supply.node, c), row, Complex64::from(-1.0));
+    }
+    currents
+}
+
+fn add_branch(network: &Network, branch: &Branch, numbering: &Numbering, system: &mut System) {
+    let carried: Vec<Conductor> = branch.from_conductors.iter().collect();
+    match &branch.kind {
+        BranchKind::Line(line) => {
+            let (z, y) = (network.line_impedance(line), network.line_shunt(line));
+            let inner = DMatrix::from_fn(carried.len(), carried.len(), |i, j| {
+                z[(carried[i].slot(), carried[j].slot())]
+            });
+            let series = inner.try_inverse().expect("a line has an impedance");
+            for (i, &p) in carried.iter().enumerate() {
+                for (j, &q) in carried.iter().enumerate() {
+                    let half = y[(p.slot(), q.slot())] / 2.0;
+                    for (end, other) in [(branch.from, branch.to), (branch.to, branch.from)] {
+                        system.add(numbering.at(end, p), numbering.at(end, q), series[(i, j)] + half);
+                        system.add(numbering.at(end, p), numbering.at(other, q), -series[(i, j)]);
+                    }
+                }
+            }
+        }
+        BranchKind::Switch => {
+            for &c in &carried {
+                let current = Some(system.unknown());
+                let (from, to) = (numbering.at(branch.from, c), numbering.at(branch.to, c));
+                system.add(from, current, Complex64::from(1.0));
+                system.add(to, current, Complex64::from(-1.0));
+                system.add(current, from, Complex64::from(1.0));
+                system.add(current, to, Complex64::from(-1.0));
+            }
+        }
+        BranchKind::Regulator(bank) => {
+            for &c in &carried {
+                // One unknown a conductor: its current out of the to end. What it needs at the from
+                // end follows from equal power: the coefficients of its voltage equation.
+                let current = Some(system.unknown());
+                let mut seen = vec![(c, 1.0)];
+                if let Some(unit) = bank.units.iter().find(|u| u.phase == c) {
+                    let ratio = 1.0 + unit.step_pu * f64::from(unit.tap);
+                    let against = match unit.across {
+                        Across::Phase(m) => Some(m),
+                        Across::Neutral => branch.from_conductors.has_neutral().then_some(Conductor::N),
+                    };
+                    seen = vec![(c, ratio)];
+                    seen.extend(against.map(|m| (m, 1.0 - ratio)));
+                }
+                system.add(current, numbering.at(branch.to, c), Complex64::from(1.0));
+                system.add(numbering.at(branch.to, c), current, Complex64::from(-1.0));
+                for (conductor, coefficient) in seen {
+                    system.add(current, numbering.at(branch.from, conductor), Complex64::from(-coefficient));
+                    system.add(numbering.at(branch.from, conductor), current, Complex64::from(coefficient));
+                }
+            }
+        }
+        BranchKind::Transformer(t) => add_transformer(t, branch, numbering, system),
+    }
+}
+
+/// A star point as a terminal: its own unknown, a conductor, or earth.
+fn star_point(point: NeutralPoint, node: NodeId, numbering: &Numbering, system: &mut System) -> Terminal {
+    match point {
+        NeutralPoint::None => None,
+        NeutralPoint::Conductor => numbering.at(node, Conductor::N),
+        NeutralPoint::Floating => Some(system.unknown()),
+        NeutralPoint::Earthed(ohm) if ohm > 0.0 => {
+            let star = Some(system.unknown());
+            system.admittance(star, None, Complex64::from(1.0 / ohm));
+            star
+        }
+        NeutralPoint::Earthed(_) => None,
+    }
+}
+
+fn add_transformer(t: &Transformer, branch: &Branch, numbering: &Numbering, system: &mut System) {
+    let no_load = t.no_load_watts != 0.0 || t.magnetizing_pu != 0.0;
+    let both_float = t.from_neutral == NeutralPoint::Floating && t.to_neutral == NeutralPoint::Floating;
+    let from_star = star_point(t.from_neutral, branch.from, numbering, system);
+    let to_star = if both_float && !no_load {
+        // Only the difference of both star points matters: the second is put at earth, its current sums to zero anyway.
+        None
+    } else {
+        star_point(t.to_neutral, branch.to, numbering, system)
+    };
+    let (units, uf, ut) = match t.group {
+        VectorGroup::Single { .. } => (1.0, t.from_volts, t.to_volts),
+        VectorGroup::Three { from, to, .. } => {
+            let winding =
+                |w: Winding, volts: f64| if w == Winding::Delta { volts } else { volts / 3f64.sqrt() };
+            (3.0, winding(from, t.from_volts), winding(to, t.to_volts))
+        }
+    };
+    let s = t.rated_va / units;
+    let ratio = uf / (ut * (1.0 + t.tap_pu));
+    let y = (Complex64::new(t.r_pu, t.x_pu) * ut * ut / s).inv();
+    let y0 = Complex64::new(t.no_load_watts / units, -t.magnetizing_pu * s) / (uf * uf);
+    for (from, to) in windings(t) {
+        let f = from.map(|end| end.map_or(from_star, |c| numbering.at(branch.from, c)));
+        let g = to.map(|end| end.map_or(to_star, |c| numbering.at(branch.to, c)));
+        // Into the from winding's start: (vf/t - vt) y/t + y0 vf; into the to winding's start: -(vf/t - vt) y.
+        let mut winding = |row: [Terminal; 2], column: [Terminal; 2], value: Complex64| {
+            system.add(row[0], column[0], value);
+            system.add(row[0], column[1], -value);
+            system.add(row[1], column[0], -value);
+            system.add(row[1], column[1], value);
+        };
+        winding(f, f, y / (ratio * ratio) + y0);
+        winding(f, g, -y / ratio);
+        winding(g, f, -y / ratio);
+        winding(g, g, y);
+    }
+}
+
+/// Start and end of the windings of one unit; `None` is the star point.
+type Ends = [Option<Conductor>; 2];
+
+/// Windings of each unit, from the rules of the vector group.
+fn windings(t: &Transformer) -> Vec<(Ends, Ends)> {
+    let next = |c: Conductor| c.next();
+    let before = |c: Conductor| c.next().next();
+    let (from, to, clock) = match t.group {
+        VectorGroup::Single { clock } => {
+            let connection = t.terminals.expect("a single-phase unit has terminals");
+            let ends = |(p, q): (Conductor, Conductor)| [Some(p), (q != Conductor::N).then_some(q)];
+            let pair = connection.pairs().map(ends).next().expect("one unit");
+            return vec![(pair, if clock == 6 { [pair[1], pair[0]] } else { pair })];
+        }
+        VectorGroup::Three { from, to, clock } => (from, to, clock),
+    };
+    // The clock as a base connection, then moves of 120 degrees (4) and a reversal (6).
+    let delta = |w: Winding| w == Winding::Delta;
+    let bases: &[u8] = match (delta(from), delta(to)) {
+        (a, b) if a == b => &[0, 6],
+        _ => &[1, 11],
+    };
+    let (base, moves) = bases
+        .iter()
+        .flat_map(|&base| (0..3u8).map(move |moves| (base, moves)))
+        .find(|(base, moves)| (base + 4 * moves) % 12 == clock)
+        .expect("a clock number of the group");
+    let mut units = Vec::new();
+    for k in Conductor::PHASES {
+        let star = [Some(k), None];
+        let (f, mut g): (Ends, Ends) = match (delta(from), delta(to), base) {
+            (false, false, _) => (star, star),
+            (true, true, _) => ([Some(k), Some(next(k))], [Some(k), Some(next(k))]),
+            (true, false, 1) => ([Some(k), Some(before(k))], star),
+            (true, false, _) => ([Some(k), Some(next(k))], star),
+            (false, true, 1) => (star, [Some(k), Some(next(k))]),
+            (false, true, _) => (star, [Some(k), Some(before(k))]),
+        };
+        for _ in 0..moves {
+            g = g.map(|end| end.map(before));
+        }
+        if base == 6 {
+            g.swap(0, 1);
+        }
+        units.push((f, g));
+    }
+    units
+}
+
+fn add_shunts(network: &Network, numbering: &Numbering, system: &mut System) {
+    for (i, node) in network.nodes.iter().enumerate() {
+        let id = NodeId(i as u32);
+        for (c, y) in Conductor::ALL.into_iter().zip(node.earth_admittance()) {
+            system.admittance(numbering.at(id, c), None, y);
+        }
+    }
+    let terminals = |id: NodeId, connection: Connection| {
+        connection.pairs().map(move |(p, q)| (id, p, q)).collect::<Vec<_>>()
+    };
+    for capacitor in &network.capacitors {
+        let share = capacitor.vars / terminals(capacitor.node, capacitor.connection).len() as f64;
+        let y = Complex64::new(0.0, share / capacitor.rated_volts.powi(2));
+        for (id, p, q) in terminals(capacitor.node, capacitor.connection) {
+            system.admittance(numbering.at(id, p), numbering.at(id, q), y);
+        }
+    }
+    for load in &network.loads {
+        for (node, share) in network.load_sites(load) {
+            let nominal = match load.connection {
+                Connection::Star(_) => network.node(node).nominal_volts / 3f64.sqrt(),
+                Connection::Delta(_) => network.node(node).nominal_volts,
+            };
+            let pairs = terminals(node, load.connection);
+            let power = Complex64::new(load.watts, load.vars) * share / pairs.len() as f64;
+            for (id, p, q) in pairs {
+                system.elements.push(Element {
+                    from: numbering.at(id, p),
+                    to: numbering.at(id, q),
+                    power,
+                    model: load.model,
+                    nominal,
+                    floor: network.study.constant_power_floor_percent / 100.0,
+                });
+            }
+        }
+    }
+}
+
+fn at(x: &DVector<f64>, terminal: Terminal) -> Complex64 {
+    terminal.map_or(Complex64::default(), |k| Complex64::new(x[2 * k], x[2 * k + 1]))
+}
+
+/// Adds the real 2 x 2 block of a complex coefficient.
+fn block(matrix: &mut DMatrix<f64>, row: usize, column: usize, value: Complex64) {
+    matrix[(2 * row, 2 * column)] += value.re;
+    matrix[(2 * row, 2 * column + 1)] -= value.im;
+    matrix[(2 * row + 1, 2 * column)] += value.im;
+    matrix[(2 * row + 1, 2 * column + 1)] += value.re;
+}
+
+fn newton(system: &System) -> Option<DVector<f64>> {
+    let size = 2 * system.count;
+    let mut linear = DMatrix::zeros(size, size);
+    for &(row, column, value) in &system.linear {
+        block(&mut linear, row, column, value);
+    }
+    let mut right = DVector::zeros(size);
+    for (k, value) in system.right.iter().enumerate() {
+        right[2 * k] = value.re;
+        right[2 * k + 1] = value.im;
+    }
+    let scale = right.amax().max(1.0);
+    let mut x = linear.clone().lu().solve(&right)?;
+    let mut last = f64::INFINITY;
+    for _ in 0..60 {
+        let mut residual = &linear * &x - &right;
+        let mut jacobian = linear.clone();
+        for element in &system.elements {
+            let u = at(&x, element.from) - at(&x, element.to);
+            add_element(element, u, &mut residual, &mut jacobian);
+        }
+        let step = jacobian.lu().solve(&residual)?;
+        // Voltage steps of more than a third of the source are cut: the start is far from a loaded network.
+        let voltages = step.amax() / scale;
+        let factor = if voltages > 0.3 { 0.3 / voltages } else { 1.0 };
+        x -= &step * factor;
+        // Quadratic convergence ends in rounding: no smaller step than the last, and a small one, is the end.
+        if voltages < 1e-9 && voltages >= 0.1 * last {
+            return Some(x);
+        }
+        last = voltages;
+    }
+    None
+}
+
+fn add_element(element: &Element, u: Complex64, residual: &mut DVector<f64>, jacobian: &mut DMatrix<f64>) {
+    let (g, slope) = element.gain(u.norm_sqr());
+    let c = element.power.conj();
+    let current = c * u * g;
+    // dI = c (g du + u g' (2 ur dur + 2 ui dui)).
+    let by_re = c * (Complex64::from(g) + u * (2.0 * slope * u.re));
+    let by_im = c * (Complex64::new(0.0, g) + u * (2.0 * slope * u.im));
+    let ends = [(element.from, 1.0), (element.to, -1.0)];
+    for (row, row_sign) in ends {
+        let Some(row) = row else { continue };
+        residual[2 * row] += row_sign * current.re;
+        residual[2 * row + 1] += row_sign * current.im;
+        for (column, column_sign) in ends {
+            let Some(column) = column else { continue };
+            let sign = row_sign * column_sign;
+            jacobian[(2 * row, 2 * column)] += sign * by_re.re;
+            jacobian[(2 * row + 1, 2 * column)] += sign * by_re.im;
+            jacobian[(2 * row, 2 * column + 1)] += sign * by_im.re;
+            jacobian[(2 * row + 1, 2 * column + 1)] += sign * by_im.im;
+        }
+    }
+}
+
+fn gather(
+    network: &Network,
+    numbering: &Numbering,
+    source: &HashMap<Conductor, usize>,
+    system: &System,
+    x: &DVector<f64>,
+) -> NodalSolution {
+    let volts: Vec<[Complex64; 4]> = numbering.0.iter().map(|slots| slots.map(|t| at(x, t))).collect();
+    let source_amps = Conductor::ALL.map(|c| at(x, source.get(&c).copied()));
+    let supply = volts[network.supply.node.index()];
+    let drawn: Complex64 = supply.iter().zip(&source_amps).map(|(v, i)| v * i.conj()).sum();
+    let loads: Complex64 = system
+        .elements
+        .iter()
+        .map(|e| {
+            let u = at(x, e.from) - at(x, e.to);
+            u * e.current(u).conj()
+        })
+        .sum();
+    let mut capacitors = Complex64::default();
+    for capacitor in &network.capacitors {
+        let count = capacitor.connection.pairs().count() as f64;
+        for (p, q) in capacitor.connection.pairs() {
+            let u = at(x, numbering.at(capacitor.node, p)) - at(x, numbering.at(capacitor.node, q));
+            capacitors -=
+                Complex64::new(0.0, capacitor.vars / count * u.norm_sqr() / capacitor.rated_volts.powi(2));
+        }
+    }
+    NodalSolution { volts, source_amps, losses: drawn - loads - capacitors }
+}
