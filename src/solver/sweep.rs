@@ -42,7 +42,7 @@ impl Workspace<'_> {
 
     /// Iterates until no node voltage changes by more than `tolerance_pu` of nominal, or `limit` iterations are made.
     ///
-    /// Once the rate of convergence foretells more than [`PLAIN_SWEEPS`] sweeps, the iteration is accelerated.
+    /// Once the rate of convergence foretells more than twenty sweeps, the iteration is accelerated.
     pub fn iterate(&mut self, tolerance_pu: f64, limit: usize) -> Iterations {
         let mut done = Iterations { count: 0, change_pu: f64::INFINITY };
         let mut acceleration: Option<Acceleration> = None;
