@@ -31,3 +31,19 @@ pub fn polar(magnitude: f64, angle_rad: f64) -> Complex64 {
 pub fn degrees(value: Complex64) -> f64 {
     value.arg().to_degrees()
 }
+
+/// The candidates nearest to `text`, nearest first, if near enough to be slips of the keyboard: at
+/// most a third of the letters differ, case apart (Damerau-Levenshtein distance).
+pub fn nearest_text<'a>(text: &str, candidates: impl IntoIterator<Item = &'a str>) -> Vec<&'a str> {
+    let wanted = text.trim().to_lowercase();
+    let limit = (wanted.chars().count() / 3).max(1);
+    let first_word = |c: &str| c.split_whitespace().next().unwrap_or("").to_lowercase();
+    let distance = |c: &str| {
+        let whole = strsim::damerau_levenshtein(&wanted, &c.to_lowercase());
+        whole.min(strsim::damerau_levenshtein(&wanted, &first_word(c)))
+    };
+    let mut near: Vec<(usize, &str)> =
+        candidates.into_iter().map(|c| (distance(c), c)).filter(|(d, _)| *d <= limit).collect();
+    near.sort_by_key(|(d, _)| *d);
+    near.into_iter().map(|(_, c)| c).take(5).collect()
+}

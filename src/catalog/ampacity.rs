@@ -1,0 +1,131 @@
+//! Current ratings from tables, corrected for ambient temperature and grouping.
+
+use super::conductor::Material;
+use super::tables::{Cells, number, rows, text};
+
+/// What the user must be told wherever a rating is shown.
+pub const CAUTION: &str =
+    "Ratings are a guide from published tables; the local code and a licensed engineer decide.";
+
+/// Reference installation method of IEC 60364-5-52.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum IecMethod {
+    /// Clipped direct.
+    C,
+    /// In free air.
+    E,
+    /// Conduit on a wall, single-core.
+    B1,
+}
+
+impl IecMethod {
+    fn word(self) -> &'static str {
+        match self {
+            IecMethod::C => "C",
+            IecMethod::E => "E",
+            IecMethod::B1 => "B1",
+        }
+    }
+}
+
+/// Rating of building wire, amperes: NEC Table 310.16 in the column of `insulation_c` (60, 75 or
+/// 90 C), times the ambient factor `sqrt((Tc - Ta) / (Tc - 30))` its temperature table is made
+/// from, times the factor for the number of current-carrying conductors (Table 310.15(C)(1)).
+///
+/// `None` where the table has no such size, or the ambient leaves nothing.
+pub fn nec_rating_amps(
+    size: &str,
+    material: Material,
+    insulation_c: u32,
+    ambient_c: f64,
+    conductors: u32,
+) -> Option<f64> {
+    let metal = match material {
+        Material::Copper => "cu",
+        Material::Aluminium => "al",
+        Material::Steel => return None,
+    };
+    let row =
+        rows(include_str!("data/ampacity_nec_310_16.csv")).find(|c| text(c, "size_awg_kcmil") == size)?;
+    let base = number(&row, &format!("{metal}_{insulation_c}C"))?;
+    let limit = f64::from(insulation_c);
+    let ambient = ((limit - ambient_c) / (limit - 30.0)).max(0.0).sqrt();
+    let grouping = nec_grouping(conductors)?;
+    (ambient > 0.0).then_some(base * ambient * grouping)
+}
+
+fn nec_grouping(conductors: u32) -> Option<f64> {
+    rows(include_str!("data/ampacity_nec_bundling.csv")).find_map(|c| {
+        let range = text(&c, "current_carrying_conductors");
+        let digits: Vec<u32> =
+            range.split(|ch: char| !ch.is_ascii_digit()).filter_map(|d| d.parse().ok()).collect();
+        let within = match digits.as_slice() {
+            [low, high] => (*low..=*high).contains(&conductors),
+            [low] => conductors >= *low,
+            _ => false,
+        };
+        if within { number(&c, "factor") } else { None }
+    })
+}
+
+/// Rating of a cable with three loaded conductors, amperes: IEC 60364-5-52 tables for the insulation
+/// temperature (70 C PVC or 90 C XLPE), times the ambient factor of Table B.52.14 and the factor
+/// for circuits grouped enclosed.
+///
+/// `None` where a table has no such row.
+pub fn iec_rating_amps(
+    mm2: f64,
+    material: Material,
+    insulation_c: u32,
+    method: IecMethod,
+    ambient_c: f64,
+    circuits: u32,
+) -> Option<f64> {
+    let metal = if material == Material::Copper { "Cu" } else { "Al" };
+    let insulation = if insulation_c >= 90 { "XLPE 90C" } else { "PVC 70C" };
+    let fits = |c: &Cells| {
+        text(c, "insulation") == insulation
+            && text(c, "conductor") == metal
+            && text(c, "method") == method.word()
+            && text(c, "loaded_conductors") == "3"
+            && number(c, "mm2") == Some(mm2)
+    };
+    let base = rows(include_str!("data/ampacity_iec60364_5_52.csv"))
+        .find(fits)
+        .and_then(|c| number(&c, "ampacity_A"))?;
+    let column = if insulation_c >= 90 { "f_XLPE_90C" } else { "f_PVC_70C" };
+    let ambient = rows(include_str!("data/ampacity_iec_temperature_factors.csv"))
+        .filter(|c| number(c, "ambient_air_C").is_some_and(|t| t >= ambient_c))
+        .find_map(|c| number(&c, column))?;
+    let grouping = rows(include_str!("data/ampacity_iec_grouping.csv"))
+        .filter(|c| text(c, "arrangement") == "Embedded or enclosed")
+        .filter(|c| number(c, "circuits").is_some_and(|n| n >= f64::from(circuits)))
+        .find_map(|c| number(&c, "factor"))?;
+    Some(base * ambient * grouping)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// NEC Table 310.16: 4/0 copper 230 A at 75 C; factor 0.8 for 4 to 6 conductors.
+    #[test]
+    fn nec_ratings() {
+        assert_eq!(nec_rating_amps("4/0", Material::Copper, 75, 30.0, 3), Some(230.0));
+        let four = nec_rating_amps("4/0", Material::Copper, 75, 30.0, 4).unwrap();
+        assert!((four - 184.0).abs() < 1e-9);
+        // Printed factor for 36 to 40 C at 75 C: 0.88 (computed at 40 C).
+        let warm = nec_rating_amps("4/0", Material::Copper, 75, 40.0, 3).unwrap();
+        assert!((warm / 230.0 - 0.88).abs() < 0.005);
+        assert_eq!(nec_rating_amps("4/0", Material::Copper, 75, 80.0, 3), None);
+        assert_eq!(nec_rating_amps("77", Material::Copper, 75, 30.0, 3), None);
+    }
+
+    /// IEC 60364-5-52 Table B.52.4, method C, three loaded copper conductors in PVC: 16 mm2 76 A (from memory).
+    #[test]
+    fn iec_ratings() {
+        assert_eq!(iec_rating_amps(16.0, Material::Copper, 70, IecMethod::C, 30.0, 1), Some(76.0));
+        let two = iec_rating_amps(16.0, Material::Copper, 70, IecMethod::C, 30.0, 2).unwrap();
+        assert!((two - 76.0 * 0.8).abs() < 1e-9);
+    }
+}
