@@ -222,11 +222,13 @@ fn fill(intake: &mut Intake, known: Vec<(usize, String, Vec<u8>)>) -> Draft {
         study: with(intake, study, study::read),
         supplies: with(intake, source, source::read),
         nodes: with(intake, nodes, nodes::read),
-        constructions: constructions::read(intake, constructions, conductors, spacings),
         ..Draft::default()
     };
-    draft.constructions.extend(with(intake, matrices, matrices::read));
+    let described = constructions::read(intake, constructions, conductors, spacings);
+    draft.constructions = with(intake, matrices, matrices::read);
     draft.lines = with(intake, lines, lines::read);
+    let computed = described.compute(intake, &draft.study, &draft.lines, &draft.constructions);
+    draft.constructions.extend(computed);
     draft.switches = with(intake, switches, switches::read);
     draft.transformers = with(intake, transformers, transformers::read);
     draft.regulators = with(intake, regulators, regulators::read);
