@@ -63,7 +63,7 @@ impl Descriptions {
         study: &Study,
         lines: &[LineRecord],
         given: &[Construction],
-    ) -> Vec<Construction> {
+    ) -> Computed {
         let conditions = Conditions {
             frequency_hz: study.frequency_hz,
             earth_resistivity_ohm_m: study.earth_resistivity_ohm_m,
@@ -88,8 +88,26 @@ impl Descriptions {
                 }
             }
         }
-        computed
+        let described =
+            self.described.into_iter().map(|d| DescribedConstruction { name: d.name, recipe: d.recipe });
+        Computed { constructions: computed, described: described.collect(), catalog: self.catalog }
     }
+}
+
+/// What the descriptions came to.
+pub(super) struct Computed {
+    pub constructions: Vec<Construction>,
+    pub described: Vec<DescribedConstruction>,
+    pub catalog: Catalog,
+}
+
+/// A construction of `constructions.csv`, its temperature settled.
+#[derive(Debug, Clone)]
+pub struct DescribedConstruction {
+    /// Name.
+    pub name: Name,
+    /// How it is described.
+    pub recipe: Recipe,
 }
 
 /// Sets of conductors that lines carry with this construction; one likely set where none uses it.
