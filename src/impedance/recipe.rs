@@ -83,7 +83,7 @@ impl RecipeFault {
     pub fn cure(&self) -> String {
         match self {
             RecipeFault::Wire(fault) => fault.cure(),
-            RecipeFault::Geometry(_) => "mend the spacing or the wire's data".to_string(),
+            RecipeFault::Geometry(fault) => fault.cure().to_string(),
             RecipeFault::MissingDatum { .. } => {
                 "give it in conductors.csv, or choose a wire that has it".to_string()
             }
@@ -106,7 +106,7 @@ impl fmt::Display for RecipeFault {
             RecipeFault::Wire(fault) => fault.fmt(f),
             RecipeFault::Geometry(fault) => fault.fmt(f),
             RecipeFault::MissingDatum { wire, datum } => write!(f, "{datum} of {wire} is not known"),
-            RecipeFault::NoPlace { conductors } => write!(f, "the spacing gives no place for {conductors}"),
+            RecipeFault::NoPlace { conductors } => write!(f, "no spacing gives a place for {conductors}"),
             RecipeFault::NoNeutral => {
                 f.write_str("the line carries n, but the construction has no neutral wire")
             }

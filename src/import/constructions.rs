@@ -9,7 +9,7 @@ use super::table::read_table;
 use crate::catalog::{Catalog, Conductor, ConduitKind, Current, Material, Resistance, at_temperature};
 use crate::diagnostic::{Code, FileId, Origin, nearest};
 use crate::impedance::{Conditions, EPSILON_0, Kind, Recipe, RecipeFault, Sequence, Spacing, evaluate};
-use crate::math::Complex64;
+use crate::math::{Complex64, PhaseMatrix};
 use crate::network::{Conductors, Construction, LineRecord, Name, Study};
 use crate::units::{METRES_PER_FOOT, METRES_PER_INCH, SIEMENS_PER_MICROSIEMENS};
 
@@ -19,6 +19,8 @@ struct Described {
     recipe: Recipe,
     /// Temperature given in its row; the study's otherwise.
     own_temperature: bool,
+    /// False where its row has a fault that was told: it then stands in with a placeholder.
+    sound: bool,
     origin: Origin,
 }
 
@@ -82,15 +84,39 @@ impl Descriptions {
             }
             let mut told = HashSet::new();
             for conductors in wanted(one, lines) {
+                if !one.sound {
+                    computed.push(placeholder(one, conductors));
+                    continue;
+                }
                 match evaluate_for(one, &self.catalog, conductors, &conditions) {
                     Ok(construction) => computed.push(construction),
-                    Err(faults) => report(intake, one, conductors, faults, &mut told),
+                    Err(faults) => {
+                        report(intake, one, conductors, faults, &mut told);
+                        computed.push(placeholder(one, conductors));
+                    }
                 }
             }
         }
         let described =
             self.described.into_iter().map(|d| DescribedConstruction { name: d.name, recipe: d.recipe });
         Computed { constructions: computed, described: described.collect(), catalog: self.catalog }
+    }
+}
+
+/// Stands in for a construction with a fault, so that its lines are not told as faulty too.
+fn placeholder(one: &Described, conductors: Conductors) -> Construction {
+    let mut z_per_m = PhaseMatrix::zeros();
+    for c in conductors.iter() {
+        z_per_m[(c.slot(), c.slot())] = Complex64::new(3e-4, 3e-4);
+    }
+    let y_per_m = PhaseMatrix::zeros();
+    Construction {
+        name: one.name.clone(),
+        conductors,
+        z_per_m,
+        y_per_m,
+        rating_amps: None,
+        origin: Some(one.origin),
     }
 }
 
@@ -258,11 +284,14 @@ fn read_construction(row: &mut Row<'_>, spacings: &HashMap<Name, Spacing>) -> Op
     }
     let phase = row.text(PHASE).map(str::to_owned);
     let neutral = row.text(NEUTRAL).map(str::to_owned);
-    let spacing = row.shared_name(SPACING).and_then(|s| find_spacing(row, spacings, &s));
+    let spacing_name = row.shared_name(SPACING);
+    let spacing = spacing_name.as_ref().and_then(|s| find_spacing(row, spacings, s));
     let temperature = row.optional_number(TEMPERATURE);
     let conduit = row.word(CONDUIT, CONDUITS, ConduitKind::Pvc);
     let values: Vec<Option<f64>> = SEQUENCE.iter().map(|&c| row.optional_number(c)).collect();
-    let kind = kind?;
+    let mut sound = spacing_name.is_none() || spacing.is_some();
+    sound &= kind.is_some();
+    let kind = kind.unwrap_or(Kind::Sequence);
     if kind != Kind::Sequence && phase.is_none() {
         row.error(
             Code::MissingValue,
@@ -270,7 +299,7 @@ fn read_construction(row: &mut Row<'_>, spacings: &HashMap<Name, Spacing>) -> Op
             "the wire or cable of the phases is missing",
             "fill in `phase_conductor`",
         );
-        return None;
+        sound = false;
     }
     let sequence = match values.as_slice() {
         [Some(r1), Some(x1), Some(r0), Some(x0), b1, b0] => Some(Sequence {
@@ -290,7 +319,7 @@ fn read_construction(row: &mut Row<'_>, spacings: &HashMap<Name, Spacing>) -> Op
         sequence,
         temperature_c: temperature.unwrap_or(75.0),
     };
-    Some(Described { name: name?, recipe, own_temperature: temperature.is_some(), origin: row.origin })
+    Some(Described { name: name?, recipe, own_temperature: temperature.is_some(), sound, origin: row.origin })
 }
 
 fn find_spacing(row: &mut Row<'_>, spacings: &HashMap<Name, Spacing>, name: &Name) -> Option<Spacing> {
