@@ -230,4 +230,6 @@ pub(super) enum LineFormat {
     Text,
     /// One JSON object
     Json,
+    /// One table: the last one asked for (sizes, drop, matrices or wires)
+    Csv,
 }

@@ -21,7 +21,7 @@ pub(super) fn parse_length(text: &str) -> Result<f64, Fault> {
         _ => {
             return Err((
                 format!("{text:?} is no length"),
-                "write a number and m, km, ft, kft or mi, such as 150ft".into(),
+                "write a number and its unit (m, km, ft, kft or mi), such as 150ft".into(),
             ));
         }
     };

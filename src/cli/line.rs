@@ -8,7 +8,9 @@ use super::{Outcome, Screen};
 use crate::catalog::{Catalog, Conductor, ConduitKind, Family, IecMethod, Material, iec_rating_amps};
 use crate::impedance::{Computed, Conditions, EPSILON_0, Kind, NEUTRAL, Recipe, Spacing, evaluate};
 use crate::import::read_folder;
-use crate::output::{construction_text, diagnostics_text, drop_text, sizes_text, wires_text};
+use crate::output::{
+    construction_text, diagnostics_text, drop_text, json_rows, matrix_rows, rows_csv, sizes_text, wires_text,
+};
 use crate::study::construction::{ConstructionReport, Per, reduce_neutral, sequence_means};
 use crate::study::line::{Candidate, Case, Circuit, Wire, drop, sizes};
 
@@ -45,7 +47,7 @@ fn run(options: &Line, screen: &mut Screen) -> Result<(), Vec<Fault>> {
     let computed = if asked.placed { Some(compute(&asked)?) } else { None };
     if let Some(computed) = &computed {
         let report = ConstructionReport::new(&asked.name, computed, &asked.slots, per(options.per));
-        pages.add("construction", json!(report), || construction_text(&report));
+        pages.add("construction", json!(report), || construction_text(&report), || matrix_rows(&report));
     }
     if let Some(case) = case(options)? {
         desk(options, &asked, computed.as_ref(), &case, &mut pages)?;
@@ -60,21 +62,30 @@ fn run(options: &Line, screen: &mut Screen) -> Result<(), Vec<Fault>> {
     Ok(())
 }
 
-/// Text pages one after the other, or one JSON object.
+/// Text pages one after the other, one JSON object, or the last table as CSV.
 struct Pages {
     format: LineFormat,
     text: String,
     object: serde_json::Map<String, serde_json::Value>,
+    table: String,
 }
 
 impl Pages {
     fn new(format: LineFormat) -> Pages {
-        Pages { format, text: String::new(), object: serde_json::Map::new() }
+        Pages { format, text: String::new(), object: serde_json::Map::new(), table: String::new() }
     }
 
-    fn add(&mut self, name: &str, value: serde_json::Value, text: impl FnOnce() -> String) {
+    /// Adds a result: its JSON, its page, and its rows with a header.
+    fn add(
+        &mut self,
+        name: &str,
+        value: serde_json::Value,
+        text: impl FnOnce() -> String,
+        rows: impl FnOnce() -> Vec<Vec<String>>,
+    ) {
         match self.format {
             LineFormat::Text => self.text.push_str(&text()),
+            LineFormat::Csv => self.table = rows_csv(&rows()),
             LineFormat::Json => {
                 self.object.insert(name.to_string(), value);
             }
@@ -84,6 +95,7 @@ impl Pages {
     fn finish(self) -> String {
         match self.format {
             LineFormat::Text => self.text,
+            LineFormat::Csv => self.table,
             LineFormat::Json => format!("{:#}\n", serde_json::Value::Object(self.object)),
         }
     }
@@ -109,7 +121,20 @@ fn list(options: &Line, text: &str, screen: &mut Screen) -> Result<(), Vec<Fault
             })
         })
         .collect();
-    pages.add("wires", json!(rows), || wires_text(&wires, temperature, frequency));
+    let header = [
+        "wire",
+        "material",
+        "area_mm2",
+        "r_ohm_per_km",
+        "r_at_c",
+        "diameter_mm",
+        "gmr_mm",
+        "rating_a",
+        "source",
+        "provenance",
+    ];
+    let table = || json_rows(&header, &rows);
+    pages.add("wires", json!(rows), || wires_text(&wires, temperature, frequency), table);
     screen.print(&pages.finish());
     Ok(())
 }
@@ -306,13 +331,30 @@ fn desk(
     } else {
         ""
     };
-    pages.add("drop", json!({ "case": case, "wire": wire, "result": result }), || {
-        format!("{}{note}", drop_text(case, &wire, &result))
+    let value = json!({ "case": case, "wire": wire, "result": result });
+    let row = json!({
+        "volts": case.volts, "amps": case.amps, "length_m": case.length_m, "drop_v": result.volts,
+        "drop_exact_v": result.exact_volts, "drop_percent": result.percent, "loss_w": result.loss_watts,
+    });
+    let page = || format!("{}{note}", drop_text(case, &wire, &result));
+    pages.add("drop", value, page, || {
+        json_rows(&["volts", "amps", "length_m", "drop_v", "drop_exact_v", "drop_percent", "loss_w"], &[row])
     });
     if let Some(limit) = options.limit {
         let candidates = candidates(asked, computed.is_some(), case.circuit);
         let judged = sizes(case, &candidates, limit, options.price);
-        pages.add("sizes", json!(judged), || sizes_text(&judged, ""));
+        let rows: Vec<_> = judged.rows.iter().map(|r| json!(r)).collect();
+        pages.add(
+            "sizes",
+            json!(judged),
+            || sizes_text(&judged),
+            || {
+                json_rows(
+                    &["size", "drop_percent", "loss_watts", "rating_amps", "loss_cost_per_year", "refused"],
+                    &rows,
+                )
+            },
+        );
     }
     Ok(())
 }

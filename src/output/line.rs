@@ -2,6 +2,7 @@
 
 use std::fmt::Write as _;
 
+use super::csv::guarded;
 use super::table::{Cell, Column, Table, WIDTH, number};
 use crate::catalog::{CAUTION, Conductor};
 use crate::study::construction::{ConstructionReport, Matrix};
@@ -187,7 +188,7 @@ pub fn drop_text(case: &Case, wire: &Wire, result: &Drop) -> String {
 }
 
 /// The table of sizes as text.
-pub fn sizes_text(sizes: &Sizes, currency: &str) -> String {
+pub fn sizes_text(sizes: &Sizes) -> String {
     let priced = sizes.rows.iter().any(|r| r.loss_cost_per_year.is_some());
     let mut columns = vec![
         Column::text("size"),
@@ -219,9 +220,7 @@ pub fn sizes_text(sizes: &Sizes, currency: &str) -> String {
     }
     let mut text = table.text();
     if priced {
-        let unit =
-            if currency.is_empty() { "the price's currency".to_string() } else { currency.to_string() };
-        let _ = writeln!(text, "\n  Loss a year: this current for 8760 hours, in {unit}.");
+        let _ = writeln!(text, "\n  Loss a year: this current for 8760 hours, in the currency of the price.");
     }
     let _ = match sizes.least.and_then(|k| sizes.rows.get(k)) {
         Some(row) => writeln!(text, "\nLeast size that keeps the limit and the current: {}", row.size),
@@ -229,4 +228,61 @@ pub fn sizes_text(sizes: &Sizes, currency: &str) -> String {
     };
     let _ = writeln!(text, "{CAUTION}");
     text
+}
+
+/// Fields of flat JSON objects as text cells, the header first.
+pub fn json_rows(header: &[&str], objects: &[serde_json::Value]) -> Vec<Vec<String>> {
+    let cell = |value: Option<&serde_json::Value>| match value {
+        None | Some(serde_json::Value::Null) => String::new(),
+        Some(serde_json::Value::String(text)) => guarded(text).into_owned(),
+        Some(other) => other.to_string(),
+    };
+    let rows = objects.iter().map(|o| header.iter().map(|h| cell(o.get(h))).collect());
+    let names = header.iter().map(|h| h.to_string()).collect();
+    std::iter::once(names).chain(rows).collect()
+}
+
+/// Elements of a construction's matrices, a row each.
+pub fn matrix_rows(report: &ConstructionReport) -> Vec<Vec<String>> {
+    let per = report.per.word();
+    let mut rows = vec![vec![
+        "matrix".to_string(),
+        "row".to_string(),
+        "column".to_string(),
+        format!("r_ohm_per_{per}"),
+        format!("x_ohm_per_{per}"),
+        format!("b_us_per_{per}"),
+    ]];
+    let mut add = |name: &str, m: &Matrix, b: Option<&Matrix>| {
+        for i in 0..m.conductors.len() {
+            for j in i..m.conductors.len() {
+                rows.push(vec![
+                    name.to_string(),
+                    m.conductors[i].clone(),
+                    m.conductors[j].clone(),
+                    m.re[i][j].to_string(),
+                    m.im[i][j].to_string(),
+                    b.map_or(String::new(), |b| b.im[i][j].to_string()),
+                ]);
+            }
+        }
+    };
+    if let Some(primitive) = &report.primitive_ohm {
+        add("primitive", primitive, None);
+    }
+    add("full", &report.full_ohm, Some(&report.charging_us));
+    if let Some(reduced) = &report.reduced_ohm {
+        add("reduced", reduced, None);
+    }
+    rows
+}
+
+/// Rows as CSV text.
+pub fn rows_csv(rows: &[Vec<String>]) -> String {
+    let mut writer = csv::Writer::from_writer(Vec::new());
+    for row in rows {
+        // Writing to memory does not fail.
+        let _ = writer.write_record(row);
+    }
+    writer.into_inner().ok().and_then(|bytes| String::from_utf8(bytes).ok()).unwrap_or_default()
 }
