@@ -132,16 +132,16 @@ pub(super) struct Line {
     #[arg(long, value_enum, default_value_t = PerWord::Km)]
     pub per: PerWord,
     /// Current of the circuit, amperes
-    #[arg(long)]
+    #[arg(long, allow_negative_numbers = true)]
     pub amps: Option<f64>,
     /// Length of the circuit one way, with its unit: 150ft, 60m, 1.2km
     #[arg(long, value_name = "LENGTH")]
     pub length: Option<String>,
     /// Voltage at the sending end (line to line for three phases)
-    #[arg(long)]
+    #[arg(long, allow_negative_numbers = true)]
     pub volts: Option<f64>,
     /// Power factor, lagging
-    #[arg(long, default_value_t = 0.85)]
+    #[arg(long, default_value_t = 0.85, allow_negative_numbers = true)]
     pub pf: f64,
     /// How the circuit returns
     #[arg(long, value_enum, default_value_t = CircuitWord::Single)]

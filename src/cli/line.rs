@@ -326,6 +326,16 @@ fn desk(
         None => resistance_only(asked, &asked.recipe.phase)?,
     };
     let result = drop(case, &wire);
+    if result.percent >= 100.0 && options.limit.is_none() {
+        let message = format!(
+            "the drop would be {:.0} % of {} V: that current cannot flow over that length",
+            result.percent, case.volts
+        );
+        return Err(vec![(
+            message,
+            "check --length and its unit, --amps and --volts, or choose a larger wire".into(),
+        )]);
+    }
     let note = if computed.is_none() && case.circuit != Circuit::Dc {
         "Reactance left out: without --spacing or --conduit only the wire's resistance is known.\n\n"
     } else {
@@ -336,7 +346,14 @@ fn desk(
         "volts": case.volts, "amps": case.amps, "length_m": case.length_m, "drop_v": result.volts,
         "drop_exact_v": result.exact_volts, "drop_percent": result.percent, "loss_w": result.loss_watts,
     });
-    let page = || format!("{}{note}", drop_text(case, &wire, &result));
+    let page = || {
+        // Beyond all the voltage there is only the table of sizes to look at.
+        if result.percent >= 100.0 {
+            String::new()
+        } else {
+            format!("{}{note}", drop_text(case, &wire, &result))
+        }
+    };
     pages.add("drop", value, page, || {
         json_rows(&["volts", "amps", "length_m", "drop_v", "drop_exact_v", "drop_percent", "loss_w"], &[row])
     });
