@@ -27,6 +27,7 @@ mod table;
 mod text;
 mod transformers;
 mod unsupported;
+mod wires;
 mod words;
 
 use crate::catalog::Catalog;
