@@ -12,9 +12,9 @@ const LEAST_FLOOR_PU: f64 = 1e-6;
 
 /// Constant-power star loads of one node: by far the most common record.
 #[derive(Debug, Clone, Copy)]
-pub(super) struct StarPower {
+pub(super) struct StarPower<S = f64> {
     /// Active (re) and reactive (im) power of each phase; the n slot is zero.
-    power: Slots,
+    power: Slots<S>,
     /// Floor voltage squared, and its inverse.
     floor2: f64,
     inverse_floor2: f64,
@@ -24,19 +24,19 @@ pub(super) struct StarPower {
 
 /// Every kind of load at one node.
 #[derive(Debug, Clone, Copy)]
-pub(super) struct Mixed {
-    star: StarPower,
+pub(super) struct Mixed<S = f64> {
+    star: StarPower<S>,
     /// Power over nominal voltage of constant-current star loads.
-    star_current: Slots,
+    star_current: Slots<S>,
     /// Slots ab, bc, ca.
-    delta_power: Slots,
-    delta_current: Slots,
+    delta_power: Slots<S>,
+    delta_current: Slots<S>,
     delta_floor2: f64,
 }
 
 /// `I = conj(S) u g` for each slot.
 #[inline(always)]
-fn currents<Q: Quad>(power: &Slots, u: Phasors<Q>, gain: Q) -> Phasors<Q> {
+fn currents<Q: Quad>(power: &Slots<Q::Slot>, u: Phasors<Q>, gain: Q) -> Phasors<Q> {
     let s = Phasors::<Q>::load(power).each(|part| part.times(gain));
     Phasors { re: s.re.times_plus(u.re, s.im.times(u.im)), im: s.im.times_from(u.re, s.re.times(u.im)) }
 }
@@ -57,7 +57,7 @@ fn current_gain<Q: Quad>(square: Q, floor2: f64) -> Q {
     Q::splat(1.0).over(square.greater(least).root())
 }
 
-impl StarPower {
+impl<S: Copy> StarPower<S> {
     /// Voltages across the elements; the n slot is of no use.
     #[inline(always)]
     fn across<Q: Quad>(&self, v: Phasors<Q>) -> Phasors<Q> {
@@ -74,17 +74,17 @@ impl StarPower {
 
     /// Current drawn from each conductor at these node voltages.
     #[inline(always)]
-    pub fn current<Q: Quad>(&self, v: Phasors<Q>) -> Phasors<Q> {
+    pub fn current<Q: Quad<Slot = S>>(&self, v: Phasors<Q>) -> Phasors<Q> {
         let u = self.across(v);
         let gain = power_gain(u.square(), self.floor2, self.inverse_floor2);
         self.close(currents(&self.power, u, gain))
     }
 }
 
-impl Mixed {
+impl<S: Copy> Mixed<S> {
     /// Current drawn from each conductor at these node voltages.
     #[inline(always)]
-    pub fn current<Q: Quad>(&self, v: Phasors<Q>) -> Phasors<Q> {
+    pub fn current<Q: Quad<Slot = S>>(&self, v: Phasors<Q>) -> Phasors<Q> {
         let u = self.star.across(v);
         let square = u.square();
         let power =

@@ -1,20 +1,29 @@
 //! Four conductors at a time: the small complex vectors and matrices of the sweep.
 //!
-//! A [`Quad`] is one real number a conductor slot, held in registers. The passes are written
-//! once over it: [`Plain`] is for any processor, [`Wide`] for those with 256-bit multiply-add.
-//! Several load cases side by side are another `Quad`, with a vector of cases in each slot.
+//! A [`Quad`] is one number a conductor slot, held in registers. The passes are written once over
+//! it: [`Plain`] is for any processor, [`Wide`] for those with 256-bit multiply-add. Several load
+//! cases side by side are another `Quad`, whose `Slot` is a vector of cases; impedances, which all
+//! cases share, come in as plain numbers.
 //! Real and imaginary parts are kept apart so that no instruction is spent on shuffling them.
 
 use crate::math::{Complex64, PhaseMatrix, PhaseVector, SLOTS};
 
-/// One real number a conductor slot (a, b, c, n), with the arithmetic the passes need.
+/// One number a conductor slot (a, b, c, n), with the arithmetic the passes need.
 pub(super) trait Quad: Copy {
-    /// The same four numbers in memory.
-    fn load(slots: &[f64; SLOTS]) -> Self;
+    /// What stands in one slot in memory: a number, or one for each of several cases.
+    type Slot: Copy;
+    /// The same four slots in memory.
+    fn load(slots: &[Self::Slot; SLOTS]) -> Self;
     /// To memory.
-    fn store(self) -> [f64; SLOTS];
+    fn store(self) -> [Self::Slot; SLOTS];
+    /// A slot in memory in every slot.
+    fn broadcast(slot: Self::Slot) -> Self;
+    /// Four plain numbers, one a slot, the same for all cases.
+    fn column(slots: &[f64; SLOTS]) -> Self;
     /// `value` in every slot.
     fn splat(value: f64) -> Self;
+    /// Greatest of all numbers; one that is not a number may be passed over.
+    fn greatest(self) -> f64;
     /// `self + other`.
     fn plus(self, other: Self) -> Self;
     /// `self - other`.
@@ -57,6 +66,19 @@ impl Plain {
 }
 
 impl Quad for Plain {
+    type Slot = f64;
+    #[inline(always)]
+    fn broadcast(slot: f64) -> Self {
+        Plain([slot; SLOTS])
+    }
+    #[inline(always)]
+    fn column(slots: &[f64; SLOTS]) -> Self {
+        Plain(*slots)
+    }
+    #[inline(always)]
+    fn greatest(self) -> f64 {
+        self.0.into_iter().fold(f64::NEG_INFINITY, |a, b| if a > b { a } else { b })
+    }
     #[inline(always)]
     fn load(slots: &[f64; SLOTS]) -> Self {
         Plain(*slots)
@@ -153,6 +175,19 @@ mod wide {
     pub(in super::super) struct Wide(__m256d);
 
     impl Quad for Wide {
+        type Slot = f64;
+        #[inline(always)]
+        fn broadcast(slot: f64) -> Self {
+            Wide::splat(slot)
+        }
+        #[inline(always)]
+        fn column(slots: &[f64; SLOTS]) -> Self {
+            Wide::load(slots)
+        }
+        #[inline(always)]
+        fn greatest(self) -> f64 {
+            self.store().into_iter().fold(f64::NEG_INFINITY, |a, b| if a > b { a } else { b })
+        }
         #[inline(always)]
         fn load(slots: &[f64; SLOTS]) -> Self {
             Wide(unsafe { _mm256_loadu_pd(slots.as_ptr()) })
@@ -233,9 +268,9 @@ mod wide {
 /// Four complex values in conductor order as they stand in memory, parts apart.
 #[derive(Debug, Clone, Copy)]
 #[repr(C, align(64))]
-pub(super) struct Slots {
-    pub re: [f64; SLOTS],
-    pub im: [f64; SLOTS],
+pub(super) struct Slots<S = f64> {
+    pub re: [S; SLOTS],
+    pub im: [S; SLOTS],
 }
 
 impl Slots {
@@ -263,15 +298,21 @@ pub(super) struct Phasors<Q> {
 }
 
 impl<Q: Quad> Phasors<Q> {
+    /// All zero.
+    #[inline(always)]
+    pub fn zero() -> Self {
+        Phasors { re: Q::splat(0.0), im: Q::splat(0.0) }
+    }
+
     /// From memory.
     #[inline(always)]
-    pub fn load(slots: &Slots) -> Self {
+    pub fn load(slots: &Slots<Q::Slot>) -> Self {
         Phasors { re: Q::load(&slots.re), im: Q::load(&slots.im) }
     }
 
     /// To memory.
     #[inline(always)]
-    pub fn store(self, slots: &mut Slots) {
+    pub fn store(self, slots: &mut Slots<Q::Slot>) {
         slots.re = self.re.store();
         slots.im = self.im.store();
     }
@@ -330,16 +371,16 @@ impl Columns {
     /// Column `j`.
     #[inline(always)]
     pub fn column<Q: Quad>(&self, j: usize) -> Phasors<Q> {
-        Phasors { re: Q::load(&self.re[j]), im: Q::load(&self.im[j]) }
+        Phasors { re: Q::column(&self.re[j]), im: Q::column(&self.im[j]) }
     }
 
     /// Matrix times vector.
     #[inline(always)]
-    pub fn times<Q: Quad>(&self, v: &Slots) -> Phasors<Q> {
+    pub fn times<Q: Quad>(&self, v: &Slots<Q::Slot>) -> Phasors<Q> {
         // Two sums, so that the multiply-adds of one need not wait for those of the other.
-        let mut sums = [Phasors { re: Q::splat(0.0), im: Q::splat(0.0) }; 2];
+        let mut sums = [Phasors::zero(); 2];
         for j in 0..SLOTS {
-            let factor = Phasors { re: Q::splat(v.re[j]), im: Q::splat(v.im[j]) };
+            let factor = Phasors { re: Q::broadcast(v.re[j]), im: Q::broadcast(v.im[j]) };
             sums[j % 2] = sums[j % 2].plus_product(factor, self.column(j));
         }
         sums[0].plus(sums[1])
@@ -350,7 +391,7 @@ impl Columns {
 mod tests {
     use super::*;
 
-    fn product<Q: Quad>(m: &PhaseMatrix, v: &PhaseVector) -> PhaseVector {
+    fn product<Q: Quad<Slot = f64>>(m: &PhaseMatrix, v: &PhaseVector) -> PhaseVector {
         let mut slots = Slots::ZERO;
         Columns::from(m).times::<Q>(&Slots::from(v)).store(&mut slots);
         PhaseVector::from(&slots)
@@ -369,7 +410,7 @@ mod tests {
         }
     }
 
-    fn moves<Q: Quad>() -> [[f64; 4]; 4] {
+    fn moves<Q: Quad<Slot = f64>>() -> [[f64; 4]; 4] {
         let q = Q::load(&[1.0, 2.0, 3.0, 4.0]);
         let with = q.with_neutral(q.phase_sum());
         [q.next_phase().store(), q.phase_before().store(), with.store(), q.neutral().store()]

@@ -20,8 +20,6 @@ use super::workspace::{
     BranchWork, DenseData, FloatingData, Layout, LoadWork, Loads, Run, SeriesData, State, Workspace,
 };
 
-use crate::math::PhaseVector;
-
 const N: usize = 3;
 
 /// How a run of iterations ended.
@@ -116,10 +114,15 @@ fn passes_wide(layout: &Layout, loads: &Loads, state: &mut State, which: Passes)
 }
 
 #[inline(always)]
-fn passes<Q: Quad>(layout: &Layout, loads: &Loads, state: &mut State, which: Passes) -> f64 {
+fn passes<Q: Quad>(
+    layout: &Layout,
+    loads: &Loads<Q::Slot>,
+    state: &mut State<Q::Slot>,
+    which: Passes,
+) -> f64 {
     if which != Passes::Down {
         // What gathers at the supply is its own affair; left there it would grow from sweep to sweep.
-        state.amps[0] = Slots::ZERO;
+        Phasors::<Q>::zero().store(&mut state.amps[0]);
         for run in layout.runs.iter().rev() {
             match run.branch {
                 BranchWork::Series => up_series::<Q>(layout, run, state),
@@ -146,7 +149,7 @@ fn passes<Q: Quad>(layout: &Layout, loads: &Loads, state: &mut State, which: Pas
                 run,
                 state,
                 #[inline(always)]
-                |_, _, amps| *amps = Slots::ZERO,
+                |_, _, amps| Phasors::<Q>::zero().store(amps),
             ),
             LoadWork::Star => down::<Q>(
                 layout,
@@ -165,12 +168,12 @@ fn passes<Q: Quad>(layout: &Layout, loads: &Loads, state: &mut State, which: Pas
         };
         change2 = largest.greater(change2);
     }
-    change2.store().into_iter().fold(0.0, |a: f64, b| if a > b { a } else { b }).sqrt()
+    change2.greatest().sqrt()
 }
 
 /// Series branches of a run, leaves first.
 #[inline(always)]
-fn up_series<Q: Quad>(layout: &Layout, run: &Run, state: &mut State) {
+fn up_series<Q: Quad>(layout: &Layout, run: &Run, state: &mut State<Q::Slot>) {
     let data = &layout.series[run.branch_data..];
     for position in (run.start..run.end).rev() {
         let SeriesData { table, length_m, beta } = &data[position - run.start];
@@ -194,7 +197,7 @@ fn up_series<Q: Quad>(layout: &Layout, run: &Run, state: &mut State) {
 
 /// General branches of a run, leaves first.
 #[inline(always)]
-fn up_dense<Q: Quad>(layout: &Layout, run: &Run, state: &mut State) {
+fn up_dense<Q: Quad>(layout: &Layout, run: &Run, state: &mut State<Q::Slot>) {
     let data = &layout.dense[run.branch_data..];
     for position in (run.start..run.end).rev() {
         pass_up::<Q>(&data[position - run.start], layout.parent[position], position, state);
@@ -202,7 +205,7 @@ fn up_dense<Q: Quad>(layout: &Layout, run: &Run, state: &mut State) {
 }
 
 #[inline(always)]
-fn pass_up<Q: Quad>(data: &DenseData, parent: u32, position: usize, state: &mut State) {
+fn pass_up<Q: Quad>(data: &DenseData, parent: u32, position: usize, state: &mut State<Q::Slot>) {
     let amps = &state.amps[position];
     data.n.times::<Q>(amps).store(&mut state.drop[position]);
     let passed = data.m_transposed.times::<Q>(amps);
@@ -212,14 +215,21 @@ fn pass_up<Q: Quad>(data: &DenseData, parent: u32, position: usize, state: &mut 
 
 /// Branches into floating sides, leaves first: `w = N K + q (q^T K) scale`.
 #[inline(always)]
-fn up_floating<Q: Quad>(layout: &Layout, run: &Run, state: &mut State) {
+fn up_floating<Q: Quad>(layout: &Layout, run: &Run, state: &mut State<Q::Slot>) {
     let data = &layout.floating[run.branch_data..];
     for position in (run.start..run.end).rev() {
         let FloatingData { dense, q, scale } = &data[position - run.start];
         pass_up::<Q>(dense, layout.parent[position], position, state);
-        let together = q.dot(&PhaseVector::from(&state.amps[position])) * scale;
-        let drop = PhaseVector::from(&state.drop[position]) + q * together;
-        state.drop[position] = Slots::from(&drop);
+        let (amps, drop) = (&state.amps[position], &mut state.drop[position]);
+        let mut sum = Phasors::<Q>::zero();
+        for j in 0..=N {
+            let own = Phasors { re: Q::broadcast(amps.re[j]), im: Q::broadcast(amps.im[j]) };
+            sum = sum.plus_product(own, Phasors { re: Q::splat(q.re[j]), im: Q::splat(q.im[j]) });
+        }
+        let scale = Phasors { re: Q::splat(scale.re), im: Q::splat(scale.im) };
+        let together = Phasors::zero().plus_product(scale, sum);
+        let q = Phasors { re: Q::column(&q.re), im: Q::column(&q.im) };
+        Phasors::load(drop).plus_product(together, q).store(drop);
     }
 }
 
@@ -228,8 +238,8 @@ fn up_floating<Q: Quad>(layout: &Layout, run: &Run, state: &mut State) {
 fn down<Q: Quad>(
     layout: &Layout,
     run: &Run,
-    state: &mut State,
-    draw: impl Fn(usize, Phasors<Q>, &mut Slots),
+    state: &mut State<Q::Slot>,
+    draw: impl Fn(usize, Phasors<Q>, &mut Slots<Q::Slot>),
 ) -> Q {
     match run.branch {
         BranchWork::Series => {
@@ -245,8 +255,7 @@ fn down<Q: Quad>(
                     let volts = Phasors::load(above).minus(drop);
                     let minus_beta =
                         Phasors { re: Q::splat(-beta.re * length_m), im: Q::splat(-beta.im * length_m) };
-                    let zero = Phasors { re: Q::splat(0.0), im: Q::splat(0.0) };
-                    let factor = zero.plus_product(minus_beta, volts.each(Q::neutral));
+                    let factor = Phasors::zero().plus_product(minus_beta, volts.each(Q::neutral));
                     volts.plus_product(factor, layout.table[*table as usize].column(N))
                 },
             )
@@ -280,9 +289,9 @@ fn down<Q: Quad>(
 fn down_by<Q: Quad>(
     layout: &Layout,
     run: &Run,
-    state: &mut State,
-    draw: impl Fn(usize, Phasors<Q>, &mut Slots),
-    volts_of: impl Fn(usize, &Slots, Phasors<Q>) -> Phasors<Q>,
+    state: &mut State<Q::Slot>,
+    draw: impl Fn(usize, Phasors<Q>, &mut Slots<Q::Slot>),
+    volts_of: impl Fn(usize, &Slots<Q::Slot>, Phasors<Q>) -> Phasors<Q>,
 ) -> Q {
     let mut largest = Q::splat(0.0);
     for position in run.start..run.end {

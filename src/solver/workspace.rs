@@ -11,7 +11,7 @@ use super::branch::{
 };
 use super::injection::{Gathered, Mixed, StarPower, gather};
 use super::lanes::{Columns, Slots};
-use crate::math::{Complex64, PhaseMatrix, PhaseVector, ZERO};
+use crate::math::{Complex64, PhaseMatrix, ZERO};
 use crate::network::{BranchKind, LoadModel, Network, NodeId};
 
 /// Work at the branch of a position.
@@ -66,7 +66,7 @@ pub(super) struct DenseData {
 #[derive(Debug, Clone, Copy)]
 pub(super) struct FloatingData {
     pub dense: DenseData,
-    pub q: PhaseVector,
+    pub q: Slots,
     pub scale: Complex64,
 }
 
@@ -87,20 +87,20 @@ pub(super) struct Layout {
 
 /// Load records in the order of the positions that have one.
 #[derive(Debug)]
-pub(super) struct Loads {
-    pub star: Vec<StarPower>,
-    pub mixed: Vec<Mixed>,
+pub(super) struct Loads<S = f64> {
+    pub star: Vec<StarPower<S>>,
+    pub mixed: Vec<Mixed<S>>,
 }
 
 /// What the iteration changes, by position.
 #[derive(Debug)]
-pub(super) struct State {
+pub(super) struct State<S = f64> {
     /// Voltages to earth, volts.
-    pub volts: Vec<Slots>,
+    pub volts: Vec<Slots<S>>,
     /// Load currents, own and gathered from below, amperes.
-    pub amps: Vec<Slots>,
+    pub amps: Vec<Slots<S>>,
     /// Voltage drop of the gathered currents in the branch, volts.
-    pub drop: Vec<Slots>,
+    pub drop: Vec<Slots<S>>,
 }
 
 /// Everything the iteration of one network touches. Building it allocates; iterating does not.
@@ -184,7 +184,7 @@ impl Layout {
             }
             Eliminated::Floating(parts) => {
                 let Floating { m, n, q, scale } = *parts;
-                self.floating.push(FloatingData { dense: DenseData::new(&m, &n), q, scale });
+                self.floating.push(FloatingData { dense: DenseData::new(&m, &n), q: Slots::from(&q), scale });
             }
         }
     }

@@ -172,7 +172,7 @@ mod tests {
         };
         let all = [
             of("thin", 5e-3, Some(30.0)),
-            of("middle", 1.5e-3, Some(60.0)),
+            of("middle", 2e-3, Some(60.0)),
             of("unrated", 1e-3, None),
             of("thick", 1e-3, Some(80.0)),
         ];
