@@ -16,12 +16,12 @@ pub(super) struct Arguments {
 #[derive(Debug, Subcommand)]
 pub(super) enum Command {
     /// Read a network folder and say all that is wrong with it, with file, row, column and mend.
-    #[command(after_help = "Example: fourwire check networks/quarry\n\n\
+    #[command(after_help = "Example: fourwire check networks/brindle-quarry\n\n\
         Exit status: 0 nothing is wrong (remarks are allowed), 2 something is.")]
     Check(Check),
     /// Solve a network: voltage at every node, current in every conductor, losses, limits exceeded.
-    #[command(after_help = "Examples:\n  fourwire flow networks/quarry\n  \
-        fourwire flow networks/quarry --format csv --out results\n\n\
+    #[command(after_help = "Examples:\n  fourwire flow networks/brindle-quarry\n  \
+        fourwire flow networks/brindle-quarry --format csv --out results\n\n\
         Exit status: 0 solved, 1 solved but a limit is exceeded and --strict was given,\n\
         2 the input or the command line is wrong, 3 no solution.")]
     Flow(Flow),

@@ -52,5 +52,10 @@ pub fn run() -> ExitCode {
         Command::Check(options) => check::check(&options, &mut screen),
         Command::Flow(options) => flow::flow(&options, &mut screen),
     };
+    if let Some(error) = screen.failure() {
+        let text = format!("error: standard output cannot be written: {error}\n");
+        screen.tell(&text);
+        return Outcome::WrongInput.into();
+    }
     outcome.into()
 }
