@@ -339,3 +339,81 @@ fn a_reader_that_goes_away_is_no_fault() {
         assert_eq!(text(&output.stderr), "");
     }
 }
+
+#[test]
+fn line_lays_a_construction_open() {
+    let folder = network("larkfoot-valley");
+    let arguments = ["line", "--construction", "trunk336", folder.to_str().expect("a path"), "--per", "mi"];
+    let output = run(&arguments);
+    assert_eq!(output.status.code(), Some(0), "{}", text(&output.stderr));
+    let page = text(&output.stdout);
+    for part in
+        ["Kron reduction", "Sequence impedances", "Shunt susceptance", "Assumptions", "Sources", "local code"]
+    {
+        assert!(page.contains(part), "{part} in {page}");
+    }
+    assert!(page.lines().all(|l| l.chars().count() <= 100), "{page}");
+    // Own impedance of 336.4 kcmil 26/7 ACSR: 0.4013 + j1.4133 ohm per mile (Kersting, ex. 4.1).
+    assert!(page.contains("0.4013 + j1.4133"), "{page}");
+    let json: Value =
+        serde_json::from_slice(&run(&[&arguments[..], &["--format", "json"]].concat()).stdout).expect("JSON");
+    assert!((json["construction"]["full_ohm"]["re"][0][0].as_f64().expect("a number") - 0.4013).abs() < 1e-4);
+    let csv = text(&run(&[&arguments[..], &["--format", "csv"]].concat()).stdout);
+    assert!(csv.starts_with("matrix,row,column,r_ohm_per_mi,x_ohm_per_mi,b_us_per_mi\n"), "{csv}");
+}
+
+#[test]
+fn line_finds_wires_and_the_least_size() {
+    let list = text(&run(&["line", "--list", "4/0"]).stdout);
+    assert!(list.contains("4/0 AWG 6/1 ACSR") && list.contains("Kersting"), "{list}");
+    assert!(list.lines().all(|l| l.chars().count() <= 100), "{list}");
+    assert!(text(&run(&["line", "--list"]).stdout).lines().count() > 180);
+    let sizes = run(&[
+        "line",
+        "--phase",
+        "1 AWG copper NEC",
+        "--conduit",
+        "aluminium",
+        "--circuit",
+        "three",
+        "--volts",
+        "240",
+        "--amps",
+        "100",
+        "--length",
+        "150ft",
+        "--limit",
+        "3",
+        "--price",
+        "0.12",
+    ]);
+    let page = text(&sizes.stdout);
+    assert_eq!(sizes.status.code(), Some(0), "{}", text(&sizes.stderr));
+    assert!(page.contains("Least size that keeps the limit and the current: 3 AWG copper NEC"), "{page}");
+    assert!(page.lines().all(|l| l.chars().count() <= 100), "{page}");
+}
+
+#[test]
+fn line_says_what_is_missing_or_wrong() {
+    let folder = network("larkfoot-valley");
+    let folder = folder.to_str().expect("a path");
+    for (arguments, word) in [
+        (&["line"][..], "--phase"),
+        (&["line", "--phase", "Dofe"], "--spacing"),
+        (&["line", "--phase", "Dofe", "--spacing", "a 0 9 m"], "Dove"),
+        (&["line", "--phase", "Dove", "--spacing", "a 0 9"], "unit"),
+        (&["line", "--phase", "#2", "--volts", "240", "--amps", "5", "--length", "10m"], "write one of"),
+        (&["line", "--phase", "Dove", "--amps", "5"], "--volts"),
+        (&["line", "--phase", "Dove", "--amps", "5", "--volts", "240", "--length", "10"], "unit"),
+        (&["line", "--phase", "Dove", "--amps", "-5", "--volts", "240", "--length", "10m"], "above zero"),
+        (&["line", "--construction", "trunk337", folder], "trunk336"),
+        (&["line", "--construction", "trunk336"], "folder"),
+        (&["line", "--list", "moonlight"], "moonlight"),
+        (&["line", "--phase", "Dove", "--spacing", "a 0 9 m", "--frequency", "0"], "above zero"),
+    ] {
+        let output = run(arguments);
+        assert_eq!(output.status.code(), Some(2), "{arguments:?}");
+        let told = text(&output.stderr);
+        assert!(told.contains(word), "{arguments:?}: {word} in {told}");
+    }
+}

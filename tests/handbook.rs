@@ -336,3 +336,175 @@ fn published_configurations_of_the_13_node_feeder() {
     agree("605", &config_605, &[((2, 2), (1.3292, 1.3475))], tolerance);
     agree("607", &tape_line(1.0).z_per_m, &[((0, 0), (1.3425, 0.5124))], tolerance);
 }
+
+mod desk {
+    //! Worked examples of voltage drop, rating and short-time current.
+
+    use fourwire::catalog::{Catalog, ConduitKind, Material, short_time_amps};
+    use fourwire::study::line::{Case, Circuit, Drop, Wire, drop};
+    use fourwire::units::{METRES_PER_FOOT, METRES_PER_KILOFOOT, METRES_PER_MILE};
+
+    fn conduit(size: &str, material: Material, conduit: ConduitKind) -> Wire {
+        let row = Catalog::built_in().conduit(size, material, conduit).expect("the table has it");
+        Wire { r_ohm_per_m: row.r_ohm_per_m, x_ohm_per_m: row.x_ohm_per_m }
+    }
+
+    fn three(volts: f64, amps: f64, pf: f64, length_ft: f64, wire: &Wire) -> Drop {
+        drop(&Case { circuit: Circuit::Three, volts, amps, pf, length_m: length_ft * METRES_PER_FOOT }, wire)
+    }
+
+    /// Kersting, Distribution System Modeling and Analysis, ex. 3.1 and 3.3: 0.306 + j0.6272 ohm per mile,
+    /// 12.47 kV, 0.9 lagging: 0.00035291 % per kVA-mile; 7500 kVA over 1.5 miles 3.9702 %.
+    #[test]
+    fn drop_factor_of_a_feeder() {
+        let wire = Wire { r_ohm_per_m: 0.306 / METRES_PER_MILE, x_ohm_per_m: 0.6272 / METRES_PER_MILE };
+        let amps = |kva: f64| kva / (3f64.sqrt() * 12.47);
+        let one = three(12_470.0, amps(1.0), 0.9, 5280.0, &wire);
+        // The printed digits are cut off, not rounded.
+        assert!((one.percent - 0.000_352_91).abs() < 1e-8, "{}", one.percent);
+        let all = three(12_470.0, amps(7500.0), 0.9, 1.5 * 5280.0, &wire);
+        assert!((all.percent - 3.9702).abs() < 5e-4, "{}", all.percent);
+    }
+
+    /// NEC Handbook, Chapter 9 Table 9, example 1: 240 V, 100 A, pf 0.85, 1 AWG copper in aluminium conduit,
+    /// 150 ft: 2.40 V to neutral, 4.157 V line to line with the printed impedance 0.16 ohm/kft.
+    #[test]
+    fn nec_example_1() {
+        let row = Catalog::built_in()
+            .conduit("1", Material::Copper, ConduitKind::Aluminium)
+            .expect("the table has it");
+        let printed = row.effective_ohm_per_m.expect("printed") * METRES_PER_KILOFOOT;
+        assert!((printed - 0.16).abs() < 1e-12);
+        let line_to_line = 3f64.sqrt() * printed * 0.150 * 100.0;
+        assert!((line_to_line - 4.157).abs() < 0.001);
+        // From R and X of the table the effective impedance is 0.16 rounded: half a unit of its last digit is 0.13 V.
+        let d = three(240.0, 100.0, 0.85, 150.0, &conduit("1", Material::Copper, ConduitKind::Aluminium));
+        assert!((d.volts - 4.157).abs() < 0.13, "{}", d.volts);
+    }
+
+    /// Example 2: 480 V, 270 A, pf 0.7, 600 kcmil aluminium in PVC, 250 ft: 3.581 V to neutral, 6.202 V, 1.292 %.
+    #[test]
+    fn nec_example_2() {
+        let d = three(480.0, 270.0, 0.7, 250.0, &conduit("600", Material::Aluminium, ConduitKind::Pvc));
+        assert!((d.volts / 3f64.sqrt() - 3.581).abs() < 0.001, "{}", d.volts);
+        assert!((d.volts - 6.202).abs() < 0.001 && (d.percent - 1.292).abs() < 0.001);
+    }
+
+    /// Example 3: 250 kcmil copper in steel at 0.85: 0.073 ohm per kft.
+    #[test]
+    fn nec_example_3() {
+        let w = conduit("250", Material::Copper, ConduitKind::Steel);
+        let effective =
+            (w.r_ohm_per_m * 0.85 + w.x_ohm_per_m * (1.0f64 - 0.85 * 0.85).sqrt()) * METRES_PER_KILOFOOT;
+        assert!((effective - 0.073).abs() < 0.0005, "{effective}");
+    }
+
+    /// IEEE Std 141 form, computed from the formula (no published number): E 277 V, 100 A, R 0.05, X 0.04 ohm,
+    /// pf 0.85: approximate 6.357 V, exact 6.358 V.
+    #[test]
+    fn approximate_and_exact_drop() {
+        let wire = Wire { r_ohm_per_m: 0.05, x_ohm_per_m: 0.04 };
+        let case = Case {
+            circuit: Circuit::Three,
+            volts: 277.0 * 3f64.sqrt(),
+            amps: 100.0,
+            pf: 0.85,
+            length_m: 1.0,
+        };
+        let d = drop(&case, &wire);
+        assert!((d.volts / 3f64.sqrt() - 6.357).abs() < 0.0006, "{}", d.volts / 3f64.sqrt());
+        assert!((d.exact_volts / 3f64.sqrt() - 6.358).abs() < 0.0006, "{}", d.exact_volts / 3f64.sqrt());
+    }
+
+    /// IEC 60364-5-52 Annex G, computed from the formula (no published number): 50 A, 100 m, 16 mm2 copper at
+    /// 0.0225 ohm mm2/m, 0.08 milliohm per metre, cos 0.8: 5.865 V, 2.55 % of 230 V.
+    #[test]
+    fn iec_annex_g() {
+        let wire = Wire { r_ohm_per_m: 0.0225 / 16.0, x_ohm_per_m: 0.08e-3 };
+        let case = Case {
+            circuit: Circuit::Three,
+            volts: 230.0 * 3f64.sqrt(),
+            amps: 50.0,
+            pf: 0.8,
+            length_m: 100.0,
+        };
+        let d = drop(&case, &wire);
+        assert!((d.volts / 3f64.sqrt() - 5.865).abs() < 0.0006 && (d.percent - 2.55).abs() < 0.001);
+    }
+
+    /// IEC 60949: 95 mm2 copper from 90 to 250 C in one second: 13.6 kA adiabatic, 13.9 kA in XLPE.
+    #[test]
+    fn short_time_withstand() {
+        let (adiabatic, warm) =
+            short_time_amps(95.0, Material::Copper, 90.0, 250.0, 1.0).expect("it makes sense");
+        assert!(
+            (adiabatic / 1e3 - 13.6).abs() < 0.05 && (warm / 1e3 - 13.9).abs() < 0.05,
+            "{adiabatic} {warm}"
+        );
+        assert!(short_time_amps(95.0, Material::Copper, 250.0, 90.0, 1.0).is_none());
+    }
+
+    /// NEC Chapter 9 Table 9: the effective impedance printed for power factor 0.85 follows from R and X of
+    /// the same row, within the rounding of all three printed values.
+    #[test]
+    fn nec_table_9_effective_impedance_of_every_row() {
+        let sin = (1.0f64 - 0.85 * 0.85).sqrt();
+        let mut checked = 0;
+        let mut off_rows = Vec::new();
+        for row in Catalog::built_in().conduit_rows() {
+            let Some(printed) = row.effective_ohm_per_m else { continue };
+            let printed = printed * METRES_PER_KILOFOOT;
+            let (r, x) = (row.r_ohm_per_m * METRES_PER_KILOFOOT, row.x_ohm_per_m * METRES_PER_KILOFOOT);
+            let computed = 0.85 * r + sin * x;
+            // Two significant digits are printed: half a unit of the last, for each of R, X and Z.
+            let half = |v: f64| 0.5 * 10f64.powf(v.abs().log10().floor() - 1.0);
+            let allowed = half(printed) + 0.85 * half(r) + sin * half(x) + 1e-9;
+            if (computed - printed).abs() > allowed {
+                off_rows.push(format!(
+                    "{} {:?} in {:?}: {computed:.4}, printed {printed}",
+                    row.size, row.material, row.conduit
+                ));
+            }
+            checked += 1;
+        }
+        assert!(checked > 100, "{checked}");
+        assert!(off_rows.is_empty(), "{off_rows:#?}");
+    }
+
+    /// IEC 60228 greatest resistance at 20 C is above that of the nominal area by the standard's allowance for
+    /// stranding, wire diameter and compaction: 0 to 15 % (bounds from the values themselves, no source).
+    #[test]
+    fn iec_60228_resistance_against_resistivity_and_area() {
+        let mut checked = 0;
+        for wire in Catalog::built_in().search("mm2") {
+            let area = wire.area_m2.expect("an area");
+            let ideal = wire.material.resistivity_ohm_m().expect("a resistivity") / area;
+            let over = wire.resistances[0].ohm_per_m / ideal - 1.0;
+            assert!((-0.005..0.15).contains(&over), "{}: {over:.4}", wire.name);
+            checked += 1;
+        }
+        assert!(checked >= 30, "{checked}");
+    }
+
+    /// IEC 60228 Annex B: factor to 20 C by 1 / (1 + 0.004 (t - 20)), which is 250 / (230 + t).
+    #[test]
+    fn temperature_factors_of_iec_60228() {
+        let text = include_str!("../src/catalog/data/iec60228_temperature_factors.csv");
+        let mut reader = csv::Reader::from_reader(text.as_bytes());
+        let mut checked = 0;
+        for record in reader.records().map(|r| r.expect("a row")) {
+            let (t, printed): (f64, f64) =
+                (record[0].parse().expect("C"), record[1].parse().expect("a factor"));
+            // The material formulas of this library lie within 0.25 % of the standard's simple one up to 100 C.
+            for material in [Material::Copper, Material::Aluminium] {
+                let factor = fourwire::catalog::at_temperature(1.0, t, 20.0, material);
+                assert!(
+                    (factor / printed - 1.0).abs() < 0.005,
+                    "{material:?} at {t} C: {factor}, printed {printed}"
+                );
+            }
+            checked += 1;
+        }
+        assert!(checked >= 15);
+    }
+}

@@ -1,5 +1,7 @@
 //! The reader of network folders: published folders, every dialect, and what it says of faults.
 
+#[path = "import/construction_faults.rs"]
+mod construction_faults;
 #[path = "import/dialects.rs"]
 mod dialects;
 #[path = "import/faults.rs"]

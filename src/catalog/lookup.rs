@@ -114,8 +114,7 @@ fn parse(text: &str) -> Query {
             "solid" => query.key.stranding = Some("1".to_string()),
             "nec" | "building" => query.family = Some(Family::Building),
             "iec" => query.family = Some(Family::Iec),
-            "bare" | "wire" | "class" | "strand" | "strands" | "stranded" | "cable" | "a" | "2"
-                if numbers.len() == 1 && word != "2" => {}
+            "bare" | "wire" | "strand" | "strands" | "stranded" | "cable" => {}
             other => read_word(other, &mut query, &mut numbers),
         }
     }

@@ -10,7 +10,7 @@ mod conductor;
 mod lookup;
 mod tables;
 
-pub use ampacity::{CAUTION, IecMethod, iec_rating_amps, nec_rating_amps};
+pub use ampacity::{CAUTION, IecMethod, iec_rating_amps, nec_rating_amps, short_time_amps};
 pub use cables::{ConcentricCable, ConduitKind, ConduitRow, TapeCable};
 pub use conductor::{Conductor, Current, Family, Material, Resistance, at_temperature};
 pub use lookup::LookupFault;

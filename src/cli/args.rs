@@ -14,6 +14,7 @@ pub(super) struct Arguments {
 
 /// What to do.
 #[derive(Debug, Subcommand)]
+#[allow(clippy::large_enum_variant)] // made once
 pub(super) enum Command {
     /// Read a network folder and say all that is wrong with it, with file, row, column and mend.
     #[command(after_help = "Example: fourwire check networks/brindle-quarry\n\n\
@@ -25,6 +26,14 @@ pub(super) enum Command {
         Exit status: 0 solved, 1 solved but a limit is exceeded and --strict was given,\n\
         2 the input or the command line is wrong, 3 no solution.")]
     Flow(Flow),
+    /// Impedance from wires and geometry, the table of wires, and drop and loss of one circuit.
+    #[command(after_help = "Examples:\n  fourwire line --list \"4/0\"\n  \
+        fourwire line --construction trunk336 networks/larkfoot-valley\n  \
+        fourwire line --phase \"336.4 26/7 ACSR\" --neutral \"4/0 6/1 ACSR\" --per mi \\\n    \
+        --spacing \"a 0 29, b 2.5 29, c 7 29, n 4 25 ft\"\n  \
+        fourwire line --phase \"1 AWG copper NEC\" --conduit aluminium --circuit three \\\n    \
+        --volts 240 --amps 100 --pf 0.85 --length 150ft --limit 3")]
+    Line(Line),
 }
 
 /// Options of `check`.
@@ -78,5 +87,149 @@ pub(super) enum FlowFormat {
     /// One JSON object
     Json,
     /// One CSV file a list
+    Csv,
+}
+
+/// Options of `line`.
+#[derive(Debug, Args)]
+pub(super) struct Line {
+    /// Folder of the network whose construction is meant
+    pub folder: Option<PathBuf>,
+    /// Search the table of wires; alone it lists all
+    #[arg(long, value_name = "TEXT", num_args = 0..=1, default_missing_value = "")]
+    pub list: Option<String>,
+    /// Construction of the folder's constructions.csv
+    #[arg(long, value_name = "ID")]
+    pub construction: Option<String>,
+    /// Conductors carried, such as abcn or an
+    #[arg(long, value_name = "LETTERS")]
+    pub phases: Option<String>,
+    /// Wire or cable of the phases, as in the table
+    #[arg(long, value_name = "WIRE")]
+    pub phase: Option<String>,
+    /// Wire of the neutral
+    #[arg(long, value_name = "WIRE")]
+    pub neutral: Option<String>,
+    /// Places of the conductors, such as "a 0 29, b 2.5 29, c 7 29, n 4 25 ft" (or m)
+    #[arg(long, value_name = "PLACES")]
+    pub spacing: Option<String>,
+    /// Kind of construction (default: conduit with --conduit, else overhead)
+    #[arg(long, value_enum)]
+    pub kind: Option<KindWord>,
+    /// Conduit around building wire
+    #[arg(long, value_enum)]
+    pub conduit: Option<ConduitWord>,
+    /// Frequency, hertz
+    #[arg(long, default_value_t = 60.0, value_name = "HZ", value_parser = above_zero)]
+    pub frequency: f64,
+    /// Earth resistivity, ohm metre
+    #[arg(long, default_value_t = 100.0, value_name = "OHM_M", value_parser = above_zero)]
+    pub earth: f64,
+    /// Conductor temperature, degrees Celsius (default 50; 75 in conduit)
+    #[arg(long, value_name = "C", allow_negative_numbers = true)]
+    pub temperature: Option<f64>,
+    /// Length that impedances are shown for
+    #[arg(long, value_enum, default_value_t = PerWord::Km)]
+    pub per: PerWord,
+    /// Current of the circuit, amperes
+    #[arg(long, allow_negative_numbers = true)]
+    pub amps: Option<f64>,
+    /// Length of the circuit one way, with its unit: 150ft, 60m, 1.2km
+    #[arg(long, value_name = "LENGTH")]
+    pub length: Option<String>,
+    /// Voltage at the sending end (line to line for three phases)
+    #[arg(long, allow_negative_numbers = true)]
+    pub volts: Option<f64>,
+    /// Power factor, lagging
+    #[arg(long, default_value_t = 0.85, allow_negative_numbers = true)]
+    pub pf: f64,
+    /// How the circuit returns
+    #[arg(long, value_enum, default_value_t = CircuitWord::Single)]
+    pub circuit: CircuitWord,
+    /// Drop limit, percent: shows all sizes and the least that will do
+    #[arg(long, value_name = "PERCENT", value_parser = above_zero)]
+    pub limit: Option<f64>,
+    /// Price of a kilowatt-hour, for the cost of the loss
+    #[arg(long, value_name = "PRICE", value_parser = above_zero)]
+    pub price: Option<f64>,
+    /// Form of the result
+    #[arg(long, value_enum, default_value_t = LineFormat::Text)]
+    pub format: LineFormat,
+}
+
+/// A number above zero.
+fn above_zero(text: &str) -> Result<f64, String> {
+    match text.parse::<f64>() {
+        Ok(number) if number.is_finite() && number > 0.0 => Ok(number),
+        _ => Err("expected a number above zero".to_string()),
+    }
+}
+
+/// Kinds of construction.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
+pub(super) enum KindWord {
+    /// Bare wires in the air
+    Overhead,
+    /// Concentric-neutral cables
+    Concentric,
+    /// Tape-shielded cables
+    Tape,
+    /// Building wire in conduit
+    Conduit,
+    /// Insulated cores by their spacing
+    Bundle,
+}
+
+/// Conduits.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
+pub(super) enum ConduitWord {
+    /// Plastic
+    Pvc,
+    /// Aluminium
+    Aluminium,
+    /// Steel
+    Steel,
+}
+
+/// Lengths that impedances are shown for.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
+pub(super) enum PerWord {
+    /// Kilometre
+    Km,
+    /// Mile
+    Mi,
+    /// Thousand feet
+    Kft,
+}
+
+/// Circuits of the desk calculation.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
+pub(super) enum CircuitWord {
+    /// Single-phase, out and back
+    Single,
+    /// Three-phase, balanced
+    Three,
+    /// Direct current, out and back
+    Dc,
+}
+
+impl From<CircuitWord> for crate::study::line::Circuit {
+    fn from(word: CircuitWord) -> Self {
+        match word {
+            CircuitWord::Single => Self::Single,
+            CircuitWord::Three => Self::Three,
+            CircuitWord::Dc => Self::Dc,
+        }
+    }
+}
+
+/// Forms of the result of `line`.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
+pub(super) enum LineFormat {
+    /// A page for people
+    Text,
+    /// One JSON object
+    Json,
+    /// One table: the last one asked for (sizes, drop, matrices or wires)
     Csv,
 }

@@ -18,7 +18,7 @@ pub(super) struct Loaded {
 /// Reads a folder and builds its network, gathering the faults of both.
 pub(super) fn load(folder: &std::path::Path, screen: &mut Screen) -> Loaded {
     screen.doing("reading");
-    let Reading { draft, mut diagnostics, input_sha256 } = read_folder(folder);
+    let Reading { draft, mut diagnostics, input_sha256, .. } = read_folder(folder);
     let unreadable = draft.sources.files().is_empty();
     let mut network = None;
     if !unreadable {

@@ -3,6 +3,8 @@
 mod args;
 mod check;
 mod flow;
+mod lengths;
+mod line;
 mod screen;
 
 use std::process::ExitCode;
@@ -51,6 +53,7 @@ pub fn run() -> ExitCode {
     let outcome = match arguments.command {
         Command::Check(options) => check::check(&options, &mut screen),
         Command::Flow(options) => flow::flow(&options, &mut screen),
+        Command::Line(options) => line::line(&options, &mut screen),
     };
     if let Some(error) = screen.failure() {
         let text = format!("error: standard output cannot be written: {error}\n");

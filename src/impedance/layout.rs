@@ -80,23 +80,32 @@ pub enum GeometryFault {
     Singular,
 }
 
+impl GeometryFault {
+    /// How to mend it.
+    pub fn cure(&self) -> &'static str {
+        match self {
+            GeometryFault::Touching { .. } => "check x and y of the spacing, and their unit",
+            GeometryFault::BelowEarth { .. } => "give its height above earth as a positive number",
+            GeometryFault::NotPositive { .. } => "give it in conductors.csv",
+            GeometryFault::Singular => "check the wires' data",
+        }
+    }
+}
+
 impl fmt::Display for GeometryFault {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
-            GeometryFault::Touching { wires: [a, b], distance_m, least_m } => write!(
-                f,
-                "{a} and {b} are {distance_m:.4} m apart, but their diameters need {least_m:.4} m; check x and y of the spacing"
-            ),
-            GeometryFault::BelowEarth { wire, height_m } => write!(
-                f,
-                "{wire} is called overhead but hangs at {height_m} m; give its height above earth as a positive number"
-            ),
-            GeometryFault::NotPositive { wire, datum } => {
-                write!(f, "{datum} of {wire} is not positive; give it in conductors.csv")
+            GeometryFault::Touching { wires: [a, b], distance_m, least_m } if *distance_m == 0.0 => {
+                write!(f, "{a} and {b} are in one place; their diameters need {least_m:.4} m between centres")
             }
-            GeometryFault::Singular => {
-                f.write_str("the wires' impedance matrix has no inverse; check the wires' data")
+            GeometryFault::Touching { wires: [a, b], distance_m, least_m } => {
+                write!(f, "{a} and {b} are {distance_m:.4} m apart, but their diameters need {least_m:.4} m")
             }
+            GeometryFault::BelowEarth { wire, height_m } => {
+                write!(f, "{wire} is called overhead, but hangs at {height_m} m")
+            }
+            GeometryFault::NotPositive { wire, datum } => write!(f, "{datum} of {wire} is not positive"),
+            GeometryFault::Singular => f.write_str("the wires' impedance matrix has no inverse"),
         }
     }
 }
@@ -192,7 +201,8 @@ fn faults(layout: &Layout) -> Vec<GeometryFault> {
         for j in i + 1..layout.wires.len() {
             let (a, b) = (&layout.wires[i], &layout.wires[j]);
             let screened = |w: &Wire, other: usize| w.own_distance_m.is_some_and(|(o, _)| o == other);
-            if screened(a, j) || screened(b, i) {
+            // A screen lies around its conductor, and its cable is judged by that conductor alone.
+            if screened(a, j) || screened(b, i) || a.own_distance_m.is_some() || b.own_distance_m.is_some() {
                 continue;
             }
             let least = (a.diameter_m.unwrap_or(0.0) + b.diameter_m.unwrap_or(0.0)) / 2.0;

@@ -7,15 +7,19 @@
 
 mod cable;
 mod carson;
+mod evaluate;
 mod given;
 mod layout;
+mod recipe;
 mod reduce;
 mod shunt;
 
 pub use cable::{Concentric, Tape, concentric_wires, tape_wires};
 pub use carson::{Conditions, EarthReturn, earth_return_ohm_per_m, equivalent_depth_m};
+pub use evaluate::evaluate;
 pub use given::{Sequence, conduit, sequence};
 pub use layout::{GeometryFault, Layout, LineConstants, Target, Wire, compute};
+pub use recipe::{Computed, Kind, Recipe, RecipeFault, Spacing};
 pub use reduce::to_slots;
 pub use shunt::{EPSILON_0, concentric_siemens_per_m, tape_siemens_per_m};
 

@@ -5,11 +5,13 @@ use std::path::Path;
 
 use sha2::{Digest, Sha256};
 
+use super::constructions::DescribedConstruction;
 use super::text::decode;
 use super::{
     Intake, Reading, capacitors, constructions, lines, loads, matrices, nodes, place_of_file, regulators,
     source, study, switches, transformers, unsupported,
 };
+use crate::catalog::Catalog;
 use crate::diagnostic::{Code, Diagnostics, FileId, SourceFile, nearest};
 use crate::network::Draft;
 
@@ -44,7 +46,13 @@ pub fn read_folder(folder: &Path) -> Reading {
         Ok(listed) => listed,
         Err((message, cure)) => {
             diagnostics.error(Code::FolderUnreadable, None, message, cure);
-            return Reading { draft: Draft::default(), diagnostics, input_sha256: hash(&[]) };
+            return Reading {
+                draft: Draft::default(),
+                diagnostics,
+                input_sha256: hash(&[]),
+                described: Vec::new(),
+                catalog: Catalog::built_in().clone(),
+            };
         }
     };
     read(files, &others, diagnostics)
@@ -102,11 +110,11 @@ fn read(mut files: Vec<(String, Vec<u8>)>, others: &[String], diagnostics: Diagn
     let mut intake = Intake { diagnostics, ..Intake::default() };
     let known = sort_out(files, others, &mut intake.diagnostics);
     let input_sha256 = hash(&known);
-    let draft = fill(&mut intake, known);
+    let (draft, described, catalog) = fill(&mut intake, known);
     let Intake { mut diagnostics, nodes, .. } = intake;
     nodes.warn_of_similar(&draft.sources, &mut diagnostics);
     diagnostics.sort_by_place(&draft.sources);
-    Reading { draft, diagnostics, input_sha256 }
+    Reading { draft, diagnostics, input_sha256, described, catalog }
 }
 
 /// Known files by their index in [`KNOWN`]; reports the others, and what is missing.
@@ -199,7 +207,10 @@ fn hash(known: &[(usize, String, Vec<u8>)]) -> String {
     hasher.finalize().iter().map(|byte| format!("{byte:02x}")).collect()
 }
 
-fn fill(intake: &mut Intake, known: Vec<(usize, String, Vec<u8>)>) -> Draft {
+fn fill(
+    intake: &mut Intake,
+    known: Vec<(usize, String, Vec<u8>)>,
+) -> (Draft, Vec<DescribedConstruction>, Catalog) {
     let mut ids: [Option<FileId>; KNOWN.len()] = [None; KNOWN.len()];
     for (index, name, bytes) in known {
         match decode(&bytes) {
@@ -222,11 +233,13 @@ fn fill(intake: &mut Intake, known: Vec<(usize, String, Vec<u8>)>) -> Draft {
         study: with(intake, study, study::read),
         supplies: with(intake, source, source::read),
         nodes: with(intake, nodes, nodes::read),
-        constructions: constructions::read(intake, constructions, conductors, spacings),
         ..Draft::default()
     };
-    draft.constructions.extend(with(intake, matrices, matrices::read));
+    let described = constructions::read(intake, constructions, conductors, spacings);
+    draft.constructions = with(intake, matrices, matrices::read);
     draft.lines = with(intake, lines, lines::read);
+    let computed = described.compute(intake, &draft.study, &draft.lines, &draft.constructions);
+    draft.constructions.extend(computed.constructions);
     draft.switches = with(intake, switches, switches::read);
     draft.transformers = with(intake, transformers, transformers::read);
     draft.regulators = with(intake, regulators, regulators::read);
@@ -235,7 +248,7 @@ fn fill(intake: &mut Intake, known: Vec<(usize, String, Vec<u8>)>) -> Draft {
     with(intake, motors, unsupported::motors);
     with(intake, profiles, unsupported::profiles);
     draft.sources = std::mem::take(&mut intake.sources);
-    draft
+    (draft, computed.described, computed.catalog)
 }
 
 /// Reads a file with its reader; what an absent file gives is the default.

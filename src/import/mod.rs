@@ -27,11 +27,14 @@ mod table;
 mod text;
 mod transformers;
 mod unsupported;
+mod wires;
 mod words;
 
+use crate::catalog::Catalog;
 use crate::diagnostic::{Diagnostics, FileId, Place, Sources};
 use crate::network::Draft;
 
+pub use constructions::DescribedConstruction;
 pub use folder::{read_files, read_folder};
 
 /// What was read from a folder.
@@ -44,6 +47,10 @@ pub struct Reading {
     /// SHA-256 of the files read, lower-case hexadecimal: over each known file in the order of
     /// their names, its name, its length in bytes (8 bytes, least first) and its bytes.
     pub input_sha256: String,
+    /// Constructions described by wires and geometry.
+    pub described: Vec<DescribedConstruction>,
+    /// The built-in wires with those of `conductors.csv`.
+    pub catalog: Catalog,
 }
 
 /// What grows while files are read: the files, the faults, and the names met so far.

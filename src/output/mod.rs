@@ -5,6 +5,7 @@ mod csv;
 mod diagnostics;
 mod files;
 mod flow;
+mod line;
 mod table;
 
 pub use check::summary_text;
@@ -12,4 +13,5 @@ pub use csv::guarded;
 pub use diagnostics::{diagnostics_json, diagnostics_lines, diagnostics_text};
 pub use files::{Folder, write_file};
 pub use flow::{Length, flow_csv, flow_json, flow_text, no_solution_text};
+pub use line::{construction_text, drop_text, json_rows, matrix_rows, rows_csv, sizes_text, wires_text};
 pub use table::{Align, Cell, Colour, Column, Table, WIDTH};

@@ -1,5 +1,7 @@
 //! Questions asked of a solved network. Pure: input to result, no printing, no files.
 
+pub mod construction;
 pub mod flow;
+pub mod line;
 pub mod loadability;
 pub mod summary;
