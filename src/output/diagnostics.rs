@@ -65,7 +65,11 @@ fn shown(diagnostic: &Diagnostic, colour: Colour) -> String {
 /// Bytes of the text found in its row: in its own cell where the row splits so, else where it first
 /// stands, else the whole row.
 fn cell_span(place: &Place, row: &str) -> (usize, usize) {
-    let Some(found) = place.found.as_deref().filter(|f| !f.is_empty()) else { return (0, row.len()) };
+    let whole = (0, row.len());
+    let Some(found) = place.found.as_deref() else { return name_span(place, row).unwrap_or(whole) };
+    if found.is_empty() {
+        return whole;
+    }
     let within = |start: usize, cell: &str| {
         cell.find(found).map(|at| (cell.trim().len(), start + at, start + at + found.len()))
     };
@@ -80,7 +84,18 @@ fn cell_span(place: &Place, row: &str) -> (usize, usize) {
             .min_by_key(|(length, ..)| *length)
             .map(|(_, start, end)| (start, end))
     });
-    own.or_else(|| row.find(found).map(|at| (at, at + found.len()))).unwrap_or((0, row.len()))
+    own.or_else(|| row.find(found).map(|at| (at, at + found.len()))).unwrap_or(whole)
+}
+
+/// Bytes of a column's name in a header row, where its cell holds just that.
+fn name_span(place: &Place, row: &str) -> Option<(usize, usize)> {
+    let (name, index) = (place.column.as_deref()?, place.cell.as_deref().map(column_index)?);
+    [',', ';', '\t'].into_iter().find_map(|separator| {
+        let (start, cell) = cells(row, separator).nth(index)?;
+        let text = cell.trim().trim_matches('"').trim();
+        let at = start + cell.find(text)?;
+        (text.to_lowercase() == name.to_lowercase()).then_some((at, at + text.len()))
+    })
 }
 
 /// Cells of a row with the byte each starts at; a separator within quotes does not part.
@@ -154,6 +169,14 @@ mod tests {
         // Bytes, not characters.
         let row = "泵站,10x";
         assert_eq!(cell_span(&place("10x", "B3"), row), (7, 10));
+    }
+
+    #[test]
+    fn a_fault_of_a_column_marks_its_name_in_the_header() {
+        let header = Place { found: None, column: Some("too".into()), ..place("", "C1") };
+        assert_eq!(cell_span(&header, "line;from;\"Too\";x"), (11, 14));
+        let row = "L1,A,B,12";
+        assert_eq!(cell_span(&header, row), (0, row.len()), "a row of data holds no column name");
     }
 
     #[test]
