@@ -224,18 +224,120 @@ fn results_never_go_into_the_input_folder() {
 }
 
 #[test]
+fn results_never_go_into_another_network() {
+    let (folder, other) = (small(1.0, HEADER), small(2.0, HEADER));
+    let before = fs::read(other.path().join("loads.csv")).expect("a file");
+    for format in ["csv", "json", "text"] {
+        let output = run(&["flow", &at(&folder), "--format", format, "--out", &at(&other)]);
+        assert_eq!(output.status.code(), Some(2));
+        assert!(text(&output.stderr).contains("holds a network (lines.csv)"), "{}", text(&output.stderr));
+    }
+    assert_eq!(fs::read(other.path().join("loads.csv")).expect("a file"), before);
+    assert_eq!(fs::read_dir(other.path()).expect("a folder").count(), 4, "nothing was added");
+}
+
+#[test]
+fn results_can_be_written_again_and_leave_nothing_else() {
+    let folder = small(1.0, HEADER);
+    let out = tempfile::tempdir().expect("a folder");
+    for _ in 0..2 {
+        let output = run(&["flow", &at(&folder), "--format", "csv", "--out", &at(&out)]);
+        assert_eq!(output.status.code(), Some(0), "{}", text(&output.stderr));
+    }
+    let mut names: Vec<String> = fs::read_dir(out.path())
+        .expect("a folder")
+        .map(|e| e.expect("an entry").file_name().to_string_lossy().into_owned())
+        .collect();
+    names.sort_unstable();
+    let expected = [
+        "currents.csv",
+        "elements.csv",
+        "findings.csv",
+        "loads.csv",
+        "nodes.csv",
+        "nodes_summary.csv",
+        "regulators.csv",
+        "source.csv",
+        "totals.csv",
+    ];
+    assert_eq!(names, expected);
+}
+
+#[test]
+fn text_that_a_spreadsheet_takes_for_a_formula_is_guarded() {
+    let folder = small(1.0, HEADER);
+    fs::write(folder.path().join("loads.csv"), "load,node,phases,kw,pf\n=1+2,A,an,-1,1\n").expect("a file");
+    let out = tempfile::tempdir().expect("a folder");
+    let output = run(&["flow", &at(&folder), "--format", "csv", "--out", &at(&out)]);
+    assert_eq!(output.status.code(), Some(0), "{}", text(&output.stderr));
+    let loads = fs::read_to_string(out.path().join("loads.csv")).expect("a file");
+    let row = loads.lines().nth(1).expect("a row");
+    assert!(row.starts_with("'=1+2,A,-"), "{row}");
+}
+
+/// `/dev/full` stands for a full disk.
+#[cfg(target_os = "linux")]
+#[test]
+fn a_full_disk_is_told_and_is_no_success() {
+    let folder = network("ieee-13-node");
+    let program = assert_cmd::cargo::cargo_bin!("fourwire");
+    for arguments in
+        [&["flow"][..], &["flow", "--format", "json"], &["check"], &["check", "--format", "json"]]
+    {
+        let full = fs::OpenOptions::new().write(true).open("/dev/full").expect("/dev/full");
+        let output = Command::new(program)
+            .args(arguments)
+            .arg(&folder)
+            .stdout(full)
+            .stderr(Stdio::piped())
+            .output()
+            .expect("the program runs");
+        assert_eq!(output.status.code(), Some(2), "{arguments:?}");
+        assert!(text(&output.stderr).contains("standard output cannot be written"), "{arguments:?}");
+    }
+}
+
+#[test]
+fn a_pipe_carries_no_colour() {
+    for arguments in [&["flow"][..], &["check"]] {
+        let folder = network("ieee-13-node");
+        let output = run(&[arguments, &[folder.to_str().expect("a path")]].concat());
+        assert!(!output.stdout.contains(&0x1b) && !output.stderr.contains(&0x1b));
+    }
+}
+
+#[test]
+fn every_network_fits_100_columns() {
+    for name in
+        ["ieee-13-node", "ieee-4-node/Dyn1-bal", "ieee-4-node/YNyn0-unb", "brindle-quarry", "larkfoot-valley"]
+    {
+        let folder = network(name);
+        let folder = folder.to_str().expect("a path");
+        for arguments in [&["flow", folder][..], &["flow", folder, "--all"], &["check", folder]] {
+            let output = run(arguments);
+            assert_eq!(output.status.code(), Some(0), "{arguments:?}: {}", text(&output.stderr));
+            let page = text(&output.stdout);
+            let widest = page.lines().map(|l| l.chars().count()).max();
+            assert!(widest > Some(40) && widest <= Some(100), "{arguments:?}: {widest:?}");
+        }
+    }
+}
+
+#[test]
 fn a_reader_that_goes_away_is_no_fault() {
     let program = assert_cmd::cargo::cargo_bin!("fourwire");
-    let mut child = Command::new(program)
-        .args(["flow", network("ieee-13-node").to_str().expect("a path"), "--format", "json"])
-        .stdout(Stdio::piped())
-        .stderr(Stdio::piped())
-        .spawn()
-        .expect("the program runs");
-    drop(child.stdout.take());
-    let output = child.wait_with_output().expect("the program ends");
-    assert_eq!(output.status.code(), Some(0));
-    assert_eq!(text(&output.stderr), "");
+    for format in ["json", "text"] {
+        let mut child = Command::new(program)
+            .args(["flow", network("ieee-13-node").to_str().expect("a path"), "--format", format])
+            .stdout(Stdio::piped())
+            .stderr(Stdio::piped())
+            .spawn()
+            .expect("the program runs");
+        drop(child.stdout.take());
+        let output = child.wait_with_output().expect("the program ends");
+        assert_eq!(output.status.code(), Some(0));
+        assert_eq!(text(&output.stderr), "");
+    }
 }
 
 #[test]

@@ -1,14 +1,15 @@
 //! `fourwire flow`.
 
-use std::fmt::Write as _;
 use std::io;
 
 use super::args::{Flow, FlowFormat};
 use super::check::{load, verdict};
 use super::{Outcome, Screen};
 use crate::network::Network;
-use crate::output::{Folder, Length, diagnostics_text, flow_csv, flow_json, flow_text};
-use crate::solver::{Settings, Solution, Status, solve_regulated};
+use crate::output::{
+    Colour, Folder, Length, diagnostics_text, flow_csv, flow_json, flow_text, no_solution_text,
+};
+use crate::solver::{Settings, Solution, solve_regulated};
 use crate::study::flow::FlowReport;
 use crate::study::loadability::{Loadability, loadability};
 
@@ -31,7 +32,7 @@ pub(super) fn flow(options: &Flow, screen: &mut Screen) -> Outcome {
     let settings = Settings::default();
     let (solution, units) = solve_regulated(&mut network, &settings);
     let Some(report) = FlowReport::new(&network, &solution, &units, &loaded.input_sha256) else {
-        screen.tell(&no_solution(&network, &solution));
+        screen.tell(&no_solution_text(&network, &solution));
         return Outcome::NoSolution;
     };
     screen.doing("writing");
@@ -56,51 +57,25 @@ fn deliver(
     screen: &mut Screen,
 ) -> io::Result<()> {
     let length = if options.all { Length::Full } else { Length::Short };
-    let page = || flow_text(network, solution, report, length);
+    let page = |colour: Colour| flow_text(network, solution, report, length, colour);
     let Some(out) = &options.out else {
         match options.format {
             FlowFormat::Json => screen.print_with(|writer| flow_json(report, writer)),
-            FlowFormat::Text | FlowFormat::Csv => screen.print(&page()),
+            FlowFormat::Text | FlowFormat::Csv => screen.print(&page(screen.colour_on_stdout())),
         }
         return Ok(());
     };
-    let folder = Folder::new(out, &options.folder)?;
+    let mut folder = Folder::new(out, &options.folder)?;
     match options.format {
         FlowFormat::Json => folder.write("flow.json", |writer| flow_json(report, writer))?,
-        FlowFormat::Text => folder.write("flow.txt", |writer| writer.write_all(page().as_bytes()))?,
-        FlowFormat::Csv => flow_csv(report, &folder)?,
+        FlowFormat::Text => {
+            folder.write("flow.txt", |writer| writer.write_all(page(Colour::Plain).as_bytes()))?
+        }
+        FlowFormat::Csv => flow_csv(report, &mut folder)?,
     }
+    folder.commit()?;
     screen.tell(&format!("results written to {}\n", out.display()));
     Ok(())
-}
-
-/// What to say instead of results.
-fn no_solution(network: &Network, solution: &Solution) -> String {
-    let place = &network.node(solution.worst_node).name;
-    let mut text = String::new();
-    let why = match solution.status {
-        Status::Singular(node) => format!(
-            "the linear part of the network has no solution at node {}: a side without any path to earth, or impedances that cancel",
-            network.node(node).name
-        ),
-        Status::Diverged => {
-            format!("the iteration grew beyond all bounds after {} iterations", solution.iterations)
-        }
-        _ => format!("the voltages have not settled after {} iterations", solution.iterations),
-    };
-    let _ = writeln!(text, "error[no-solution]: {why}.");
-    if !matches!(solution.status, Status::Singular(_)) {
-        let _ = writeln!(
-            text,
-            "  Worst at node {place}: last change {:.1e} of nominal, current mismatch {:.1e} A.",
-            solution.change_pu, solution.mismatch_amps
-        );
-    }
-    text.push_str(
-        "  Look at: load beyond what the feeder can carry, a length or impedance in the wrong unit,\n  \
-         a missing transformer, a load in kW that was meant in W. No results are shown, since none are good.\n",
-    );
-    text
 }
 
 fn loadability_text(found: &Loadability) -> String {

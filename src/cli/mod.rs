@@ -55,5 +55,10 @@ pub fn run() -> ExitCode {
         Command::Flow(options) => flow::flow(&options, &mut screen),
         Command::Line(options) => line::line(&options, &mut screen),
     };
+    if let Some(error) = screen.failure() {
+        let text = format!("error: standard output cannot be written: {error}\n");
+        screen.tell(&text);
+        return Outcome::WrongInput.into();
+    }
     outcome.into()
 }

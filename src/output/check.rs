@@ -2,7 +2,7 @@
 
 use std::fmt::Write as _;
 
-use super::table::{Cell, Column, Table, number};
+use super::table::{Cell, Column, Table, folded, number};
 use crate::study::summary::Summary;
 
 /// The summary as text.
@@ -13,12 +13,13 @@ pub fn summary_text(summary: &Summary) -> String {
         Some(mva) => format!("fault level {} MVA", number(mva, 1)),
         None => "stiff".to_string(),
     };
-    let _ = writeln!(text, "{name}");
-    let _ = writeln!(
-        text,
-        "Source at node {}, {} kV, {} Hz, {level}\n",
-        summary.source_node, summary.source_kv, summary.frequency_hz
-    );
+    text.push_str(&folded("", name));
+    // Six decimals: a voltage in kV back from volts may end in rounding.
+    let kv = (summary.source_kv * 1e6).round() / 1e6;
+    let source =
+        format!("Source at node {}, {kv} kV, {} Hz, {level}", summary.source_node, summary.frequency_hz);
+    text.push_str(&folded("", &source));
+    text.push('\n');
     section(&mut text, "Nodes", &nodes(summary));
     section(&mut text, "Lines", &lines(summary));
     section(&mut text, "Transformers", &transformers(summary));

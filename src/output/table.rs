@@ -1,11 +1,21 @@
 //! A table: columns with units, rows of cells, and its look on a terminal.
 
+use std::borrow::Cow;
 use std::fmt::Write as _;
 
 use comfy_table::{CellAlignment, ContentArrangement, LineStyle, Table as Grid, TableStyle};
 
 /// Columns of a terminal that every text fits.
 pub const WIDTH: usize = 100;
+
+/// Whether words carry colour; what colour says, a word says too.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Colour {
+    /// None.
+    Plain,
+    /// Escape codes of a terminal.
+    Styled,
+}
 
 /// Which side of its column a cell stands on.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -106,10 +116,45 @@ impl Table {
 
 fn shown(cell: &Cell, column: &Column) -> String {
     match cell {
-        Cell::Text(text) => text.clone(),
+        Cell::Text(text) => printable(text).into_owned(),
         Cell::Number(value) => number(*value, column.decimals),
         Cell::Blank => "-".to_string(),
     }
+}
+
+/// Text that no terminal takes for a command and that stays on its line: control characters as spaces.
+pub(super) fn printable(text: &str) -> Cow<'_, str> {
+    if text.chars().any(char::is_control) {
+        Cow::Owned(text.chars().map(|c| if c.is_control() { ' ' } else { c }).collect())
+    } else {
+        Cow::Borrowed(text)
+    }
+}
+
+/// Indent of the lines that follow the first of a folded text.
+const HANGING: &str = "      ";
+
+/// One paragraph on lines of at most [`WIDTH`] columns, wide characters counted as the terminal
+/// does; words longer than a line are cut. The first line begins with `indent`.
+pub(super) fn folded(indent: &str, text: &str) -> String {
+    let text = printable(text);
+    // No character has fewer bytes than columns, so most lines need no measuring.
+    if indent.len() + text.len() <= WIDTH {
+        return format!("{indent}{text}\n");
+    }
+    let mut grid = Grid::new();
+    grid.load_style(TableStyle::new());
+    grid.set_content_arrangement(ContentArrangement::Dynamic).set_width((WIDTH - HANGING.len()) as u16);
+    grid.add_row([text.as_ref()]);
+    if let Some(column) = grid.column_mut(0) {
+        column.set_padding((0, 0));
+    }
+    let mut lines = String::new();
+    for (i, line) in grid.lines().enumerate() {
+        let start = if i == 0 { indent } else { HANGING };
+        let _ = writeln!(lines, "{start}{}", line.trim());
+    }
+    lines
 }
 
 /// A number with so many decimals, thousands set apart by a space; no negative zero.
@@ -155,5 +200,31 @@ mod tests {
         let text = table.text();
         assert!(text.lines().all(|l| l.chars().count() <= WIDTH), "{text}");
         assert!(text.contains("230.0"));
+    }
+
+    #[test]
+    fn folding_keeps_every_word_and_the_width() {
+        assert_eq!(folded("  ", "short"), "  short\n");
+        let words = "node feeder ".repeat(30);
+        let text = folded("  ", &words);
+        assert!(text.lines().count() > 3 && text.lines().all(|l| l.len() <= WIDTH), "{text}");
+        let joined: Vec<&str> = text.split_whitespace().collect();
+        assert_eq!(joined, words.split_whitespace().collect::<Vec<_>>());
+    }
+
+    #[test]
+    fn folding_cuts_long_names_and_counts_wide_characters_twice() {
+        let text = folded("  ", &format!("low voltage: node {}, a: low", "x".repeat(250)));
+        assert!(text.lines().all(|l| l.len() <= WIDTH), "{text}");
+        assert_eq!(text.matches('x').count(), 250);
+        let text = folded("  ", &"泵".repeat(120));
+        assert!(text.lines().all(|l| 2 * l.trim().chars().count() + 6 <= WIDTH), "{text}");
+        assert_eq!(text.matches('泵').count(), 120);
+    }
+
+    #[test]
+    fn control_characters_do_not_reach_the_terminal() {
+        assert_eq!(printable("red\u{1b}[31m\nnode"), "red [31m node");
+        assert!(!folded("", &"\u{1b}]0;x\u{7} ".repeat(40)).contains('\u{1b}'));
     }
 }

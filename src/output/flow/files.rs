@@ -18,8 +18,8 @@ pub fn flow_json(report: &FlowReport, writer: &mut dyn Write) -> io::Result<()> 
 /// Writes every list of the report as a CSV file of the folder.
 ///
 /// # Errors
-/// What the file system says; a file is written whole or not at all.
-pub fn flow_csv(report: &FlowReport, folder: &Folder) -> io::Result<()> {
+/// What the file system says. The files stand in the folder only after [`Folder::commit`].
+pub fn flow_csv(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
     voltages(report, folder)?;
     currents(report, folder)?;
     elements(report, folder)?;
@@ -75,7 +75,7 @@ pub fn flow_csv(report: &FlowReport, folder: &Folder) -> io::Result<()> {
 }
 
 fn list<T>(
-    folder: &Folder,
+    folder: &mut Folder,
     name: &str,
     columns: &[&str],
     rows: &[T],
@@ -91,7 +91,7 @@ fn list<T>(
     })
 }
 
-fn voltages(report: &FlowReport, folder: &Folder) -> io::Result<()> {
+fn voltages(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
     list(folder, "nodes.csv", &["node", "conductor", "volts", "degrees", "pu"], &report.nodes, |r| {
         vec![
             Field::Text(&r.node),
@@ -103,7 +103,7 @@ fn voltages(report: &FlowReport, folder: &Folder) -> io::Result<()> {
     })
 }
 
-fn currents(report: &FlowReport, folder: &Folder) -> io::Result<()> {
+fn currents(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
     let columns = ["element", "kind", "conductor", "from_amps", "from_degrees", "to_amps", "to_degrees"];
     list(folder, "currents.csv", &columns, &report.currents, |r| {
         vec![
@@ -118,7 +118,7 @@ fn currents(report: &FlowReport, folder: &Folder) -> io::Result<()> {
     })
 }
 
-fn elements(report: &FlowReport, folder: &Folder) -> io::Result<()> {
+fn elements(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
     let columns = ["element", "kind", "loss_kw", "loss_kvar", "rating_percent"];
     list(folder, "elements.csv", &columns, &report.elements, |r| {
         vec![
@@ -131,7 +131,7 @@ fn elements(report: &FlowReport, folder: &Folder) -> io::Result<()> {
     })
 }
 
-fn findings(report: &FlowReport, folder: &Folder) -> io::Result<()> {
+fn findings(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
     let columns = ["severity", "rule", "where", "value", "limit", "text"];
     list(folder, "findings.csv", &columns, &report.findings, |r| {
         vec![
@@ -146,7 +146,7 @@ fn findings(report: &FlowReport, folder: &Folder) -> io::Result<()> {
 }
 
 /// Totals, and what identifies the run, as rows of name and value.
-fn totals(report: &FlowReport, folder: &Folder) -> io::Result<()> {
+fn totals(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
     let t = &report.totals;
     let rows: Vec<(&str, Field)> = vec![
         ("fourwire", Field::Text(report.fourwire)),

@@ -3,11 +3,12 @@
 use std::collections::HashMap;
 use std::fmt::Write as _;
 
+use super::findings::findings;
 use crate::math::degrees;
 use crate::network::{BranchKind, Conductor, Network, NodeId};
-use crate::output::table::{Cell, Column, Table, WIDTH, number};
+use crate::output::table::{Cell, Colour, Column, Table, folded, number, printable};
 use crate::solver::Solution;
-use crate::study::flow::{Extreme, Finding, FlowReport};
+use crate::study::flow::{Extreme, FlowReport, lowest_judged};
 
 /// How much of the tables is shown.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -20,16 +21,19 @@ pub enum Length {
 
 /// Rows of a long table that are shown.
 const WORST: usize = 20;
-/// Findings of one rule that are shown.
-const FINDINGS: usize = 5;
-
 /// The page as text, at most 100 columns wide.
-pub fn flow_text(network: &Network, solution: &Solution, report: &FlowReport, length: Length) -> String {
+pub fn flow_text(
+    network: &Network,
+    solution: &Solution,
+    report: &FlowReport,
+    length: Length,
+    colour: Colour,
+) -> String {
     let mut text = String::new();
     head(&mut text, report);
     totals(&mut text, report);
     glance(&mut text, network, report);
-    findings(&mut text, report, length);
+    findings(&mut text, &report.findings, length, colour);
     nodes(&mut text, network, solution, report, length);
     branches(&mut text, network, solution, report, length);
     regulators(&mut text, report);
@@ -38,7 +42,7 @@ pub fn flow_text(network: &Network, solution: &Solution, report: &FlowReport, le
 
 fn head(text: &mut String, report: &FlowReport) {
     let name = if report.network.is_empty() { "Network without a name" } else { &report.network };
-    let _ = writeln!(text, "{name}");
+    text.push_str(&folded("", name));
     let _ = writeln!(
         text,
         "Converged in {} iterations; largest current mismatch {:.1e} A by an independent check.\n",
@@ -69,6 +73,9 @@ fn totals(text: &mut String, report: &FlowReport) {
     }
     row("  transformers", t.transformer_loss_kw, None);
     let _ = writeln!(text, "{}", table.text());
+    if report.loads.is_empty() {
+        let _ = writeln!(text, "  No loads: nothing draws power but losses and capacitors.\n");
+    }
 }
 
 fn glance(text: &mut String, network: &Network, report: &FlowReport) {
@@ -109,67 +116,19 @@ fn glance(text: &mut String, network: &Network, report: &FlowReport) {
         text,
         "  Voltages are phase to neutral where the neutral is carried, else to earth. The drop is counted\n  from the last source, transformer or regulator.\n"
     );
-}
-
-fn findings(text: &mut String, report: &FlowReport, length: Length) {
-    if report.findings.is_empty() {
-        let _ = writeln!(text, "Findings: none, every limit of the study is kept.\n");
-        return;
-    }
-    let _ = writeln!(text, "Findings: {}", report.findings.len());
-    let mut rest = report.findings.as_slice();
-    while let Some(first) = rest.first() {
-        let same = rest.iter().take_while(|f| f.rule == first.rule).count();
-        let (group, others) = rest.split_at(same);
-        let most = if length == Length::Full { same } else { FINDINGS };
-        for finding in group.iter().take(most) {
-            text.push_str(&wrapped(finding));
-        }
-        if same > most {
-            let _ = writeln!(text, "  {}: and {} more (--all)", first.rule.text(), same - most);
-        }
-        rest = others;
-    }
-    if report.findings.iter().any(|f| matches!(f.rule.text(), "overload" | "neutral voltage")) {
+    if network.nodes.iter().any(|n| !n.reference_on.phases().is_empty()) {
         let _ = writeln!(
             text,
-            "  Ratings and touch voltages: the local code and a licensed engineer decide, not this table."
+            "  Where no earth holds a side, its phases are judged against each other (ab, bc, ca).\n"
         );
     }
-    text.push('\n');
-}
-
-/// One finding, its text folded to the width.
-fn wrapped(finding: &Finding) -> String {
-    let mut lines = String::new();
-    let mut line = format!("  {}: {}:", finding.rule.text(), finding.place);
-    for word in finding.text.split_whitespace() {
-        if line.chars().count() + 1 + word.chars().count() > WIDTH {
-            lines.push_str(&line);
-            lines.push('\n');
-            line = "     ".to_string();
-        }
-        line.push(' ');
-        line.push_str(word);
-    }
-    lines.push_str(&line);
-    lines.push('\n');
-    lines
 }
 
 fn nodes(text: &mut String, network: &Network, solution: &Solution, report: &FlowReport, length: Length) {
-    let lowest = |id: NodeId| -> f64 {
-        let node = network.node(id);
-        phase_pu(network, solution, id)
-            .into_iter()
-            .zip(Conductor::PHASES)
-            .filter(|(_, c)| node.conductors.has(*c))
-            .map(|(v, _)| v.0)
-            .fold(f64::INFINITY, f64::min)
-    };
     let mut order = network.order.clone();
     let (shown, heading) = if length == Length::Short && order.len() > WORST {
-        order.sort_by(|&a, &b| lowest(a).total_cmp(&lowest(b)));
+        let lowest = lowest_judged(network, solution);
+        order.sort_by(|a, b| lowest[a.index()].total_cmp(&lowest[b.index()]));
         (WORST, format!("Nodes: the {WORST} lowest of {} (--all for all)", network.nodes.len()))
     } else {
         (order.len(), "Nodes, from the source outwards".to_string())
@@ -270,7 +229,7 @@ fn regulators(text: &mut String, report: &FlowReport) {
     }
     let _ = writeln!(text, "Regulator taps");
     for name in names {
-        let _ = writeln!(text, "  {name}:{}", taps[name]);
+        text.push_str(&folded("  ", &format!("{}:{}", printable(name), taps[name])));
     }
     text.push('\n');
 }

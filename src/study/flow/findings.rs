@@ -5,11 +5,17 @@ use serde::Serialize;
 use super::losses::Totals;
 use super::places::{drop_percent, floating_nodes, judged, set_points};
 use super::{ElementLoss, LoadDraw, NodeSummary};
-use crate::network::{BranchKind, Network, NodeId};
+use crate::network::{BranchKind, Network};
 use crate::solver::{RegulatedUnit, Solution, TapState};
 
 /// Conventional limit of touch voltage in normal dry conditions, volts AC (IEC 60364-4-41; from memory).
 const TOUCH_VOLTAGE_V: f64 = 50.0;
+
+/// Said wherever ratings or touch voltages are in question.
+const CAUTION: &str =
+    "Ratings and touch voltages: the local code and a licensed engineer decide, not this table.";
+/// Source power may differ from loads and losses by this share.
+const BALANCE_SHARE: f64 = 1e-6;
 
 /// How much a finding matters.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
@@ -19,6 +25,8 @@ pub enum FindingSeverity {
     Note,
     /// A limit is exceeded, or a number needs care.
     Warning,
+    /// The results are not to be relied on.
+    Error,
 }
 
 impl FindingSeverity {
@@ -27,6 +35,7 @@ impl FindingSeverity {
         match self {
             FindingSeverity::Note => "note",
             FindingSeverity::Warning => "warning",
+            FindingSeverity::Error => "error",
         }
     }
 }
@@ -34,6 +43,9 @@ impl FindingSeverity {
 /// What a finding is about. The text of each is stable.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Serialize)]
 pub enum Rule {
+    /// Source power and the sum of loads and losses differ.
+    #[serde(rename = "power balance")]
+    Balance,
     /// Voltage below the study's lower limit.
     #[serde(rename = "low voltage")]
     LowVoltage,
@@ -61,15 +73,16 @@ pub enum Rule {
     /// A side that nothing but a stated reference holds to earth.
     #[serde(rename = "no earth")]
     NoEarth,
-    /// Source power and the sum of loads and losses differ.
-    #[serde(rename = "power balance")]
-    Balance,
+    /// What the numbers cannot decide: the local code and a licensed engineer do.
+    #[serde(rename = "caution")]
+    Caution,
 }
 
 impl Rule {
     /// The rule as printed.
     pub fn text(self) -> &'static str {
         match self {
+            Rule::Balance => "power balance",
             Rule::LowVoltage => "low voltage",
             Rule::HighVoltage => "high voltage",
             Rule::VoltageDrop => "voltage drop",
@@ -79,7 +92,7 @@ impl Rule {
             Rule::BelowFloor => "load below floor",
             Rule::Regulator => "regulator",
             Rule::NoEarth => "no earth",
-            Rule::Balance => "power balance",
+            Rule::Caution => "caution",
         }
     }
 }
@@ -119,7 +132,11 @@ pub(super) fn all(seen: &Seen) -> Vec<Finding> {
     voltages(seen, &mut found);
     nodes(seen, &mut found);
     overloads(seen, &mut found);
-    remarks(seen, &mut found);
+    below_floor(seen, &mut found);
+    regulators(seen, &mut found);
+    unearthed(seen, &mut found);
+    balance(seen, &mut found);
+    caution(seen, &mut found);
     let excess = |f: &Finding| match (f.rule, f.limit) {
         (Rule::LowVoltage | Rule::BelowFloor, _) => -f.value,
         _ => f.value,
@@ -138,8 +155,8 @@ fn voltages(seen: &Seen, found: &mut Vec<Finding>) {
     let (floating, set_at) = (floating_nodes(seen.network), set_points(seen.network));
     for &id in &seen.network.order {
         let name = &seen.network.node(id).name;
-        for (letters, pu) in judged(seen.network, seen.solution, &floating, id) {
-            let place = || format!("node {name}, {letters}");
+        for (across, pu) in judged(seen.network, seen.solution, &floating, id) {
+            let place = || format!("node {name}, {across}");
             if pu < low {
                 let text = format!("{:.2} % of nominal, limit {} %", 100.0 * pu, study.voltage_low_percent);
                 found.push(warning(Rule::LowVoltage, place(), pu, Some(low), text));
@@ -148,14 +165,14 @@ fn voltages(seen: &Seen, found: &mut Vec<Finding>) {
                 found.push(warning(Rule::HighVoltage, place(), pu, Some(high), text));
             }
         }
-        if let Some((percent, c)) = drop_percent(seen.network, seen.solution, &set_at, id)
+        if let Some((percent, across)) = drop_percent(seen.network, seen.solution, &floating, &set_at, id)
             && percent > study.drop_limit_percent
         {
             let from = &seen.network.node(set_at[id.index()]).name;
             let text = format!("{percent:.2} % below node {from}, limit {} %", study.drop_limit_percent);
             found.push(warning(
                 Rule::VoltageDrop,
-                format!("node {name}, {c}"),
+                format!("node {name}, {across}"),
                 percent,
                 Some(study.drop_limit_percent),
                 text,
@@ -180,7 +197,7 @@ fn nodes(seen: &Seen, found: &mut Vec<Finding>) {
                 let text = format!("neutral {volts:.2} V above remote earth, limit {limit} V");
                 found.push(warning(Rule::NeutralVoltage, place(), volts, Some(limit), text));
             }
-            None if volts > TOUCH_VOLTAGE_V => {
+            _ if volts > TOUCH_VOLTAGE_V => {
                 let text = format!(
                     "neutral {volts:.2} V above remote earth; {TOUCH_VOLTAGE_V} V is the conventional touch limit"
                 );
@@ -208,7 +225,8 @@ fn overloads(seen: &Seen, found: &mut Vec<Finding>) {
     }
 }
 
-fn remarks(seen: &Seen, found: &mut Vec<Finding>) {
+/// Loads whose voltage is below the floor of constant power.
+fn below_floor(seen: &Seen, found: &mut Vec<Finding>) {
     let floor = seen.network.study.constant_power_floor_percent;
     for load in seen.loads.iter().filter(|l| l.below_floor) {
         let text = format!(
@@ -218,27 +236,30 @@ fn remarks(seen: &Seen, found: &mut Vec<Finding>) {
         );
         found.push(warning(Rule::BelowFloor, format!("load {}", load.load), load.lowest_pu, None, text));
     }
+}
+
+/// Regulators that could not hold their band.
+fn regulators(seen: &Seen, found: &mut Vec<Finding>) {
     for unit in seen.units {
-        let (word, value) = match unit.state {
+        let word = match unit.state {
             TapState::Settled => continue,
-            TapState::AtLimit => ("at the end of its range and still outside its band", unit.relay_volts),
-            TapState::Hunting => ("hunts: no tap holds it within its band", unit.relay_volts),
-            TapState::Reversed => ("is fed at its regulated side; its tap was held", unit.relay_volts),
+            TapState::AtLimit => "at the end of its range and still outside its band",
+            TapState::Hunting => "hunts: no tap holds it within its band",
+            TapState::Reversed => "is fed at its regulated side; its tap was held",
         };
         let branch = seen.network.branch(unit.branch);
         let phase = match &branch.kind {
             BranchKind::Regulator(bank) => bank.units.get(unit.unit).map_or("", |u| u.phase.letter()),
             _ => "",
         };
-        let text = format!("{word} ({value:.2} V at its relay)");
-        found.push(warning(
-            Rule::Regulator,
-            format!("regulator {}, {phase}", branch.name),
-            value,
-            None,
-            text,
-        ));
+        let text = format!("{word} ({:.2} V at its relay)", unit.relay_volts);
+        let place = format!("regulator {}, {phase}", branch.name);
+        found.push(warning(Rule::Regulator, place, unit.relay_volts, None, text));
     }
+}
+
+/// Sides that only a stated reference holds near earth, one finding a side.
+fn unearthed(seen: &Seen, found: &mut Vec<Finding>) {
     for (i, node) in seen.network.nodes.iter().enumerate().filter(|(_, n)| n.reference_siemens > 0.0) {
         let fed = seen.network.feeds[i]
             .map_or(String::new(), |f| format!(" fed by {}", seen.network.branch(f.branch).name));
@@ -247,21 +268,50 @@ fn remarks(seen: &Seen, found: &mut Vec<Finding>) {
             "{what}{fed} is earthed nowhere; held near earth by {:.3} microsiemens, voltages to earth are not to be relied on",
             node.reference_siemens * 1e6
         );
-        let place = format!("node {}", seen.network.node(NodeId(i as u32)).name);
         found.push(Finding {
             severity: FindingSeverity::Note,
             rule: Rule::NoEarth,
-            place,
+            place: format!("node {}", node.name),
             value: node.reference_siemens,
             limit: None,
             text,
         });
     }
+}
+
+/// Source power against loads and losses; what is not a number counts as a difference.
+fn balance(seen: &Seen, found: &mut Vec<Finding>) {
     let t = seen.totals;
     let off = (t.source_kw - t.load_kw - t.loss_kw).hypot(t.source_kvar - t.load_kvar - t.loss_kvar);
     let size = t.source_kw.hypot(t.source_kvar).max(t.load_kw.hypot(t.load_kvar));
-    if off > 1e-6 * size {
-        let text = format!("source, loads and losses differ by {off:.6} kVA: do not rely on these results");
-        found.push(warning(Rule::Balance, "network".to_string(), off, None, text));
+    let limit = BALANCE_SHARE * size;
+    if off.is_finite() && off <= limit {
+        return;
+    }
+    found.push(Finding {
+        severity: FindingSeverity::Error,
+        rule: Rule::Balance,
+        place: "network".to_string(),
+        value: off,
+        limit: Some(limit),
+        text: format!("source, loads and losses differ by {off:.6} kVA: do not rely on these results"),
+    });
+}
+
+/// The caution, once, where an overload or a neutral's voltage is in question; its value is their number.
+fn caution(seen: &Seen, found: &mut Vec<Finding>) {
+    let risky = |f: &&Finding| matches!(f.rule, Rule::Overload | Rule::NeutralVoltage);
+    let questions = found.iter().filter(risky).count();
+    let limited =
+        seen.network.study.neutral_limit_v.is_some() && seen.nodes.iter().any(|n| n.neutral_volts.is_some());
+    if questions > 0 || limited {
+        found.push(Finding {
+            severity: FindingSeverity::Note,
+            rule: Rule::Caution,
+            place: "network".to_string(),
+            value: questions as f64,
+            limit: None,
+            text: CAUTION.to_string(),
+        });
     }
 }

@@ -131,17 +131,20 @@ pub(super) fn totals(
     totals
 }
 
-/// Losses of the neutrals of lines: `Re((V_from,n - V_to,n) conj(I_n))`, with `I_n` the mean of both ends,
-/// which leaves the charging out. Its share of the common earth path is in it.
+/// Losses of the neutrals of lines: `Re((V_from,n - V_to,n) conj(I_n))`, `I_n` the current inside the
+/// pi model: that of the from end less the charging there. The neutral's share of the common earth
+/// path is in it.
 fn neutral_loss_kw(network: &Network, solution: &Solution) -> f64 {
     let n = Conductor::N.slot();
-    let lines = network.branches.iter().enumerate().filter(|(_, b)| matches!(b.kind, BranchKind::Line(_)));
-    lines
-        .filter(|(_, branch)| branch.from_conductors.has_neutral())
-        .map(|(b, branch)| {
-            let drop = solution.volts[branch.from.index()][n] - solution.volts[branch.to.index()][n];
-            let amps = (solution.from_amps[b][n] + solution.to_amps[b][n]) / 2.0;
-            (drop * amps.conj()).re / 1e3
-        })
-        .sum()
+    let mut watts = 0.0;
+    for (branch, amps) in network.branches.iter().zip(&solution.from_amps) {
+        let BranchKind::Line(line) = &branch.kind else { continue };
+        if !branch.from_conductors.has_neutral() {
+            continue;
+        }
+        let (from, to) = (&solution.volts[branch.from.index()], &solution.volts[branch.to.index()]);
+        let charging = (network.line_shunt(line).row(n) * from)[0] / 2.0;
+        watts += ((from[n] - to[n]) * (amps[n] - charging).conj()).re;
+    }
+    watts / 1e3
 }

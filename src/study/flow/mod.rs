@@ -15,7 +15,7 @@ use crate::solver::{RegulatedUnit, Solution, Status, TapState, load_current};
 
 pub use findings::{Finding, FindingSeverity, Rule};
 pub use losses::Totals;
-pub use places::{Extreme, Glance};
+pub use places::{Extreme, Glance, lowest_judged};
 
 /// Voltage of one conductor of a node.
 #[derive(Debug, Clone, PartialEq, Serialize)]

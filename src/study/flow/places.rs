@@ -1,7 +1,9 @@
 //! The extremes that a reader looks for first.
 
+use std::fmt;
+
 use super::{ElementLoss, NodeSummary, phase_volts};
-use crate::network::{BranchKind, Conductor, Conductors, Network, NodeId};
+use crate::network::{BranchKind, Conductor, Conductors, Network, Node, NodeId};
 use crate::solver::Solution;
 
 /// An extreme value and where it is.
@@ -32,26 +34,67 @@ pub struct Glance {
     pub rating_percent: Option<Extreme>,
 }
 
-/// Voltages that are judged at a node: phase to neutral (or earth); between phases on a side that no earth holds.
-pub(super) fn judged(
-    network: &Network,
-    solution: &Solution,
-    floating: &[bool],
-    id: NodeId,
-) -> Vec<(String, f64)> {
+/// Between what a voltage is judged at a node.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Across {
+    /// A phase to the neutral where the node carries it, else to earth.
+    Phase(Conductor),
+    /// Two phases.
+    Phases(Conductor, Conductor),
+}
+
+impl fmt::Display for Across {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        match self {
+            Across::Phase(c) => write!(f, "{c}"),
+            Across::Phases(p, q) => write!(f, "{p}{q}"),
+        }
+    }
+}
+
+/// What is judged at a node: each phase; each pair of phases on a side that no earth holds.
+fn spans(node: &Node, floats: bool) -> impl Iterator<Item = Across> + use<> {
+    let carried = node.conductors;
+    Conductor::PHASES.into_iter().filter(move |c| carried.has(*c)).filter_map(move |c| {
+        if !floats {
+            Some(Across::Phase(c))
+        } else {
+            carried.has(c.next()).then_some(Across::Phases(c, c.next()))
+        }
+    })
+}
+
+/// Voltage of a span at a node, per unit of its nominal.
+fn span_pu(network: &Network, solution: &Solution, id: NodeId, across: Across) -> f64 {
     let node = network.node(id);
     let volts = phase_volts(node, &solution.volts[id.index()]);
-    if floating[id.index()] {
-        let pairs = Conductor::PHASES.into_iter().map(|c| (c, c.next()));
-        return pairs
-            .filter(|(p, q)| node.conductors.has(*p) && node.conductors.has(*q))
-            .map(|(p, q)| {
-                (format!("{p}{q}"), (volts[p.slot()] - volts[q.slot()]).norm() / node.nominal_volts)
-            })
-            .collect();
+    match across {
+        Across::Phase(c) => volts[c.slot()].norm() / node.nominal_phase_volts(),
+        Across::Phases(p, q) => (volts[p.slot()] - volts[q.slot()]).norm() / node.nominal_volts,
     }
-    let phases = node.conductors.phases().iter();
-    phases.map(|c| (c.letter().to_string(), volts[c.slot()].norm() / node.nominal_phase_volts())).collect()
+}
+
+/// Voltages that are judged at a node, per unit: phase to neutral (or earth); between phases on a
+/// side that no earth holds.
+pub(super) fn judged<'a>(
+    network: &'a Network,
+    solution: &'a Solution,
+    floating: &[bool],
+    id: NodeId,
+) -> impl Iterator<Item = (Across, f64)> + use<'a> {
+    spans(network.node(id), floating[id.index()])
+        .map(move |across| (across, span_pu(network, solution, id, across)))
+}
+
+/// Lowest judged voltage of each node, per unit; infinite at a node where nothing is judged, such
+/// as a single phase of a side that no earth holds. In the order of [`Network::nodes`].
+pub fn lowest_judged(network: &Network, solution: &Solution) -> Vec<f64> {
+    let floating = floating_nodes(network);
+    let lowest = |i: usize| {
+        let id = NodeId(i as u32);
+        judged(network, solution, &floating, id).map(|(_, pu)| pu).fold(f64::INFINITY, f64::min)
+    };
+    (0..network.nodes.len()).map(lowest).collect()
 }
 
 /// Whether the phases of each node's side have no earth of their own but a stated reference.
@@ -81,25 +124,24 @@ pub(super) fn set_points(network: &Network) -> Vec<NodeId> {
     set_at
 }
 
-/// Largest drop at a node from where its voltage was last set, percent of nominal, with the phase.
+/// Largest drop at a node from where its voltage was last set, percent of nominal, with its span.
+///
+/// The drop is the held voltage's magnitude less the node's, over the same span: both nodes are on
+/// one side, so they are judged alike.
 pub(super) fn drop_percent(
     network: &Network,
     solution: &Solution,
+    floating: &[bool],
     set_at: &[NodeId],
     id: NodeId,
-) -> Option<(f64, Conductor)> {
+) -> Option<(f64, Across)> {
     let head = set_at[id.index()];
     if head == id {
         return None;
     }
-    let (node, start) = (network.node(id), network.node(head));
-    let here = phase_volts(node, &solution.volts[id.index()]);
-    let there = phase_volts(start, &solution.volts[head.index()]);
-    let drop = |c: Conductor| {
-        let fall = there[c.slot()].norm() - here[c.slot()].norm();
-        (100.0 * fall / node.nominal_phase_volts(), c)
-    };
-    node.conductors.phases().iter().map(drop).max_by(|a, b| a.0.total_cmp(&b.0))
+    judged(network, solution, floating, id)
+        .map(|(across, here)| (100.0 * (span_pu(network, solution, head, across) - here), across))
+        .max_by(|a, b| a.0.total_cmp(&b.0))
 }
 
 fn keep(
@@ -126,12 +168,12 @@ pub(super) fn glance(
     for (i, summary) in nodes.iter().enumerate() {
         let id = NodeId(i as u32);
         let name = &network.node(id).name;
-        for (letters, pu) in judged(network, solution, &floating, id) {
-            keep(&mut glance.lowest_pu, pu, || format!("node {name}, {letters}"), |a, b| a < b);
-            keep(&mut glance.highest_pu, pu, || format!("node {name}, {letters}"), greater);
+        for (across, pu) in judged(network, solution, &floating, id) {
+            keep(&mut glance.lowest_pu, pu, || format!("node {name}, {across}"), |a, b| a < b);
+            keep(&mut glance.highest_pu, pu, || format!("node {name}, {across}"), greater);
         }
-        if let Some((percent, c)) = drop_percent(network, solution, &set_at, id) {
-            keep(&mut glance.drop_percent, percent, || format!("node {name}, {c}"), greater);
+        if let Some((percent, across)) = drop_percent(network, solution, &floating, &set_at, id) {
+            keep(&mut glance.drop_percent, percent, || format!("node {name}, {across}"), greater);
         }
         if let Some(percent) = summary.unbalance_percent {
             keep(&mut glance.unbalance_percent, percent, || format!("node {name}"), greater);

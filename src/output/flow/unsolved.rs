@@ -1,0 +1,43 @@
+//! What is said instead of results where there is no solution: where, how far off, what to look at.
+
+use crate::network::Network;
+use crate::output::table::folded;
+use crate::solver::{Solution, Status};
+
+/// The message for a solution that did not converge, without any voltage; empty for one that did.
+pub fn no_solution_text(network: &Network, solution: &Solution) -> String {
+    let limit = "load beyond what the feeder can carry (a load in kW that was meant in W), \
+                 a length or impedance in the wrong unit, a missing transformer";
+    let place = &network.node(solution.worst_node).name;
+    let count = solution.iterations;
+    let (why, look) = match solution.status {
+        Status::Converged => return String::new(),
+        Status::Singular(node) => (
+            format!("the linear part of the network has no solution at node {}", network.node(node).name),
+            "a side without any path to earth there, or a capacitor and a reactance that cancel",
+        ),
+        Status::Diverged => (format!("the iteration grew beyond all bounds after {count} iterations"), limit),
+        Status::IterationLimit => (format!("the voltages have not settled after {count} iterations"), limit),
+    };
+    let mut text = folded("", &format!("error[no-solution]: {why}."));
+    if !matches!(solution.status, Status::Singular(_)) {
+        let far = format!(
+            "Worst at node {place}: last change {}, current mismatch {}.",
+            amount(solution.change_pu, "of nominal"),
+            amount(solution.mismatch_amps, "A")
+        );
+        text.push_str(&folded("  ", &far));
+    }
+    text.push_str(&folded("  ", &format!("Look at: {look}.")));
+    text.push_str("  No results are shown, since none are good.\n");
+    text
+}
+
+/// A number with its unit, or words for one that is none.
+fn amount(value: f64, unit: &str) -> String {
+    if value.is_finite() && value < f64::MAX {
+        format!("{value:.1e} {unit}")
+    } else {
+        "beyond all bounds".to_string()
+    }
+}
