@@ -14,8 +14,14 @@ pub enum IecMethod {
     C,
     /// In free air.
     E,
+    /// Single-core cables in conduit within an insulating wall.
+    A1,
+    /// A multi-core cable in conduit within an insulating wall.
+    A2,
     /// Conduit on a wall, single-core.
     B1,
+    /// Conduit on a wall, multi-core.
+    B2,
 }
 
 impl IecMethod {
@@ -23,14 +29,17 @@ impl IecMethod {
         match self {
             IecMethod::C => "C",
             IecMethod::E => "E",
+            IecMethod::A1 => "A1",
+            IecMethod::A2 => "A2",
             IecMethod::B1 => "B1",
+            IecMethod::B2 => "B2",
         }
     }
 }
 
 /// Rating of building wire, amperes: NEC Table 310.16 in the column of `insulation_c` (60, 75 or
-/// 90 C), times the ambient factor `sqrt((Tc - Ta) / (Tc - 30))` its temperature table is made
-/// from, times the factor for the number of current-carrying conductors (Table 310.15(C)(1)).
+/// 90 C), times the factor that Table 310.15(B)(1) prints for the ambient temperature, times the
+/// factor for the number of current-carrying conductors (Table 310.15(C)(1)).
 ///
 /// `None` where the table has no such size, or the ambient leaves nothing.
 pub fn nec_rating_amps(
@@ -48,10 +57,24 @@ pub fn nec_rating_amps(
     let row =
         rows(include_str!("data/ampacity_nec_310_16.csv")).find(|c| text(c, "size_awg_kcmil") == size)?;
     let base = number(&row, &format!("{metal}_{insulation_c}C"))?;
-    let limit = f64::from(insulation_c);
-    let ambient = ((limit - ambient_c) / (limit - 30.0)).max(0.0).sqrt();
-    let grouping = nec_grouping(conductors)?;
-    (ambient > 0.0).then_some(base * ambient * grouping)
+    Some(base * nec_ambient(insulation_c, ambient_c)? * nec_grouping(conductors)?)
+}
+
+/// Factor of the first range whose warm end is not below the ambient: between two ranges the warmer.
+///
+/// The table is taken rather than the formula it was made from, whose value at the cold end of each
+/// range is above the printed one.
+fn nec_ambient(insulation_c: u32, ambient_c: f64) -> Option<f64> {
+    let row = rows(include_str!("data/ampacity_nec_temperature_factors.csv"))
+        .filter(|c| text(c, "base") == "NEC 30 C base")
+        .find(|c| warm_end(&text(c, "ambient_C")).is_some_and(|end| ambient_c <= end))?;
+    number(&row, &format!("f_{insulation_c}C"))
+}
+
+/// Upper end of `31-35`, and 10 of `10 or less`.
+fn warm_end(range: &str) -> Option<f64> {
+    let last = range.split('-').next_back().unwrap_or(range);
+    last.split_whitespace().next()?.parse().ok()
 }
 
 fn nec_grouping(conductors: u32) -> Option<f64> {
@@ -69,7 +92,7 @@ fn nec_grouping(conductors: u32) -> Option<f64> {
 }
 
 /// Rating of a cable with three loaded conductors, amperes: IEC 60364-5-52 tables for the insulation
-/// temperature (70 C PVC or 90 C XLPE), times the ambient factor of Table B.52.14 and the factor
+/// temperature (70: PVC, 90: XLPE), times the ambient factor of Table B.52.14 and the factor
 /// for circuits grouped enclosed.
 ///
 /// `None` where a table has no such row.
@@ -81,8 +104,16 @@ pub fn iec_rating_amps(
     ambient_c: f64,
     circuits: u32,
 ) -> Option<f64> {
-    let metal = if material == Material::Copper { "Cu" } else { "Al" };
-    let insulation = if insulation_c >= 90 { "XLPE 90C" } else { "PVC 70C" };
+    let metal = match material {
+        Material::Copper => "Cu",
+        Material::Aluminium => "Al",
+        Material::Steel => return None,
+    };
+    let (insulation, column) = match insulation_c {
+        70 => ("PVC 70C", "f_PVC_70C"),
+        90 => ("XLPE 90C", "f_XLPE_90C"),
+        _ => return None,
+    };
     let fits = |c: &Cells| {
         text(c, "insulation") == insulation
             && text(c, "conductor") == metal
@@ -93,7 +124,6 @@ pub fn iec_rating_amps(
     let base = rows(include_str!("data/ampacity_iec60364_5_52.csv"))
         .find(fits)
         .and_then(|c| number(&c, "ampacity_A"))?;
-    let column = if insulation_c >= 90 { "f_XLPE_90C" } else { "f_PVC_70C" };
     let ambient = rows(include_str!("data/ampacity_iec_temperature_factors.csv"))
         .filter(|c| number(c, "ambient_air_C").is_some_and(|t| t >= ambient_c))
         .find_map(|c| number(&c, column))?;
@@ -142,9 +172,12 @@ mod tests {
         assert_eq!(nec_rating_amps("4/0", Material::Copper, 75, 30.0, 3), Some(230.0));
         let four = nec_rating_amps("4/0", Material::Copper, 75, 30.0, 4).unwrap();
         assert!((four - 184.0).abs() < 1e-9);
-        // Printed factor for 36 to 40 C at 75 C: 0.88 (computed at 40 C).
-        let warm = nec_rating_amps("4/0", Material::Copper, 75, 40.0, 3).unwrap();
-        assert!((warm / 230.0 - 0.88).abs() < 0.005);
+        // Printed factors at 75 C: 0.88 for 36 to 40 C, 1.20 for 10 C or less, 0.33 for 66 to 70 C, none above.
+        let at = |ambient: f64| nec_rating_amps("4/0", Material::Copper, 75, ambient, 3).map(|a| a / 230.0);
+        for (ambient, factor) in [(40.0, 0.88), (36.0, 0.88), (35.5, 0.88), (-40.0, 1.20), (70.0, 0.33)] {
+            assert!(at(ambient).is_some_and(|f| (f - factor).abs() < 1e-9), "{ambient} C: {:?}", at(ambient));
+        }
+        assert_eq!((at(70.5), at(f64::NAN)), (None, None));
         assert_eq!(nec_rating_amps("4/0", Material::Copper, 75, 80.0, 3), None);
         assert_eq!(nec_rating_amps("77", Material::Copper, 75, 30.0, 3), None);
     }
@@ -155,5 +188,25 @@ mod tests {
         assert_eq!(iec_rating_amps(16.0, Material::Copper, 70, IecMethod::C, 30.0, 1), Some(76.0));
         let two = iec_rating_amps(16.0, Material::Copper, 70, IecMethod::C, 30.0, 2).unwrap();
         assert!((two - 76.0 * 0.8).abs() < 1e-9);
+        assert_eq!(iec_rating_amps(16.0, Material::Steel, 70, IecMethod::C, 30.0, 1), None);
+        assert_eq!(iec_rating_amps(16.0, Material::Copper, 60, IecMethod::C, 30.0, 1), None);
+    }
+
+    /// The printed ambient factors of both NEC tables are `sqrt((Tc - Ta) / (Tc - base))` with the warm end of each
+    /// range for `Ta`, rounded: within 0.006 (the coldest range is open, and stands at 10 C).
+    #[test]
+    fn nec_ambient_factors_follow_their_formula() {
+        let mut checked = 0;
+        for row in rows(include_str!("data/ampacity_nec_temperature_factors.csv")) {
+            let base = if text(&row, "base") == "NEC 30 C base" { 30.0 } else { 40.0 };
+            let end = warm_end(&text(&row, "ambient_C")).unwrap();
+            for limit in [60.0f64, 75.0, 90.0] {
+                let Some(printed) = number(&row, &format!("f_{limit}C")) else { continue };
+                let formula = ((limit - end) / (limit - base)).sqrt();
+                assert!((printed - formula).abs() < 0.006, "{limit} C at {end}: {printed}, {formula:.4}");
+                checked += 1;
+            }
+        }
+        assert!(checked > 70, "{checked}");
     }
 }

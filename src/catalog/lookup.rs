@@ -87,9 +87,9 @@ struct Query {
 /// Reads a query such as `4/0 AWG ACSR 6/1`, `#2 copper`, `95 mm² Al`, `336,400 26/7`, `Dove`.
 fn parse(text: &str) -> Query {
     let lower = text.to_lowercase().replace('²', "2").replace("sq mm", "mm2").replace("sqmm", "mm2");
-    // A comma between digits groups thousands; a hyphen or underscore joins words.
+    // A hyphen or underscore joins words.
     let joined: String =
-        lower.chars().filter(|c| *c != ',').map(|c| if "-_()".contains(c) { ' ' } else { c }).collect();
+        plain_commas(&lower).chars().map(|c| if "-_()".contains(c) { ' ' } else { c }).collect();
     let spaced = joined
         .replace('#', " # ")
         .replace("no.", " # ")
@@ -127,7 +127,28 @@ fn parse(text: &str) -> Query {
     query
 }
 
+/// Commas made plain: before three digits and no more it groups thousands (`336,400`) and goes; between
+/// other digits it is a decimal comma (`2,5 mm2`); elsewhere it parts words.
+fn plain_commas(text: &str) -> String {
+    let chars: Vec<char> = text.chars().collect();
+    let digit = |k: usize| chars.get(k).is_some_and(char::is_ascii_digit);
+    let plain = |(k, c): (usize, &char)| match c {
+        ',' if k > 0 && digit(k - 1) && digit(k + 1) => {
+            let groups = digit(k + 2) && digit(k + 3) && !digit(k + 4);
+            if groups { None } else { Some('.') }
+        }
+        ',' => Some(' '),
+        other => Some(*other),
+    };
+    chars.iter().enumerate().filter_map(plain).collect()
+}
+
 fn read_word(word: &str, query: &mut Query, numbers: &mut Vec<f64>) {
+    // The old way to write 1/0 to 4/0: as many zeros.
+    if (1..=4).contains(&word.len()) && word.chars().all(|c| c == '0') {
+        query.key.size = Some(Size::Awg(1 - word.len() as i32));
+        return;
+    }
     if let Ok(number) = word.parse::<f64>() {
         numbers.push(number);
         return;
@@ -192,7 +213,7 @@ pub(super) fn find<'a>(wires: &'a [Conductor], text: &str) -> Result<&'a Conduct
         Vec::new()
     };
     match found.as_slice() {
-        [one] => Ok(one),
+        [one] => Ok(own_instead(wires, one)),
         [] => {
             let names = wires.iter().map(|w| w.name.as_str());
             let mut near: Vec<String> =
@@ -210,6 +231,34 @@ pub(super) fn find<'a>(wires: &'a [Conductor], text: &str) -> Result<&'a Conduct
             choices: many.iter().map(|w| w.name.clone()).collect(),
         }),
     }
+}
+
+/// The user's own wire that stands for a built-in one: its name means that one alone. The last wins.
+fn own_instead<'a>(wires: &'a [Conductor], built_in: &'a Conductor) -> &'a Conductor {
+    let stands_for = |own: &&Conductor| {
+        let query = parse(&own.name);
+        let mut meant = wires.iter().filter(|w| w.family != Family::Own && fits(&query, w));
+        (query.key.size.is_some() || query.key.code.is_some())
+            && meant.next().is_some_and(|w| w.name == built_in.name)
+            && meant.next().is_none()
+    };
+    wires.iter().rev().filter(|w| w.family == Family::Own).find(stands_for).unwrap_or(built_in)
+}
+
+/// The building wire that a text means; of several strandings of one size and metal the stranded.
+pub(super) fn find_building<'a>(wires: &'a [Conductor], text: &str) -> Result<&'a Conductor, LookupFault> {
+    let query = parse(text);
+    let found: Vec<&Conductor> = wires
+        .iter()
+        .filter(|w| w.family == Family::Building && query.key.size.is_some() && fits(&query, w))
+        .collect();
+    let Some(first) = found.first() else { return find(wires, text) };
+    if found.iter().all(|w| w.material == first.material && w.key.size == first.key.size) {
+        let stranded = found.iter().find(|w| w.key.stranding.as_deref() != Some("1"));
+        return Ok(stranded.unwrap_or(first));
+    }
+    let choices = found.iter().map(|w| w.name.clone()).collect();
+    Err(LookupFault::Ambiguous { text: text.trim().to_string(), choices })
 }
 
 /// Wires that a text could mean, or whose name contains it; all for an empty text.

@@ -90,6 +90,18 @@ impl Catalog {
         lookup::find(&self.conductors, text)
     }
 
+    /// The wire that a text means where it is pulled into conduit: building wire where the table has it, so
+    /// that `4/0 copper` is not in doubt; any other wire that the text means otherwise.
+    ///
+    /// # Errors
+    /// As [`Catalog::find`].
+    pub fn find_building(&self, text: &str) -> Result<&Conductor, LookupFault> {
+        match lookup::find(&self.conductors, text) {
+            Ok(own) if own.family == Family::Own => Ok(own),
+            _ => lookup::find_building(&self.conductors, text),
+        }
+    }
+
     /// Wires that a text could mean; all for an empty text.
     pub fn search(&self, text: &str) -> Vec<&Conductor> {
         lookup::search(&self.conductors, text)
@@ -123,6 +135,9 @@ impl Catalog {
 
 /// Bare overhead and copper wires with GMR and alternating-current resistance at 50 C, 60 Hz.
 fn bare() -> Vec<Conductor> {
+    let codes: HashMap<[String; 3], String> = rows(include_str!("data/code_words.csv"))
+        .map(|c| (wire_kind(&c), text(&c, "code_word").to_lowercase()))
+        .collect();
     let read = |cells: Cells| {
         let (size, stranding) = (text(&cells, "size_awg_kcmil"), text(&cells, "stranding"));
         let (family, material) = match text(&cells, "material").as_str() {
@@ -160,10 +175,15 @@ fn bare() -> Vec<Conductor> {
             rating_amps: number(&cells, "ampacity_A"),
             source: text(&cells, "source"),
             provenance: text(&cells, "provenance"),
-            key: Key { size: parsed, stranding: Some(strands), code: None },
+            key: Key { size: parsed, stranding: Some(strands), code: codes.get(&wire_kind(&cells)).cloned() },
         }
     };
     rows(include_str!("data/acsr.csv")).map(read).collect()
+}
+
+/// Size, stranding and material as the tables of bare wires write them.
+fn wire_kind(cells: &Cells) -> [String; 3] {
+    ["size_awg_kcmil", "stranding", "material"].map(|column| text(cells, column))
 }
 
 fn alternating(ohm_per_m: f64, temperature_c: f64) -> Resistance {
@@ -330,11 +350,59 @@ mod tests {
             assert_eq!(found(text), "95 mm2 copper", "{text}");
         }
         assert_eq!(found("dove"), "Dove (556 kcmil 26/7 ACSR)");
+        assert_eq!(found("Linnet"), "336.4 kcmil 26/7 ACSR");
+        assert_eq!(found("Tulip AAC"), "336.4 kcmil AAC");
         assert_eq!(found("1/0 AA"), "1/0 AWG AAC");
         assert_eq!(found("#2 6/1"), "2 AWG 6/1 ACSR");
         assert_eq!(found("250 kcmil aluminium NEC"), "250 kcmil aluminium NEC");
         assert_eq!(found("10 awg SOLID copper"), "10 AWG solid copper");
         assert!(found("No. 10 solid copper").contains("10 AWG solid copper NEC"), "both tables have it");
+    }
+
+    /// A comma is a decimal sign unless three digits follow; zeros in a row are the old gauge names.
+    #[test]
+    fn commas_and_zeros_keep_their_size() {
+        assert_eq!(found("2,5 mm² Cu"), "2.5 mm2 copper");
+        assert_eq!(found("1,5mm2 Cu"), "1.5 mm2 copper");
+        assert_eq!(found("336,4 kcmil 26/7"), "336.4 kcmil 26/7 ACSR");
+        assert_eq!(found("ACSR, 26/7, 336.4"), "336.4 kcmil 26/7 ACSR");
+        for (zeros, size) in [("0", "1/0"), ("00", "2/0"), ("000", "3/0"), ("0000", "4/0")] {
+            assert_eq!(found(&format!("{zeros} 6/1 ACSR")), format!("{size} AWG 6/1 ACSR"));
+        }
+    }
+
+    #[test]
+    fn code_words_name_wires_of_the_table() {
+        for cells in rows(include_str!("data/code_words.csv")) {
+            let code = text(&cells, "code_word");
+            let wire = Catalog::built_in().find(&code).expect("a wire");
+            assert!(
+                wire.name.starts_with(&size_label(&text(&cells, "size_awg_kcmil"))),
+                "{code}: {}",
+                wire.name
+            );
+        }
+    }
+
+    /// A user's wire stands for the built-in one that its name means, however either is written.
+    #[test]
+    fn own_wires_add_and_override() {
+        let own = |name: &str| Conductor::own(name, Material::Aluminium, direct(1e-3, 20.0));
+        let catalog = Catalog::with(vec![own("4/0 AWG 6/1 ACSR"), own("Blue cable"), own("linnet")]);
+        let family = |text: &str| catalog.find(text).expect("a wire").family;
+        for text in ["4/0 ACSR", "4/0 6/1 acsr", "Penguin", "blue CABLE", "336.4 26/7 ACSR"] {
+            assert_eq!(family(text), Family::Own, "{text}");
+        }
+        assert_eq!(family("3/0 ACSR"), Family::Acsr);
+    }
+
+    #[test]
+    fn conduit_takes_building_wire_before_others() {
+        let name = |text: &str| Catalog::built_in().find_building(text).map(|w| w.name.clone());
+        assert_eq!(name("4/0 copper").as_deref(), Ok("4/0 AWG copper NEC"));
+        assert_eq!(name("#12 Cu").as_deref(), Ok("12 AWG copper NEC"));
+        assert_eq!(name("10 mm2 Cu").as_deref(), Ok("10 mm2 copper"));
+        assert!(matches!(name("250 MCM"), Err(LookupFault::Ambiguous { choices, .. }) if choices.len() == 2));
     }
 
     #[test]

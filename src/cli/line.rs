@@ -406,7 +406,11 @@ fn resistance_only(asked: &Asked, name: &str) -> Result<Wire, Vec<Fault>> {
 
 /// Sizes of the same family and metal as the wire asked for, each computed as that one is.
 fn candidates(asked: &Asked, placed: bool, circuit: Circuit) -> Vec<Candidate> {
-    let Ok(model) = asked.catalog.find(&asked.recipe.phase).cloned() else { return Vec::new() };
+    let found = match asked.recipe.kind {
+        Kind::Conduit => asked.catalog.find_building(&asked.recipe.phase),
+        _ => asked.catalog.find(&asked.recipe.phase),
+    };
+    let Ok(model) = found.cloned() else { return Vec::new() };
     let mut alike: Vec<Conductor> = asked
         .catalog
         .search("")

@@ -7,7 +7,7 @@ use super::layout::{Layout, Target, Wire, compute};
 use super::recipe::{Computed, Kind, Recipe, RecipeFault};
 use super::shunt::{concentric_siemens_per_m, tape_siemens_per_m};
 use super::{LineConstants, NEUTRAL};
-use crate::catalog::{Catalog, ConcentricCable, Conductor, LookupFault, TapeCable};
+use crate::catalog::{Catalog, ConcentricCable, Conductor, Family, LookupFault, TapeCable};
 use crate::math::{Complex64, PhaseMatrix};
 
 /// Relative permittivity of cable insulation, cross-linked polyethylene (Kersting, ch. 5; from memory).
@@ -134,6 +134,10 @@ impl Workings<'_> {
             return Some(by_letter);
         }
         if given.len() == self.phases.len() {
+            let pair =
+                |(&s, (g, _)): (&usize, &(usize, _))| format!("{} at place {}", LETTERS[s], LETTERS[*g]);
+            let pairs: Vec<String> = self.phases.iter().zip(&given).map(pair).collect();
+            self.assume(format!("the spacing names other phases; taken in order: {}", pairs.join(", ")));
             return Some(self.phases.iter().copied().zip(given.into_iter().map(|(_, p)| p)).collect());
         }
         let missing = self.phases.iter().filter(|s| given.iter().all(|(g, _)| g != *s));
@@ -334,14 +338,21 @@ impl Workings<'_> {
 
     /// Impedance to neutral of building wire in the conduit, at the study's frequency.
     fn conduit_z(&mut self, text: &str) -> Option<Complex64> {
-        let wire = self.find(text)?;
-        self.rating = self.rating.or(wire.rating_amps);
-        let size = wire.name.split_whitespace().next().unwrap_or("").to_string();
-        let Some(row) = self.catalog.conduit(&size, wire.material, self.recipe.conduit) else {
-            self.faults
-                .push(RecipeFault::MissingDatum { wire: wire.name, datum: "the impedance in conduit" });
+        let wire = match self.catalog.find_building(text) {
+            Ok(wire) => wire,
+            Err(fault) => {
+                self.faults.push(RecipeFault::Wire(fault));
+                return None;
+            }
+        };
+        // Sizes in mm2 share numbers with AWG and kcmil: only building wire is looked for in the table.
+        let size = wire.name.split_whitespace().next().filter(|_| wire.family == Family::Building);
+        let row = size.and_then(|s| self.catalog.conduit(s, wire.material, self.recipe.conduit));
+        let Some(row) = row else {
+            self.faults.push(RecipeFault::NotInConduit { wire: wire.name.clone() });
             return None;
         };
+        self.rating = self.rating.or(wire.rating_amps);
         let r =
             crate::catalog::at_temperature(row.r_ohm_per_m, 75.0, self.recipe.temperature_c, row.material);
         self.sources.push(format!("{}: {} ({})", wire.name, row.source, row.provenance));
@@ -353,6 +364,10 @@ impl Workings<'_> {
             self.faults.push(RecipeFault::NoSequence);
             return None;
         };
+        if self.neutral && values.z0.re < values.z1.re {
+            self.faults.push(RecipeFault::NegativeReturn);
+            return None;
+        }
         if self.neutral {
             self.assume("zero-sequence current is taken to return in the neutral; current that returns through earth meets the earth return of wires 20 mm apart".to_string());
         }

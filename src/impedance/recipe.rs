@@ -76,6 +76,13 @@ pub enum RecipeFault {
     NoNeutral,
     /// Sequence values are missing.
     NoSequence,
+    /// A wire that the table of wires in conduit does not have.
+    NotInConduit {
+        /// The wire.
+        wire: String,
+    },
+    /// The line carries n, but the sequence values leave its neutral less than no resistance.
+    NegativeReturn,
 }
 
 impl RecipeFault {
@@ -96,6 +103,14 @@ impl RecipeFault {
             RecipeFault::NoSequence => {
                 "fill in r1, x1, r0 and x0, each with its unit in the column name".to_string()
             }
+            RecipeFault::NotInConduit { .. } => {
+                "name building wire such as \"4/0 copper\" or \"250 kcmil aluminium\"; for other cores use kind bundle with a spacing"
+                    .to_string()
+            }
+            RecipeFault::NegativeReturn => {
+                "check r0, which holds the phase once and the neutral three times; or leave n out of the line"
+                    .to_string()
+            }
         }
     }
 }
@@ -111,6 +126,12 @@ impl fmt::Display for RecipeFault {
                 f.write_str("the line carries n, but the construction has no neutral wire")
             }
             RecipeFault::NoSequence => f.write_str("the sequence impedances are not all given"),
+            RecipeFault::NotInConduit { wire } => {
+                write!(f, "{wire} is not in the table of building wire in conduit")
+            }
+            RecipeFault::NegativeReturn => f.write_str(
+                "r0 is below r1: the neutral that returns the zero-sequence current would have less than no resistance",
+            ),
         }
     }
 }

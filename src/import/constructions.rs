@@ -185,6 +185,8 @@ fn report(
             RecipeFault::Wire(_) => (Code::UnknownConductor, "phase_conductor"),
             RecipeFault::Geometry(_) => (Code::BadGeometry, "spacing"),
             RecipeFault::MissingDatum { .. } => (Code::MissingDatum, "phase_conductor"),
+            RecipeFault::NotInConduit { .. } => (Code::UnknownConductor, "phase_conductor"),
+            RecipeFault::NegativeReturn => (Code::MissingDatum, "kind"),
             RecipeFault::NoPlace { .. } => (Code::UnknownSpacing, "spacing"),
             RecipeFault::NoNeutral => (Code::ConductorMismatch, "neutral_conductor"),
             RecipeFault::NoSequence => (Code::MissingValue, "kind"),
