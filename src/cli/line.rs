@@ -457,7 +457,7 @@ fn rating_basis(options: &Line, candidates: &[Candidate], asked: &Asked) -> Stri
         _ if candidates.is_empty() => String::new(),
         Ok(Family::Building) => format!("Ratings: NEC Table 310.16, 75 C, {place}.\n"),
         Ok(Family::Iec) => format!(
-            "Ratings: IEC 60364-5-52, PVC 70 C, method C, {place}; check against the standard in force.\n"
+            "Ratings: IEC 60364-5-52, PVC 70 C, method C, {place};\ncheck them against the standard in force.\n"
         ),
         _ => "Ratings: as in the table of bare wires, in still air of its source.\n".to_string(),
     }
