@@ -111,6 +111,18 @@ fn example_4_1_overhead_line() {
     let close = |a: Complex64, re: f64, im: f64| (a - Complex64::new(re, im)).norm() < 0.0002;
     assert!(close(sequence(0, 0), 0.7735, 1.9373), "{}", sequence(0, 0));
     assert!(close(sequence(1, 1), 0.3061, 0.6270), "{}", sequence(1, 1));
+    assert!(close(sequence(2, 2), 0.3061, 0.6270), "{}", sequence(2, 2));
+    // Off the diagonal: z01 .0256 + j.0115, z02 -.0321 + j.0159, z12 -.0723 - j.0060, z21 .0723 - j.0059.
+    assert!(close(sequence(0, 1), 0.0256, 0.0115), "{}", sequence(0, 1));
+    assert!(close(sequence(0, 2), -0.0321, 0.0159), "{}", sequence(0, 2));
+    assert!(close(sequence(1, 2), -0.0723, -0.0060), "{}", sequence(1, 2));
+    assert!(close(sequence(2, 1), 0.0723, -0.0059), "{}", sequence(2, 1));
+    // Neutral transform, current in the neutral for one in a phase: printed -.4292 - j.1291, -.4476 - j.1373, -.4373 - j.1327.
+    for (k, (re, im)) in [(-0.4292, -0.1291), (-0.4476, -0.1373), (-0.4373, -0.1327)].into_iter().enumerate()
+    {
+        let t = -line.primitive[(3, k)] / line.primitive[(3, 3)];
+        assert!(close(t, re, im), "{t}");
+    }
 }
 
 #[test]
@@ -285,6 +297,9 @@ fn published_configurations_of_the_13_node_feeder() {
         neutral,
         &ACSR_4_0,
     );
+    // Primitive of the same geometry, printed (Kersting, problem 4.1): self .2812 + j1.3830.
+    let own = solved(vec![wire("a", &ACSR_556, 2.5, 29.0, Target::Slot(0))], TEXTBOOK_AIR);
+    agree("problem 4.1", &own.z_per_m, &[((0, 0), (0.2812, 1.3830))], HALF_DIGIT);
     let config_602 = overhead(
         &[(2, spacing_500[0]), (0, spacing_500[1]), (1, spacing_500[2])],
         &ACSR_4_0,

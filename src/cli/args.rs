@@ -95,7 +95,7 @@ pub(super) enum FlowFormat {
 pub(super) struct Line {
     /// Folder of the network whose construction is meant
     pub folder: Option<PathBuf>,
-    /// Search the table of wires; alone it lists all
+    /// Search the table of wires; alone it lists all. With a folder, its conductors.csv too
     #[arg(long, value_name = "TEXT", num_args = 0..=1, default_missing_value = "")]
     pub list: Option<String>,
     /// Construction of the folder's constructions.csv
@@ -149,6 +149,12 @@ pub(super) struct Line {
     /// Drop limit, percent: shows all sizes and the least that will do
     #[arg(long, value_name = "PERCENT", value_parser = above_zero)]
     pub limit: Option<f64>,
+    /// Ambient temperature for the ratings of sizes, degrees Celsius
+    #[arg(long, default_value_t = 30.0, value_name = "C", allow_negative_numbers = true)]
+    pub ambient: f64,
+    /// Circuits grouped together, for the ratings of sizes
+    #[arg(long, default_value_t = 1, value_name = "N", value_parser = clap::value_parser!(u32).range(1..=100))]
+    pub grouped: u32,
     /// Price of a kilowatt-hour, for the cost of the loss
     #[arg(long, value_name = "PRICE", value_parser = above_zero)]
     pub price: Option<f64>,

@@ -5,7 +5,7 @@ use serde_json::json;
 use super::args::{ConduitWord, KindWord, Line, LineFormat, PerWord};
 use super::lengths::{Fault, parse_length, parse_spacing};
 use super::{Outcome, Screen};
-use crate::catalog::{Catalog, Conductor, ConduitKind, Family, IecMethod, Material, iec_rating_amps};
+use crate::catalog::{Catalog, Conductor, ConduitKind, Family, IecMethod, iec_rating_amps, nec_rating_amps};
 use crate::impedance::{Computed, Conditions, EPSILON_0, Kind, NEUTRAL, Recipe, Spacing, evaluate};
 use crate::import::read_folder;
 use crate::output::{
@@ -102,7 +102,10 @@ impl Pages {
 }
 
 fn list(options: &Line, text: &str, screen: &mut Screen) -> Result<(), Vec<Fault>> {
-    let catalog = Catalog::built_in();
+    let catalog = match &options.folder {
+        Some(folder) => read_folder(folder).catalog,
+        None => Catalog::built_in().clone(),
+    };
     let wires = catalog.search(text);
     if wires.is_empty() {
         let cure = "try a size such as 4/0, 336.4 or 95 mm2, a metal, or ACSR".to_string();
@@ -358,13 +361,14 @@ fn desk(
         json_rows(&["volts", "amps", "length_m", "drop_v", "drop_exact_v", "drop_percent", "loss_w"], &[row])
     });
     if let Some(limit) = options.limit {
-        let candidates = candidates(asked, computed.is_some(), case.circuit);
+        let candidates = candidates(options, asked, computed.is_some(), case.circuit);
         let judged = sizes(case, &candidates, limit, options.price);
+        let basis = rating_basis(options, &candidates, asked);
         let rows: Vec<_> = judged.rows.iter().map(|r| json!(r)).collect();
         pages.add(
             "sizes",
             json!(judged),
-            || sizes_text(&judged),
+            || format!("{}{basis}", sizes_text(&judged)),
             || {
                 json_rows(
                     &["size", "drop_percent", "loss_watts", "rating_amps", "loss_cost_per_year", "refused"],
@@ -404,13 +408,18 @@ fn resistance_only(asked: &Asked, name: &str) -> Result<Wire, Vec<Fault>> {
     Ok(Wire { r_ohm_per_m, x_ohm_per_m: 0.0 })
 }
 
+/// The wire asked for: in conduit, building wire before others.
+fn model(asked: &Asked) -> Option<&Conductor> {
+    let phase = &asked.recipe.phase;
+    match asked.recipe.kind {
+        Kind::Conduit => asked.catalog.find_building(phase).ok(),
+        _ => asked.catalog.find(phase).ok(),
+    }
+}
+
 /// Sizes of the same family and metal as the wire asked for, each computed as that one is.
-fn candidates(asked: &Asked, placed: bool, circuit: Circuit) -> Vec<Candidate> {
-    let found = match asked.recipe.kind {
-        Kind::Conduit => asked.catalog.find_building(&asked.recipe.phase),
-        _ => asked.catalog.find(&asked.recipe.phase),
-    };
-    let Ok(model) = found.cloned() else { return Vec::new() };
+fn candidates(options: &Line, asked: &Asked, placed: bool, circuit: Circuit) -> Vec<Candidate> {
+    let Some(model) = model(asked).cloned() else { return Vec::new() };
     let mut alike: Vec<Conductor> = asked
         .catalog
         .search("")
@@ -428,18 +437,37 @@ fn candidates(asked: &Asked, placed: bool, circuit: Circuit) -> Vec<Candidate> {
         } else {
             resistance_only(asked, &wire.name).ok()?
         };
-        Some(Candidate { rating_amps: rating(&wire), name: wire.name, wire: impedance })
+        Some(Candidate { rating_amps: rating(options, &wire), name: wire.name, wire: impedance })
     };
     alike.into_iter().filter_map(of).collect()
 }
 
-/// Rating of a wire: the table's, or for an IEC size that of PVC insulation clipped direct at 30 C.
-fn rating(wire: &Conductor) -> Option<f64> {
-    if wire.family != Family::Iec {
-        return wire.rating_amps;
+/// Rating of a wire as it is used: building wire at 75 C (NEC), an IEC size in PVC clipped direct, both for
+/// the ambient and grouping asked for; a bare wire's as the table has it.
+fn rating(options: &Line, wire: &Conductor) -> Option<f64> {
+    match wire.family {
+        Family::Building => {
+            let size = wire.name.split_whitespace().next()?;
+            nec_rating_amps(size, wire.material, 75, options.ambient, 3 * options.grouped)
+        }
+        Family::Iec => {
+            let mm2 = (wire.area_m2? * 1e8).round() / 100.0;
+            iec_rating_amps(mm2, wire.material, 70, IecMethod::C, options.ambient, options.grouped)
+        }
+        _ => wire.rating_amps,
     }
-    let mm2 = wire.area_m2? * 1e6;
-    let rounded = (mm2 * 100.0).round() / 100.0;
-    let metal = if wire.material == Material::Copper { Material::Copper } else { Material::Aluminium };
-    iec_rating_amps(rounded, metal, 70, IecMethod::C, 30.0, 1)
+}
+
+/// What the ratings in the table of sizes stand for.
+fn rating_basis(options: &Line, candidates: &[Candidate], asked: &Asked) -> String {
+    let family = model(asked).map(|w| w.family);
+    let place = format!("{} C ambient, circuits grouped: {}", options.ambient, options.grouped);
+    match family {
+        _ if candidates.is_empty() => String::new(),
+        Some(Family::Building) => format!("Ratings: NEC Table 310.16, 75 C, {place}.\n"),
+        Some(Family::Iec) => format!(
+            "Ratings: IEC 60364-5-52, PVC 70 C, method C, {place};\ncheck them against the standard in force.\n"
+        ),
+        _ => "Ratings: as in the table of bare wires, in still air of its source.\n".to_string(),
+    }
 }

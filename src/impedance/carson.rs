@@ -36,7 +36,7 @@ pub enum EarthReturn {
     /// The first term of P and the first two of Q: heights drop out. The usual modified form.
     Modified,
     /// Terms up to the fourth power of `k`. Valid for `k` up to about 1: at 60 Hz and 100 ohm m,
-    /// images up to 460 m away; the terms left out are then below 0.1 %.
+    /// images up to 460 m away; P and Q (0.26 and 0.51 there) are then right within 0.0005.
     Series,
 }
 
@@ -123,5 +123,42 @@ mod tests {
         };
         assert!(difference(100.0) < 0.01 && difference(1e4) < 0.2 * difference(100.0));
         assert!(difference(1e10) < 1e-6);
+    }
+
+    /// Carson's integral `P + jQ = int_0^inf (sqrt(u^2 + j) - u) exp(-u k cos) cos(u k sin) du`, by Simpson's rule
+    /// after `u = t^2`: no series in it.
+    fn integral(k: f64, angle: f64) -> (f64, f64) {
+        let (fall, turn) = (k * angle.cos(), k * angle.sin());
+        let end = (40.0 / fall).sqrt();
+        let steps = 40_000;
+        let h = end / f64::from(steps);
+        let value = |t: f64| {
+            let u = t * t;
+            let root = Complex64::new(u * u, 1.0).sqrt();
+            // sqrt(u^2 + j) - u = j / (sqrt(u^2 + j) + u), which does not lose digits as u grows.
+            Complex64::new(0.0, 1.0) / (root + u) * ((-u * fall).exp() * (u * turn).cos() * 2.0 * t)
+        };
+        let weight = |i: i32| match i {
+            0 => 1.0,
+            i if i == steps => 1.0,
+            i if i % 2 == 1 => 4.0,
+            _ => 2.0,
+        };
+        let sum: Complex64 = (0..=steps).map(|i| value(f64::from(i) * h) * weight(i)).sum();
+        (sum.re * h / 3.0, sum.im * h / 3.0)
+    }
+
+    /// The series to the fourth power against the integral it stands for (J. R. Carson 1926, equation 25):
+    /// within 0.00002 up to k = 0.5, within 0.0005 up to k = 1.
+    #[test]
+    fn the_series_is_carsons_integral() {
+        for k in [0.01, 0.05, 0.1, 0.25, 0.5, 0.75, 1.0] {
+            let bound = if k <= 0.5 { 2e-5 } else { 5e-4 };
+            for angle in [0.0, 0.3, 0.8, 1.2] {
+                let ((p, q), (p_true, q_true)) = (series(k, angle), integral(k, angle));
+                let off = (p - p_true).abs().max((q - q_true).abs());
+                assert!(off < bound, "k {k}, angle {angle}: {p:.6}, {q:.6}; {p_true:.6}, {q_true:.6}");
+            }
+        }
     }
 }

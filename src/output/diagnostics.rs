@@ -2,7 +2,7 @@
 
 use annotate_snippets::{AnnotationKind, Group, Level, Renderer, Snippet};
 
-use super::table::{Colour, WIDTH, printable};
+use super::table::{Colour, WIDTH, folded_to, printable};
 use crate::diagnostic::{Diagnostic, Diagnostics, Place, Severity};
 
 /// Diagnostics shown before the rest is counted.
@@ -32,7 +32,8 @@ fn shown(diagnostic: &Diagnostic, colour: Colour) -> String {
         Some(cell) => format!("{} (cell {cell})", p.file),
         None => p.file.clone(),
     });
-    let title = level.primary_title(printable(&diagnostic.message)).id(diagnostic.code.text());
+    let code = diagnostic.code.text();
+    let title = level.primary_title(paragraph(&diagnostic.message, code.len() + 12)).id(code);
     let mut group = match (place, row, &path) {
         (Some(place), Some(row), Some(path)) if !row.is_empty() => {
             let (start, end) = cell_span(place, row);
@@ -54,12 +55,18 @@ fn shown(diagnostic: &Diagnostic, colour: Colour) -> String {
             None => Group::with_title(title),
         },
     };
-    group = group.element(Level::HELP.message(printable(&diagnostic.cure)));
+    group = group.element(Level::HELP.message(paragraph(&diagnostic.cure, 10)));
     let renderer = match colour {
         Colour::Styled => Renderer::styled(),
         Colour::Plain => Renderer::plain(),
     };
     renderer.term_width(WIDTH).render(&[group])
+}
+
+/// A text folded so that it fits beside what stands before its lines.
+fn paragraph(text: &str, before: usize) -> String {
+    let folded = folded_to(WIDTH.saturating_sub(before), "", text);
+    folded.lines().map(str::trim).collect::<Vec<_>>().join("\n")
 }
 
 /// Bytes of the text found in its row: in its own cell where the row splits so, else where it first

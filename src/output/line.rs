@@ -3,7 +3,7 @@
 use std::fmt::Write as _;
 
 use super::csv::guarded;
-use super::table::{Cell, Column, Table, WIDTH, number};
+use super::table::{Cell, Column, Table, folded, number};
 use crate::catalog::{CAUTION, Conductor};
 use crate::study::construction::{ConstructionReport, Matrix};
 use crate::study::line::{Case, Circuit, Drop, Sizes, Wire};
@@ -66,25 +66,9 @@ fn list(text: &mut String, heading: &str, items: &[String]) {
     }
     let _ = writeln!(text, "{heading}");
     for item in items {
-        text.push_str(&folded(item));
+        text.push_str(&folded("  ", &format!("- {item}")));
     }
     text.push('\n');
-}
-
-/// An item with a dash, folded to the width.
-fn folded(item: &str) -> String {
-    let mut lines = String::new();
-    let mut line = "  -".to_string();
-    for word in item.split_whitespace() {
-        if line.chars().count() + 1 + word.chars().count() > WIDTH {
-            lines.push_str(&line);
-            lines.push('\n');
-            line = "   ".to_string();
-        }
-        line.push(' ');
-        line.push_str(word);
-    }
-    format!("{lines}{line}\n")
 }
 
 const MATRIX_COLUMNS: [&str; 8] = ["1", "2", "3", "4", "5", "6", "7", "8"];

@@ -137,14 +137,19 @@ const HANGING: &str = "      ";
 /// One paragraph on lines of at most [`WIDTH`] columns, wide characters counted as the terminal
 /// does; words longer than a line are cut. The first line begins with `indent`.
 pub(super) fn folded(indent: &str, text: &str) -> String {
+    folded_to(WIDTH, indent, text)
+}
+
+/// [`folded`] to another width.
+pub(super) fn folded_to(width: usize, indent: &str, text: &str) -> String {
     let text = printable(text);
     // No character has fewer bytes than columns, so most lines need no measuring.
-    if indent.len() + text.len() <= WIDTH {
+    if indent.len() + text.len() <= width {
         return format!("{indent}{text}\n");
     }
     let mut grid = Grid::new();
     grid.load_style(TableStyle::new());
-    grid.set_content_arrangement(ContentArrangement::Dynamic).set_width((WIDTH - HANGING.len()) as u16);
+    grid.set_content_arrangement(ContentArrangement::Dynamic).set_width((width - HANGING.len()) as u16);
     grid.add_row([text.as_ref()]);
     if let Some(column) = grid.column_mut(0) {
         column.set_padding((0, 0));

@@ -45,8 +45,10 @@ fn head(text: &mut String, report: &FlowReport) {
     text.push_str(&folded("", name));
     let _ = writeln!(
         text,
-        "Converged in {} iterations; largest current mismatch {:.1e} A by an independent check.\n",
-        report.iterations, report.mismatch_a
+        "Converged in {} iteration{}; largest current mismatch {:.1e} A by an independent check.\n",
+        report.iterations,
+        if report.iterations == 1 { "" } else { "s" },
+        report.mismatch_a
     );
 }
 
