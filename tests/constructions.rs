@@ -163,3 +163,17 @@ fn own_wires_are_used_by_constructions() {
     let earth = std::f64::consts::PI.powi(2) * 60.0 * 1e-7;
     assert!((primitive.re - 1e-3 - earth).abs() < 1e-12, "{primitive}");
 }
+
+/// Brine below high wires: the series does not hold there, and no difference is stated; at 100 ohm m it is small.
+#[test]
+fn the_series_is_compared_only_where_it_holds() {
+    let mut recipe = recipe(Kind::Overhead, "1/0 ACSR");
+    recipe.spacing = spacing(&[(0, 0.0, 90.0)]);
+    let difference = |rho: f64| {
+        let site = Conditions { earth_resistivity_ohm_m: rho, ..SITE };
+        let line = evaluate(&recipe, Catalog::built_in(), &[0], false, &site).expect("sound");
+        line.constants.expect("computed").series_difference_percent
+    };
+    assert_eq!(difference(0.1), None);
+    assert!(difference(100.0).is_some_and(|percent| percent < 2.0));
+}

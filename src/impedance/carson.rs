@@ -50,6 +50,11 @@ pub fn equivalent_depth_m(conditions: &Conditions) -> f64 {
 /// `k = K S sqrt(f / rho)` with `S` in metres.
 const K: f64 = 4.0 * std::f64::consts::PI * 2.236_067_977_499_79e-4;
 
+/// Carson's parameter `k` for an image at `image_m`: the series holds up to about 1.
+pub(super) fn series_parameter(image_m: f64, conditions: &Conditions) -> f64 {
+    K * image_m * (conditions.frequency_hz / conditions.earth_resistivity_ohm_m).sqrt()
+}
+
 /// Earth-return part of an impedance, ohms per metre: everything but the wire's own resistance.
 ///
 /// `distance_m` is the GMR of a wire for itself, the distance between two wires otherwise;
@@ -71,7 +76,7 @@ pub fn earth_return_ohm_per_m(
         EarthReturn::Series => {
             // A buried wire has its image as far above: the series is taken at the magnitude of the depth.
             let image = horizontal_m.hypot(heights_m).max(distance_m);
-            let k = K * image * (conditions.frequency_hz / conditions.earth_resistivity_ohm_m).sqrt();
+            let k = series_parameter(image, conditions);
             let angle = (horizontal_m.abs()).atan2(heights_m.abs());
             let (p, q) = series(k, angle);
             Complex64::new(

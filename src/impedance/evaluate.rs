@@ -200,9 +200,13 @@ impl Workings<'_> {
     fn computed(&mut self, layout: Layout) -> Matrices {
         match compute(&layout, EarthReturn::Modified, self.conditions) {
             Ok(constants) => {
+                let series = match constants.series_difference_percent {
+                    Some(percent) => format!("the series to the fourth power differs by at most {percent:.2} %"),
+                    None => "too conductive for wires so high: the series for a check does not hold, treat with caution".to_string(),
+                };
                 self.assume(format!(
-                    "Carson's equations, modified form, earth {} ohm m; the series to the fourth power differs by at most {:.2} %",
-                    self.conditions.earth_resistivity_ohm_m, constants.series_difference_percent
+                    "Carson's equations, modified form, earth {} ohm m; {series}",
+                    self.conditions.earth_resistivity_ohm_m
                 ));
                 self.assume(format!("conductors at {} C", self.recipe.temperature_c));
                 if constants.y_per_m.is_none() {

@@ -4,7 +4,7 @@ use std::fmt;
 
 use nalgebra::DMatrix;
 
-use super::carson::{Conditions, EarthReturn, earth_return_ohm_per_m};
+use super::carson::{Conditions, EarthReturn, earth_return_ohm_per_m, series_parameter};
 use super::reduce::to_slots;
 use super::shunt::overhead;
 use crate::math::{Complex64, PhaseMatrix};
@@ -121,8 +121,9 @@ pub struct LineConstants {
     pub z_per_m: PhaseMatrix,
     /// Shunt admittance over slots, siemens per metre; `None` where a diameter is missing.
     pub y_per_m: Option<PhaseMatrix>,
-    /// Greatest difference that the higher-order series makes to an element of `z_per_m`, percent of that element.
-    pub series_difference_percent: f64,
+    /// Greatest difference that the higher-order series makes to an element of `z_per_m`, percent of that element;
+    /// `None` where the series does not hold: an image too far away for the earth's resistivity (`k` above 1).
+    pub series_difference_percent: Option<f64>,
 }
 
 /// Matrices of a layout.
@@ -146,7 +147,11 @@ pub fn compute(
         EarthReturn::Modified => EarthReturn::Series,
         EarthReturn::Series => EarthReturn::Modified,
     };
-    let z_other = slots(&self::primitive(&layout.wires, other, conditions))?;
+    let z_other = if series_holds(&layout.wires, conditions) {
+        slots(&self::primitive(&layout.wires, other, conditions)).ok()
+    } else {
+        None
+    };
     let y_per_m = match &layout.shunt {
         Some(y) => Some(*y),
         None => overhead(&layout.wires, &targets, conditions),
@@ -156,8 +161,14 @@ pub fn compute(
         primitive,
         z_per_m,
         y_per_m,
-        series_difference_percent: difference_percent(&z_per_m, &z_other),
+        series_difference_percent: z_other.map(|other| difference_percent(&z_per_m, &other)),
     })
+}
+
+/// True where `k` is at most 1 for the image farthest away.
+fn series_holds(wires: &[Wire], conditions: &Conditions) -> bool {
+    let images = wires.iter().flat_map(|a| wires.iter().map(|b| (a.x_m - b.x_m).hypot(a.y_m + b.y_m)));
+    series_parameter(images.fold(0.0, f64::max), conditions) <= 1.0
 }
 
 fn difference_percent(a: &PhaseMatrix, b: &PhaseMatrix) -> f64 {

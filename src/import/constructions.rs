@@ -186,7 +186,7 @@ fn report(
             RecipeFault::Geometry(_) => (Code::BadGeometry, "spacing"),
             RecipeFault::MissingDatum { .. } => (Code::MissingDatum, "phase_conductor"),
             RecipeFault::NotInConduit { .. } => (Code::UnknownConductor, "phase_conductor"),
-            RecipeFault::NegativeReturn => (Code::MissingDatum, "kind"),
+            RecipeFault::NegativeReturn => (Code::Conflict, "kind"),
             RecipeFault::NoPlace { .. } => (Code::UnknownSpacing, "spacing"),
             RecipeFault::NoNeutral => (Code::ConductorMismatch, "neutral_conductor"),
             RecipeFault::NoSequence => (Code::MissingValue, "kind"),

@@ -105,6 +105,7 @@ fn every_fault_of_a_construction_has_its_words() {
             ),
         ),
         ("conduit without such a wire", told("w,conduit,95 mm2 copper,,\n", SPACINGS, none)),
+        ("conduit of a size that a gauge shares", told("w,conduit,10 mm2 copper,,\n", SPACINGS, none)),
         ("sequence incomplete", told("w,sequence,,,\n", SPACINGS, none)),
         ("kind misspelt", told("w,overhaed,336.4 26/7 ACSR,4/0 6/1 ACSR,pole\n", SPACINGS, none)),
         ("kind missing", told("w,,336.4 26/7 ACSR,4/0 6/1 ACSR,pole\n", SPACINGS, none)),
