@@ -254,7 +254,6 @@ fn every_group_agrees_with_the_nodal_method() {
     let mut worst = 0.0f64;
     for case in cases {
         let found = compare(&format!("{case:?}"), &case.network());
-        // Bolder loads would hide a wrong winding behind a collapse; none would show nothing.
         worst = worst.max(found.worst_pu);
     }
     println!("worst {worst:.1e} of nominal");

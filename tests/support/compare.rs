@@ -45,7 +45,11 @@ pub fn compare(label: &str, network: &Network) -> Compared {
             let (a, b) = (solution.volts[i][c.slot()], other.volts[i][c.slot()]);
             let off = (a - b).norm() / node.nominal_phase_volts();
             let name = &node.name;
-            assert!(off < TOLERANCE, "{label}, node {name} {c}: {a} and {b}, {off:e} of nominal");
+            let followed = other.followed;
+            assert!(
+                off < TOLERANCE,
+                "{label}, node {name} {c}: {a} and {b}, {off:e} of nominal (followed from no load: {followed})"
+            );
             found.worst_pu = found.worst_pu.max(off);
             if c != Conductor::N {
                 found.lowest_pu = found.lowest_pu.min(a.norm() / node.nominal_phase_volts());

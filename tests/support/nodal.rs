@@ -1,6 +1,7 @@
 //! A second way to solve a network, for comparison: nodal admittance of every conductor terminal,
 //! with a current unknown for every ideal element and a voltage unknown for every star point, in
-//! rectangular coordinates by Newton's method and dense LU.
+//! rectangular coordinates by Newton's method and dense LU. Loads are raised from nothing to all,
+//! so that of several solutions it is the one that no load leads to: the highest voltage.
 //!
 //! Written from the equations in the documentation of `fourwire::network`; it uses the network's
 //! data and nothing of the solver.
@@ -14,6 +15,10 @@ use fourwire::network::{
 };
 use nalgebra::{DMatrix, DVector};
 
+#[path = "newton.rs"]
+mod newton;
+use newton::{at, follow};
+
 /// Solved voltages by node and slot, current drawn from the source, and total losses.
 pub struct NodalSolution {
     /// Volts to earth, slots a, b, c, n.
@@ -22,6 +27,8 @@ pub struct NodalSolution {
     pub source_amps: [Complex64; 4],
     /// Source power less power drawn by loads and capacitors, volt-amperes.
     pub losses: Complex64,
+    /// Whether the solution was followed from no load to full load without a leap.
+    pub followed: bool,
 }
 
 /// One end of something: an unknown voltage, or earth.
@@ -54,10 +61,20 @@ impl Element {
     }
 }
 
-/// Sparse complex rows of the linear part: `sum y x = right`.
+/// A term of the linear part: `value * (x[plus] - x[minus])` in one row. The difference is taken
+/// first: summed products of voltage and admittance would leave, by rounding, a shunt to earth
+/// that a side with hardly any earth feels.
+struct Term {
+    row: usize,
+    plus: Terminal,
+    minus: Terminal,
+    value: Complex64,
+}
+
+/// Sparse complex rows of the linear part: `sum value (x - x') = right`.
 struct System {
     count: usize,
-    linear: Vec<(usize, usize, Complex64)>,
+    linear: Vec<Term>,
     right: Vec<Complex64>,
     elements: Vec<Element>,
 }
@@ -70,17 +87,19 @@ impl System {
     }
 
     fn add(&mut self, row: Terminal, column: Terminal, value: Complex64) {
-        if let (Some(row), Some(column)) = (row, column) {
-            self.linear.push((row, column, value));
+        self.difference(row, [column, None], value);
+    }
+
+    fn difference(&mut self, row: Terminal, [plus, minus]: [Terminal; 2], value: Complex64) {
+        if let Some(row) = row {
+            self.linear.push(Term { row, plus, minus, value });
         }
     }
 
     /// Admittance between two terminals.
     fn admittance(&mut self, a: Terminal, b: Terminal, y: Complex64) {
-        self.add(a, a, y);
-        self.add(b, b, y);
-        self.add(a, b, -y);
-        self.add(b, a, -y);
+        self.difference(a, [a, b], y);
+        self.difference(b, [b, a], y);
     }
 }
 
@@ -108,8 +127,8 @@ pub fn solve_nodal(network: &Network) -> Option<NodalSolution> {
         add_branch(network, branch, &numbering, &mut system);
     }
     add_shunts(network, &numbering, &mut system);
-    let x = newton(&system)?;
-    Some(gather(network, &numbering, &source, &system, &x))
+    let (x, followed) = follow(&system)?;
+    Some(gather(network, &numbering, &source, &system, &x, followed))
 }
 
 fn add_supply(network: &Network, numbering: &Numbering, system: &mut System) -> HashMap<Conductor, usize> {
@@ -143,8 +162,9 @@ fn add_branch(network: &Network, branch: &Branch, numbering: &Numbering, system:
                 for (j, &q) in carried.iter().enumerate() {
                     let half = y[(p.slot(), q.slot())] / 2.0;
                     for (end, other) in [(branch.from, branch.to), (branch.to, branch.from)] {
-                        system.add(numbering.at(end, p), numbering.at(end, q), series[(i, j)] + half);
-                        system.add(numbering.at(end, p), numbering.at(other, q), -series[(i, j)]);
+                        let across = [numbering.at(end, q), numbering.at(other, q)];
+                        system.difference(numbering.at(end, p), across, series[(i, j)]);
+                        system.add(numbering.at(end, p), numbering.at(end, q), half);
                     }
                 }
             }
@@ -155,8 +175,7 @@ fn add_branch(network: &Network, branch: &Branch, numbering: &Numbering, system:
                 let (from, to) = (numbering.at(branch.from, c), numbering.at(branch.to, c));
                 system.add(from, current, Complex64::from(1.0));
                 system.add(to, current, Complex64::from(-1.0));
-                system.add(current, from, Complex64::from(1.0));
-                system.add(current, to, Complex64::from(-1.0));
+                system.difference(current, [from, to], Complex64::from(1.0));
             }
         }
         BranchKind::Regulator(bank) => {
@@ -228,10 +247,8 @@ fn add_transformer(t: &Transformer, branch: &Branch, numbering: &Numbering, syst
         let g = to.map(|end| end.map_or(to_star, |c| numbering.at(branch.to, c)));
         // Into the from winding's start: (vf/t - vt) y/t + y0 vf; into the to winding's start: -(vf/t - vt) y.
         let mut winding = |row: [Terminal; 2], column: [Terminal; 2], value: Complex64| {
-            system.add(row[0], column[0], value);
-            system.add(row[0], column[1], -value);
-            system.add(row[1], column[0], -value);
-            system.add(row[1], column[1], value);
+            system.difference(row[0], column, value);
+            system.difference(row[1], column, -value);
         };
         winding(f, f, y / (ratio * ratio) + y0);
         winding(f, g, -y / ratio);
@@ -328,82 +345,13 @@ fn add_shunts(network: &Network, numbering: &Numbering, system: &mut System) {
     }
 }
 
-fn at(x: &DVector<f64>, terminal: Terminal) -> Complex64 {
-    terminal.map_or(Complex64::default(), |k| Complex64::new(x[2 * k], x[2 * k + 1]))
-}
-
-/// Adds the real 2 x 2 block of a complex coefficient.
-fn block(matrix: &mut DMatrix<f64>, row: usize, column: usize, value: Complex64) {
-    matrix[(2 * row, 2 * column)] += value.re;
-    matrix[(2 * row, 2 * column + 1)] -= value.im;
-    matrix[(2 * row + 1, 2 * column)] += value.im;
-    matrix[(2 * row + 1, 2 * column + 1)] += value.re;
-}
-
-fn newton(system: &System) -> Option<DVector<f64>> {
-    let size = 2 * system.count;
-    let mut linear = DMatrix::zeros(size, size);
-    for &(row, column, value) in &system.linear {
-        block(&mut linear, row, column, value);
-    }
-    let mut right = DVector::zeros(size);
-    for (k, value) in system.right.iter().enumerate() {
-        right[2 * k] = value.re;
-        right[2 * k + 1] = value.im;
-    }
-    let scale = right.amax().max(1.0);
-    let mut x = linear.clone().lu().solve(&right)?;
-    let mut last = f64::INFINITY;
-    for _ in 0..60 {
-        let mut residual = &linear * &x - &right;
-        let mut jacobian = linear.clone();
-        for element in &system.elements {
-            let u = at(&x, element.from) - at(&x, element.to);
-            add_element(element, u, &mut residual, &mut jacobian);
-        }
-        let step = jacobian.lu().solve(&residual)?;
-        // Voltage steps of more than a third of the source are cut: the start is far from a loaded network.
-        let voltages = step.amax() / scale;
-        let factor = if voltages > 0.3 { 0.3 / voltages } else { 1.0 };
-        x -= &step * factor;
-        // Quadratic convergence ends in rounding: no smaller step than the last, and a small one, is the end.
-        if voltages < 1e-9 && voltages >= 0.1 * last {
-            return Some(x);
-        }
-        last = voltages;
-    }
-    None
-}
-
-fn add_element(element: &Element, u: Complex64, residual: &mut DVector<f64>, jacobian: &mut DMatrix<f64>) {
-    let (g, slope) = element.gain(u.norm_sqr());
-    let c = element.power.conj();
-    let current = c * u * g;
-    // dI = c (g du + u g' (2 ur dur + 2 ui dui)).
-    let by_re = c * (Complex64::from(g) + u * (2.0 * slope * u.re));
-    let by_im = c * (Complex64::new(0.0, g) + u * (2.0 * slope * u.im));
-    let ends = [(element.from, 1.0), (element.to, -1.0)];
-    for (row, row_sign) in ends {
-        let Some(row) = row else { continue };
-        residual[2 * row] += row_sign * current.re;
-        residual[2 * row + 1] += row_sign * current.im;
-        for (column, column_sign) in ends {
-            let Some(column) = column else { continue };
-            let sign = row_sign * column_sign;
-            jacobian[(2 * row, 2 * column)] += sign * by_re.re;
-            jacobian[(2 * row + 1, 2 * column)] += sign * by_re.im;
-            jacobian[(2 * row, 2 * column + 1)] += sign * by_im.re;
-            jacobian[(2 * row + 1, 2 * column + 1)] += sign * by_im.im;
-        }
-    }
-}
-
 fn gather(
     network: &Network,
     numbering: &Numbering,
     source: &HashMap<Conductor, usize>,
     system: &System,
     x: &DVector<f64>,
+    followed: bool,
 ) -> NodalSolution {
     let volts: Vec<[Complex64; 4]> = numbering.0.iter().map(|slots| slots.map(|t| at(x, t))).collect();
     let source_amps = Conductor::ALL.map(|c| at(x, source.get(&c).copied()));
@@ -426,5 +374,5 @@ fn gather(
                 Complex64::new(0.0, capacitor.vars / count * u.norm_sqr() / capacitor.rated_volts.powi(2));
         }
     }
-    NodalSolution { volts, source_amps, losses: drawn - loads - capacitors }
+    NodalSolution { volts, source_amps, losses: drawn - loads - capacitors, followed }
 }
