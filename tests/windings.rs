@@ -37,7 +37,7 @@ impl Case {
     fn near_and_far(&self) -> Option<(Winding, Winding)> {
         match self.group {
             VectorGroup::Three { from, to, .. } => Some(if self.forward { (from, to) } else { (to, from) }),
-            VectorGroup::Single { .. } => None,
+            _ => None,
         }
     }
 
@@ -47,7 +47,7 @@ impl Case {
 
     fn far_conductors(&self) -> Conductors {
         let star = match (self.near_and_far(), self.terminals) {
-            (Some((_, far)), _) => far == Winding::StarNeutral,
+            (Some((_, far)), _) => far.has_neutral(),
             (None, Some(Connection::Star(_))) => true,
             _ => false,
         };
@@ -58,7 +58,10 @@ impl Case {
     /// Whether a load from phase to neutral has a way back on the far side.
     fn takes_star_loads(&self) -> bool {
         match (self.near_and_far(), self.terminals) {
-            (Some((near, far)), _) => far == Winding::StarNeutral && near != Winding::Star,
+            (Some((near, far)), _) => {
+                far == Winding::ZigzagNeutral
+                    || far == Winding::StarNeutral && near != Winding::Star && !near.is_zigzag()
+            }
             (None, Some(Connection::Star(_))) => true,
             _ => false,
         }
@@ -103,7 +106,7 @@ impl Case {
         let (from, to) = if self.forward { ("A", "B") } else { ("B", "A") };
         // Earthing by ohms only where a star point goes to earth.
         let ohms = |winding: Winding, carried: Conductors, ohm: f64| {
-            (winding == Winding::StarNeutral && !carried.has_neutral()).then_some(ohm)
+            (winding.has_neutral() && !carried.has_neutral()).then_some(Complex64::from(ohm))
         };
         let (near_ohm, far_ohm) = self.near_and_far().map_or((None, None), |(near, far)| {
             (ohms(near, self.near_conductors(), 3.0), ohms(far, self.far_conductors(), 0.7))
@@ -118,12 +121,13 @@ impl Case {
             from_volts,
             to_volts,
             group: self.group,
-            terminals: self.terminals,
+            terminals: self.terminals.map(|t| [t; 2]),
             r_pu: 0.012,
             x_pu: 0.045,
             no_load_watts: if self.no_load_shunt { 700.0 } else { 0.0 },
             magnetizing_pu: if self.no_load_shunt { 0.006 } else { 0.0 },
             tap_pu: TAP_PU,
+            from_tap_pu: 0.0,
             from_earth_ohm,
             to_earth_ohm,
             origin: None,
@@ -216,13 +220,14 @@ fn load(draft: &mut Draft, name: String, node: &str, connection: Connection, wat
     });
 }
 
-/// The 54 groups of a three-phase bank, and a unit of either polarity on every pair of terminals.
+/// The 126 groups of a three-phase bank, and a unit of either polarity on every pair of terminals.
 fn groups() -> Vec<(VectorGroup, Option<Connection>)> {
-    let windings = [Winding::Star, Winding::StarNeutral, Winding::Delta];
+    use Winding::{Delta, Star, StarNeutral, Zigzag, ZigzagNeutral};
+    let windings = [Star, StarNeutral, Delta, Zigzag, ZigzagNeutral];
     let mut all = Vec::new();
     for from in windings {
-        for to in windings {
-            let odd = u8::from((from == Winding::Delta) != (to == Winding::Delta));
+        for to in windings.into_iter().filter(|to| !(from.is_zigzag() && to.is_zigzag())) {
+            let odd = u8::from(from.is_star() != to.is_star());
             all.extend((0..6).map(|k| (VectorGroup::Three { from, to, clock: 2 * k + odd }, None)));
         }
     }
@@ -250,7 +255,7 @@ fn cases(loaded: bool) -> Vec<Case> {
 #[test]
 fn every_group_agrees_with_the_nodal_method() {
     let cases = cases(true);
-    assert_eq!(cases.len(), 8 * (54 + 12));
+    assert_eq!(cases.len(), 8 * (126 + 12));
     let mut worst = 0.0f64;
     for case in cases {
         let found = compare(&format!("{case:?}"), &case.network());
@@ -273,7 +278,7 @@ fn unloaded_the_clock_number_is_the_lag() {
             let v = solution.volts[node.index()];
             v[p.slot()] - v[q.slot()]
         };
-        let (VectorGroup::Three { clock, .. } | VectorGroup::Single { clock }) = case.group;
+        let (VectorGroup::Three { clock, .. } | VectorGroup::Single { clock }) = case.group else { continue };
         let pairs: Vec<(Conductor, Conductor)> = match case.terminals {
             None => Conductor::PHASES.map(|p| (p, p.next())).to_vec(),
             Some(connection) => connection.pairs().collect(),

@@ -46,6 +46,9 @@ pub(super) fn conductors(text: &str) -> Result<Conductors, PhaseFault> {
     if is_date(text) {
         return Err(PhaseFault::Date);
     }
+    if let Some(set) = split(text) {
+        return set;
+    }
     let mut set = Conductors::NONE;
     let mut naming = None;
     let mut after_l = false;
@@ -77,6 +80,26 @@ pub(super) fn conductors(text: &str) -> Result<Conductors, PhaseFault> {
         return Err(PhaseFault::Unknown('l'));
     }
     if set.is_empty() { Err(PhaseFault::Nothing) } else { Ok(set) }
+}
+
+/// Conductors behind a centre tap: `s1 n s2`; `None` where the text does not speak of these.
+fn split(text: &str) -> Option<Result<Conductors, PhaseFault>> {
+    let plain: String = text.chars().filter(|c| !is_separator(*c)).flat_map(char::to_lowercase).collect();
+    if !plain.contains("s1") && !plain.contains("s2") || plain.contains(['r', 't']) {
+        return None;
+    }
+    let mut set = Conductors::NONE;
+    let mut rest = plain.as_str();
+    while !rest.is_empty() {
+        let known = [("s1", Conductor::S1), ("s2", Conductor::S2), ("n", Conductor::N)];
+        let found = known.into_iter().find_map(|(name, c)| Some((rest.strip_prefix(name)?, c)));
+        let Some((after, conductor)) = found else { return Some(Err(PhaseFault::Mixed)) };
+        if set.has(conductor) {
+            return Some(Err(PhaseFault::Twice(conductor)));
+        }
+        (set, rest) = (set.with(conductor), after);
+    }
+    Some(Ok(set))
 }
 
 /// A date as a whole, but not `1 - 2 - 3`.
@@ -151,6 +174,10 @@ mod tests {
             ("a\u{a0}+\u{a0}n", "an"),
             ("1-2", "ab"),
             ("1 - 2 - 3", "abc"),
+            ("s1 n s2", "s1ns2"),
+            ("S1-S2", "s1s2"),
+            ("s2n", "s2n"),
+            ("R-S-T", "abc"),
         ] {
             assert_eq!(read(text).as_deref(), Ok(set), "{text}");
         }
@@ -162,6 +189,8 @@ mod tests {
             ("aa", PhaseFault::Twice(Conductor::A)),
             ("aL2", PhaseFault::Mixed),
             ("a2", PhaseFault::Mixed),
+            ("s1a", PhaseFault::Mixed),
+            ("s1s1", PhaseFault::Twice(Conductor::S1)),
             ("abx", PhaseFault::Unknown('x')),
             ("ag", PhaseFault::Earth),
             ("abc+PE", PhaseFault::Earth),
@@ -188,6 +217,9 @@ mod tests {
             ("bc", "bc"),
             ("ac", "ca"),
             ("abc", "abc"),
+            ("s1ns2", "s1ns2"),
+            ("s1n", "s1n"),
+            ("s1s2", "s1s2"),
         ] {
             assert_eq!(joined(text).as_deref(), Some(wanted), "{text}");
         }

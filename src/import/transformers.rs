@@ -7,6 +7,7 @@ use super::row::Row;
 use super::schema::{Column, Range, Schema};
 use super::table::read_table;
 use crate::diagnostic::{Code, FileId, nearest};
+use crate::math::Complex64;
 use crate::network::{Conductors, Connection, TransformerRecord, VectorGroup};
 use crate::units::KILO;
 
@@ -25,6 +26,10 @@ const MAGNETIZING: usize = 11;
 const TAP: usize = 12;
 const EARTH_FROM: usize = 13;
 const EARTH_TO: usize = 14;
+const PHASES_TO: usize = 15;
+const TAP_FROM: usize = 16;
+const EARTH_X_FROM: usize = 17;
+const EARTH_X_TO: usize = 18;
 
 /// Per unit in one percent.
 const PERCENT: f64 = 0.01;
@@ -58,13 +63,20 @@ static TRANSFORMERS: Schema = Schema {
             .range(Range::NotNegative),
         Column::number("earth_ohm_to", 1.0, "ohm", "the earthing of the to-side neutral")
             .range(Range::NotNegative),
+        Column::text("phases_to", "the terminals of the to side"),
+        Column::number("tap_from_percent", PERCENT, "%", "the tap of the from winding")
+            .range(Range::Within(-30.0, 30.0)),
+        Column::number("earth_x_ohm_from", 1.0, "ohm", "the reactance that earths the from-side neutral")
+            .range(Range::NotNegative),
+        Column::number("earth_x_ohm_to", 1.0, "ohm", "the reactance that earths the to-side neutral")
+            .range(Range::NotNegative),
     ],
 };
 
 /// Groups named in messages; every group of these windings is read.
-const GROUPS: [&str; 14] = [
+const GROUPS: [&str; 21] = [
     "YNyn0", "Yyn0", "YNy0", "Yy0", "Dyn1", "Dyn5", "Dyn11", "Dy11", "Yd1", "YNd1", "YNd11", "Yd11", "Dd0",
-    "Ii0",
+    "Dzn0", "Yzn1", "Yzn5", "Yzn11", "Ii0", "Iin0", "YNa0", "Ia0",
 ];
 
 /// Reads the rows of `transformers.csv`.
@@ -98,8 +110,9 @@ fn read_row(row: &mut Row<'_>, unique: &mut Unique) -> Option<TransformerRecord>
         no_load_watts: row.number_or(NO_LOAD, 0.0),
         magnetizing_pu: row.number_or(MAGNETIZING, 0.0),
         tap_pu: row.number_or(TAP, 0.0),
-        from_earth_ohm: row.optional_number(EARTH_FROM),
-        to_earth_ohm: row.optional_number(EARTH_TO),
+        from_tap_pu: row.number_or(TAP_FROM, 0.0),
+        from_earth_ohm: earthing(row, EARTH_FROM, EARTH_X_FROM),
+        to_earth_ohm: earthing(row, EARTH_TO, EARTH_X_TO),
         transformer: transformer?,
         from: from?,
         to: to?,
@@ -112,6 +125,12 @@ fn read_row(row: &mut Row<'_>, unique: &mut Unique) -> Option<TransformerRecord>
         x_pu: x_pu?,
         origin: Some(row.origin),
     })
+}
+
+/// Impedance between a neutral point and earth; `None` where neither part is given.
+fn earthing(row: &mut Row<'_>, r: usize, x: usize) -> Option<Complex64> {
+    let (r, x) = (row.optional_number(r), row.optional_number(x));
+    (r.is_some() || x.is_some()).then(|| Complex64::new(r.unwrap_or(0.0), x.unwrap_or(0.0)))
 }
 
 fn group(row: &mut Row<'_>) -> Option<VectorGroup> {
@@ -140,49 +159,75 @@ fn group_cure(text: &str) -> String {
             clocks.join(", ")
         );
     }
-    if lower.contains('z') {
-        return "zigzag windings are not solved in this version".to_owned();
+    if lower.matches('z').count() == 2 {
+        return "give one zigzag side; its other side is a star or a delta".to_owned();
     }
     match nearest(text, GROUPS) {
         Some(near) => format!("did you mean `{near}`?"),
-        None => "write the symbols of the from and the to side (Y, YN or D) and the clock number".to_owned(),
+        None => "write the symbols of the from and the to side (Y, YN, D, Z or ZN) and the clock number"
+            .to_owned(),
     }
 }
 
 /// Terminals of a single-phase unit; `Some(None)` for a three-phase bank, `None` after a report.
-fn terminals(row: &mut Row<'_>, group: VectorGroup) -> Option<Option<Connection>> {
-    match group {
-        VectorGroup::Three { .. } => {
-            if row.is_filled(PHASES) {
-                let set = row.conductors(PHASES)?;
+fn terminals(row: &mut Row<'_>, group: VectorGroup) -> Option<Option<[Connection; 2]>> {
+    if !group.is_single() {
+        for column in [PHASES, PHASES_TO] {
+            if row.is_filled(column) {
+                let set = row.conductors(column)?;
                 if set.phases() != Conductors::ABC {
                     let message = format!("group {group} is a three-phase bank, but only `{set}` is named");
-                    let cure = "leave `phases` blank or write `abc`; a single-phase unit has the group Ii0";
-                    row.error(Code::BadPhases, PHASES, message, cure);
+                    let cure =
+                        "leave this column blank or write `abc`; a single-phase unit has the group Ii0";
+                    row.error(Code::BadPhases, column, message, cure);
                     return None;
                 }
             }
-            Some(None)
         }
-        VectorGroup::Single { .. } => {
-            if !row.is_filled(PHASES) {
-                let message = format!("a single-phase transformer ({group}) needs its two terminals");
-                let cure = "fill in `phases` with the two terminals, such as `an` or `ab`";
-                row.error(Code::MissingValue, PHASES, message, cure);
-                return None;
-            }
-            let set = row.conductors(PHASES)?;
-            match phases::connection(set).filter(|c| c.elements() == 1) {
-                Some(connection) => Some(Some(connection)),
-                None => {
-                    let message = format!(
-                        "a single-phase transformer ({group}) has two terminals, but `{set}` is given"
-                    );
-                    let cure = "write the two terminals, such as `an` or `ab`";
-                    row.error(Code::BadPhases, PHASES, message, cure);
-                    None
-                }
-            }
+        return Some(None);
+    }
+    if !row.is_filled(PHASES) {
+        let message = format!("a single-phase transformer ({group}) needs its two terminals");
+        let cure = "fill in `phases` with the two terminals, such as `an` or `ab`";
+        row.error(Code::MissingValue, PHASES, message, cure);
+        return None;
+    }
+    let from = pair(row, PHASES, group)?;
+    let to = match group {
+        VectorGroup::CentreTap { .. } => centre_tap(row)?,
+        _ if row.is_filled(PHASES_TO) => pair(row, PHASES_TO, group)?,
+        _ => from,
+    };
+    if group == VectorGroup::SingleAuto && (from != to || !matches!(from, Connection::Star(_))) {
+        let message = "a single-phase autotransformer shares its neutral terminal".to_owned();
+        let cure = "write `an`, `bn` or `cn` in `phases` and leave `phases_to` blank";
+        row.error(Code::BadPhases, PHASES, message, cure);
+        return None;
+    }
+    Some(Some([from, to]))
+}
+
+/// The two terminals in a cell.
+fn pair(row: &mut Row<'_>, column: usize, group: VectorGroup) -> Option<Connection> {
+    let set = row.conductors(column)?;
+    let pair = phases::connection(set).filter(|c| c.elements() == 1);
+    if pair.is_none() {
+        let message = format!("a single-phase transformer ({group}) has two terminals, but `{set}` is given");
+        row.error(Code::BadPhases, column, message, "write the two terminals, such as `an` or `ab`");
+    }
+    pair
+}
+
+/// The to side of a centre-tapped unit is always s1, n, s2.
+fn centre_tap(row: &mut Row<'_>) -> Option<Connection> {
+    let wanted = Connection::Star(Conductors::S1S2);
+    if row.is_filled(PHASES_TO) {
+        let set = row.conductors(PHASES_TO)?;
+        if phases::connection(set) != Some(wanted) {
+            let message = format!("a centre-tapped winding has the conductors s1, n, s2, not `{set}`");
+            row.error(Code::BadPhases, PHASES_TO, message, "leave it blank, or write `s1ns2`");
+            return None;
         }
     }
+    Some(wanted)
 }

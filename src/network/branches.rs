@@ -3,7 +3,7 @@
 use std::collections::HashMap;
 
 use super::build::{Builder, Joined};
-use super::conductor::Conductor;
+use super::conductor::{Conductor, Conductors};
 use super::draft::{Across, Construction, LineRecord, Name, RegulatorRecord, SwitchState, TransformerRecord};
 use super::graph::{RawKind, place};
 use super::model::{Branch, BranchId, BranchKind, ConstructionId, Line, NodeId};
@@ -48,7 +48,7 @@ impl Builder<'_> {
                 continue;
             };
             let fitting =
-                choices.iter().copied().find(|&i| draft.constructions[i].conductors == line.conductors);
+                choices.iter().copied().find(|&i| fits(draft.constructions[i].conductors, line.conductors));
             if fitting.is_none() {
                 self.conductor_mismatch(line, choices);
             }
@@ -107,10 +107,13 @@ impl Builder<'_> {
                 }
                 RawKind::Switch(_) => BranchKind::Switch,
                 RawKind::Bank(bank) => BranchKind::Regulator(self.bank(&graph.banks[bank])),
-                RawKind::Transformer(i) => BranchKind::Transformer(transformer(
-                    &self.draft.transformers[i],
-                    joined.carried.neutrals[b],
-                )),
+                RawKind::Transformer(i) => {
+                    let neutrals = joined.carried.neutrals[b];
+                    let mut units =
+                        graph.units_of(i).map(|i| transformer(&self.draft.transformers[i], neutrals));
+                    let Some(first) = units.next() else { continue };
+                    BranchKind::Transformer(Transformer { mates: units.collect(), ..first })
+                }
             };
             let [from_conductors, to_conductors] = joined.carried.ends[b];
             let id = BranchId(parts.branches.len() as u32);
@@ -208,6 +211,11 @@ impl Builder<'_> {
     }
 }
 
+/// A construction serves the conductors it is given for; behind a centre tap s1, s2 take the places of a, b.
+fn fits(given: Conductors, wanted: Conductors) -> bool {
+    given == wanted || wanted.is_split() && given == wanted.in_slots()
+}
+
 fn transformer(record: &TransformerRecord, neutrals: [NeutralPoint; 2]) -> Transformer {
     Transformer {
         group: record.group,
@@ -220,7 +228,9 @@ fn transformer(record: &TransformerRecord, neutrals: [NeutralPoint; 2]) -> Trans
         no_load_watts: record.no_load_watts,
         magnetizing_pu: record.magnetizing_pu,
         tap_pu: record.tap_pu,
+        from_tap_pu: record.from_tap_pu,
         from_neutral: neutrals[0],
         to_neutral: neutrals[1],
+        mates: Vec::new(),
     }
 }

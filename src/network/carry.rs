@@ -3,9 +3,10 @@
 use super::conductor::{Conductor, Conductors, Connection};
 use super::draft::{Across, Draft, TransformerRecord};
 use super::graph::{Graph, RawFeed, RawKind, Tree, place, written_conductors};
-use super::model::End;
+use super::model::{End, nominal_phase_volts};
 use super::transformer::{NeutralPoint, VectorGroup, Winding};
 use crate::diagnostic::{Code, Diagnostics};
+use crate::math::Complex64;
 use crate::units::SQRT_3;
 
 /// A rated voltage may differ from the nominal voltage of its node by this share.
@@ -87,7 +88,7 @@ impl Walk<'_> {
     fn follow(&mut self, node: usize, feed: RawFeed) {
         let branch = &self.graph.branches[feed.branch];
         let carried = match branch.kind {
-            RawKind::Transformer(i) => return self.transformer(node, feed, &self.draft.transformers[i]),
+            RawKind::Transformer(i) => return self.transformer(node, feed, i),
             RawKind::Bank(bank) => self.bank_conductors(bank, feed),
             RawKind::Line(_) | RawKind::Switch(_) => {
                 written_conductors(self.draft, branch.kind).unwrap_or(Conductors::NONE)
@@ -162,7 +163,7 @@ impl Walk<'_> {
             RawKind::Line(_) | RawKind::Switch(_) => {
                 written_conductors(self.draft, kind).map(|c| c.to_string())
             }
-            RawKind::Transformer(i) => self.draft.transformers[i].terminals.map(|t| t.to_string()),
+            RawKind::Transformer(i) => self.draft.transformers[i].terminals.map(|[from, _]| from.to_string()),
             RawKind::Bank(bank) => {
                 self.graph.banks[bank].first().map(|&i| self.draft.regulators[i].phases.to_string())
             }
@@ -170,46 +171,82 @@ impl Walk<'_> {
         .unwrap_or_default()
     }
 
-    fn transformer(&mut self, node: usize, feed: RawFeed, record: &TransformerRecord) {
-        let sides = [Side::from(record), Side::to(record)];
-        let (near, far) = match feed.upstream {
-            End::From => (&sides[0], &sides[1]),
-            End::To => (&sides[1], &sides[0]),
-        };
+    fn transformer(&mut self, node: usize, feed: RawFeed, first: usize) {
+        let records: Vec<&TransformerRecord> =
+            self.graph.units_of(first).map(|i| &self.draft.transformers[i]).collect();
+        let record = records[0];
+        let mut sides = [Side::bank(&records, End::From), Side::bank(&records, End::To)];
+        if feed.upstream == End::To {
+            sides.swap(0, 1);
+        }
+        let [near, far] = &sides;
         self.require(near.phases, feed);
-        let near_point = self.neutral_point(near, feed.parent, record);
-        self.check_voltage(near, far, feed);
+        for unit in &records {
+            self.check_voltage(unit, feed);
+        }
+        self.check_far_voltages(&records, feed);
         let mut conductors = far.phases;
-        if far.has_neutral && self.wants_neutral(node) {
+        if far.has_neutral && (far.phases.is_split() || self.wants_neutral(node)) {
             conductors = conductors.with(Conductor::N);
         }
         self.carried.conductors[node] = conductors;
         self.carried.nominal_volts[node] = far.nominal_volts();
-        self.carried.side[node] = node;
+        let auto = matches!(record.group, VectorGroup::Auto | VectorGroup::SingleAuto);
+        self.carried.side[node] = if auto { self.carried.side[feed.parent] } else { node };
+        let near_point = self.neutral_point(near, feed.parent, record);
         let far_point = self.neutral_point(far, node, record);
         let near_conductors = match near_point {
             NeutralPoint::Conductor => near.phases.with(Conductor::N),
             _ => near.phases,
         };
-        let (ends, points) = match feed.upstream {
+        let (ends, mut points) = match feed.upstream {
             End::From => ([near_conductors, conductors], [near_point, far_point]),
             End::To => ([conductors, near_conductors], [far_point, near_point]),
         };
+        if auto {
+            points = self.shared_neutral(points, record);
+        }
         self.carried.ends[feed.branch] = ends;
         self.carried.neutrals[feed.branch] = points;
+    }
+
+    /// One neutral point for both sides of an autotransformer.
+    fn shared_neutral(&mut self, points: [NeutralPoint; 2], record: &TransformerRecord) -> [NeutralPoint; 2] {
+        let lost = match points {
+            [NeutralPoint::Conductor, NeutralPoint::Conductor] => return points,
+            [NeutralPoint::Earthed(_), NeutralPoint::Conductor] => 0,
+            _ => 1,
+        };
+        let given = [record.from_earth_ohm, record.to_earth_ohm][lost];
+        if let Some(ohm) = given {
+            let (column, other) = if lost == 0 { ("earth_ohm_from", "to") } else { ("earth_ohm_to", "from") };
+            self.diagnostics.error(
+                Code::Conflict,
+                place(self.draft, record.origin, column, &ohm.re.to_string()),
+                format!(
+                    "{column} of transformer {} has no effect: an autotransformer has one neutral, and that stands at its {other} side",
+                    record.transformer
+                ),
+                if lost == 0 { "leave it blank" } else { "give it as earth_ohm_from, or at the node that carries n" },
+            );
+        }
+        let mut points = points;
+        points[lost] = NeutralPoint::Shared;
+        points
     }
 
     fn neutral_point(&mut self, side: &Side, node: usize, record: &TransformerRecord) -> NeutralPoint {
         let neutral = self.carried.conductors[node].has_neutral();
         let point = match (side.has_neutral, side.floats) {
             (true, _) if neutral => NeutralPoint::Conductor,
-            (true, _) => NeutralPoint::Earthed(side.earth_ohm.unwrap_or(0.0)),
+            (true, _) => NeutralPoint::Earthed(side.earth_ohm.unwrap_or_default()),
             (false, true) => NeutralPoint::Floating,
             (false, false) => NeutralPoint::None,
         };
         if let Some(ohm) = side.earth_ohm
             && !matches!(point, NeutralPoint::Earthed(_))
         {
+            let ohm = ohm.re;
             let (code, why, cure) = if point == NeutralPoint::Conductor {
                 (
                     Code::Conflict,
@@ -220,7 +257,7 @@ impl Walk<'_> {
                 (
                     Code::NoNeutral,
                     format!("that winding of {} has no neutral to earth", record.group),
-                    "leave the cell blank, or give a group with a neutral (YN, yn)".to_string(),
+                    "leave the cell blank, or give a group with a neutral (YN, yn, zn)".to_string(),
                 )
             };
             let what =
@@ -235,13 +272,39 @@ impl Walk<'_> {
         point
     }
 
-    fn check_voltage(&mut self, near: &Side, far: &Side, feed: RawFeed) {
+    /// Units of one bank must agree on the voltage of the side they feed.
+    fn check_far_voltages(&mut self, records: &[&TransformerRecord], feed: RawFeed) {
+        let far_end = if feed.upstream == End::From { End::To } else { End::From };
+        let first = Side::of(records[0], far_end).nominal_volts();
+        for record in &records[1..] {
+            let far = Side::of(record, far_end);
+            if (far.nominal_volts() / first - 1.0).abs() <= VOLTAGE_CLASS_TOLERANCE {
+                continue;
+            }
+            self.diagnostics.error(
+                Code::VoltageMismatch,
+                place(self.draft, record.origin, far.volts_column, &(far.volts / 1e3).to_string()),
+                format!(
+                    "transformer {} makes {:.3} kV line-to-line, but {}, in the same bank, {:.3} kV",
+                    record.transformer,
+                    far.nominal_volts() / 1e3,
+                    records[0].transformer,
+                    first / 1e3
+                ),
+                format!("check {} of both, and their terminals", far.volts_column),
+            );
+        }
+    }
+
+    fn check_voltage(&mut self, record: &TransformerRecord, feed: RawFeed) {
+        let far_end = if feed.upstream == End::From { End::To } else { End::From };
+        let (near, far) = (Side::of(record, feed.upstream), Side::of(record, far_end));
         let nominal = self.carried.nominal_volts[feed.parent];
         let fits = |volts: f64| (volts / nominal - 1.0).abs() <= VOLTAGE_CLASS_TOLERANCE;
         if nominal <= 0.0 || fits(near.nominal_volts()) {
             return;
         }
-        let branch = &self.graph.branches[feed.branch];
+        let phase_volts = nominal_phase_volts(self.carried.conductors[feed.parent], nominal);
         let cure = if fits(far.nominal_volts()) {
             "from and to, or kv_from and kv_to, look exchanged".to_string()
         } else if fits(near.nominal_volts() * SQRT_3) {
@@ -253,74 +316,71 @@ impl Walk<'_> {
         };
         let kv = near.volts / 1e3;
         let across = if near.phase_to_neutral {
-            format!("{:.3} kV phase to neutral", nominal / SQRT_3 / 1e3)
+            format!("{:.3} kV phase to neutral", phase_volts / 1e3)
         } else {
             format!("{} kV line-to-line", nominal / 1e3)
         };
         self.diagnostics.error(
             Code::VoltageMismatch,
-            place(self.draft, branch.origin, near.volts_column, &kv.to_string()),
+            place(self.draft, record.origin, near.volts_column, &kv.to_string()),
             format!(
-                "{} is rated {kv} kV at node {}, which is at {across}",
-                branch.called(),
-                self.graph.names[feed.parent],
+                "transformer {} is rated {kv} kV at node {}, which is at {across}",
+                record.transformer, self.graph.names[feed.parent],
             ),
             cure,
         );
     }
 }
 
-/// One side of a transformer record.
+/// One side of a transformer record, or of a bank of single-phase units.
 struct Side {
     phases: Conductors,
     has_neutral: bool,
     floats: bool,
     volts: f64,
-    earth_ohm: Option<f64>,
+    earth_ohm: Option<Complex64>,
     volts_column: &'static str,
     earth_column: &'static str,
     phase_to_neutral: bool,
 }
 
 impl Side {
-    fn from(record: &TransformerRecord) -> Side {
-        let winding = match record.group {
-            VectorGroup::Three { from, .. } => Some(from),
-            VectorGroup::Single { .. } => None,
-        };
-        Side::new(record, winding, record.from_volts, record.from_earth_ohm, ["kv_from", "earth_ohm_from"])
-    }
-
-    fn to(record: &TransformerRecord) -> Side {
-        let winding = match record.group {
-            VectorGroup::Three { to, .. } => Some(to),
-            VectorGroup::Single { .. } => None,
-        };
-        Side::new(record, winding, record.to_volts, record.to_earth_ohm, ["kv_to", "earth_ohm_to"])
-    }
-
-    fn new(
-        record: &TransformerRecord,
-        winding: Option<Winding>,
-        volts: f64,
-        earth_ohm: Option<f64>,
-        columns: [&'static str; 2],
-    ) -> Side {
-        let star_unit = matches!(record.terminals, Some(Connection::Star(_)));
+    fn of(record: &TransformerRecord, end: End) -> Side {
+        let k = if end == End::From { 0 } else { 1 };
+        let winding = record.group.windings().map(|w| w[k]);
+        let terminals = record.terminals.map(|t| t[k]);
+        let star = matches!(terminals, Some(Connection::Star(_)));
+        let centre_tap = matches!(record.group, VectorGroup::CentreTap { .. }) && end == End::To;
         Side {
-            phases: record.terminals.map_or(Conductors::ABC, Connection::phases),
-            has_neutral: winding.map_or(star_unit, |w| w == Winding::StarNeutral),
-            floats: winding == Some(Winding::Star),
-            volts,
-            earth_ohm,
-            volts_column: columns[0],
-            earth_column: columns[1],
-            phase_to_neutral: winding.is_none() && star_unit,
+            phases: terminals.map_or(Conductors::ABC, Connection::phases),
+            has_neutral: winding.map_or(star, Winding::has_neutral),
+            floats: winding.is_some_and(Winding::floats),
+            volts: [record.from_volts, record.to_volts][k],
+            earth_ohm: [record.from_earth_ohm, record.to_earth_ohm][k],
+            volts_column: ["kv_from", "kv_to"][k],
+            earth_column: ["earth_ohm_from", "earth_ohm_to"][k],
+            phase_to_neutral: winding.is_none() && star && !centre_tap,
         }
+    }
+
+    /// The side of all units together: their phases, a neutral where one has it.
+    fn bank(records: &[&TransformerRecord], end: End) -> Side {
+        let mut bank = Side::of(records[0], end);
+        for record in &records[1..] {
+            let unit = Side::of(record, end);
+            bank.phases = bank.phases.union(unit.phases);
+            bank.has_neutral |= unit.has_neutral;
+            bank.earth_ohm = bank.earth_ohm.or(unit.earth_ohm);
+        }
+        bank
     }
 
     /// Nominal line-to-line voltage this side stands for.
     fn nominal_volts(&self) -> f64 {
-        if self.phase_to_neutral { self.volts * SQRT_3 } else { self.volts }
+        match (self.phase_to_neutral, self.phases.is_split()) {
+            (true, true) => 2.0 * self.volts,
+            (true, false) => self.volts * SQRT_3,
+            (false, _) => self.volts,
+        }
     }
 }

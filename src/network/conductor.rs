@@ -11,33 +11,46 @@ pub enum Conductor {
     B,
     /// Phase c (L3), 120 degrees behind b.
     C,
-    /// The neutral.
+    /// The neutral; at a centre-tapped winding its middle.
     N,
+    /// First outer conductor of a centre-tapped winding.
+    S1,
+    /// Second outer conductor of a centre-tapped winding.
+    S2,
 }
 
 impl Conductor {
-    /// All four in slot order.
+    /// The four of a three-phase feeder in slot order.
     pub const ALL: [Conductor; 4] = [Conductor::A, Conductor::B, Conductor::C, Conductor::N];
+    /// Those behind a centre tap, in the order of slots.
+    pub const SPLIT: [Conductor; 3] = [Conductor::S1, Conductor::S2, Conductor::N];
     /// The three phases in slot order.
     pub const PHASES: [Conductor; 3] = [Conductor::A, Conductor::B, Conductor::C];
 
-    /// Slot in vectors and matrices: a 0, b 1, c 2, n 3.
+    /// Slot in vectors and matrices: a 0, b 1, c 2, n 3; s1 0, s2 1.
     pub fn slot(self) -> usize {
-        self as usize
+        match self {
+            Conductor::A | Conductor::S1 => 0,
+            Conductor::B | Conductor::S2 => 1,
+            Conductor::C => 2,
+            Conductor::N => 3,
+        }
     }
 
     /// Letter as printed.
     pub fn letter(self) -> &'static str {
-        ["a", "b", "c", "n"][self.slot()]
+        ["a", "b", "c", "n", "s1", "s2"][self as usize]
     }
 
-    /// The phase that follows in rotation (a, b, c, a); `n` stays `n`.
+    /// The phase that follows in rotation (a, b, c, a); s1 and s2 follow each other, `n` stays `n`.
     pub fn next(self) -> Conductor {
         match self {
             Conductor::A => Conductor::B,
             Conductor::B => Conductor::C,
             Conductor::C => Conductor::A,
             Conductor::N => Conductor::N,
+            Conductor::S1 => Conductor::S2,
+            Conductor::S2 => Conductor::S1,
         }
     }
 }
@@ -48,7 +61,7 @@ impl fmt::Display for Conductor {
     }
 }
 
-/// A set of conductors, printed as `abcn`.
+/// A set of conductors, printed as `abcn` or `s1ns2`.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, Default, PartialOrd, Ord)]
 pub struct Conductors(u8);
 
@@ -61,10 +74,28 @@ impl Conductors {
     pub const ABCN: Conductors = Conductors(0b1111);
     /// The neutral alone.
     pub const N: Conductors = Conductors(0b1000);
+    /// Both outer conductors of a centre-tapped winding.
+    pub const S1S2: Conductors = Conductors(0b11_0000);
 
     /// True where the set holds `c`.
     pub fn has(self, c: Conductor) -> bool {
-        self.0 & (1 << c.slot()) != 0
+        self.0 & (1 << c as u8) != 0
+    }
+
+    /// True where some conductor of the set stands in that slot of vectors and matrices.
+    pub fn has_slot(self, slot: usize) -> bool {
+        self.iter().any(|c| c.slot() == slot)
+    }
+
+    /// The set written with a, b, c and n for the conductors in the same slots.
+    #[must_use]
+    pub fn in_slots(self) -> Conductors {
+        self.iter().map(|c| Conductor::ALL[c.slot()]).collect()
+    }
+
+    /// True behind a centre tap.
+    pub fn is_split(self) -> bool {
+        !self.intersection(Conductors::S1S2).is_empty()
     }
 
     /// True where the neutral is carried.
@@ -75,13 +106,13 @@ impl Conductors {
     /// The set with `c` added.
     #[must_use]
     pub fn with(self, c: Conductor) -> Conductors {
-        Conductors(self.0 | (1 << c.slot()))
+        Conductors(self.0 | (1 << c as u8))
     }
 
     /// The set with `c` removed.
     #[must_use]
     pub fn without(self, c: Conductor) -> Conductors {
-        Conductors(self.0 & !(1 << c.slot()))
+        Conductors(self.0 & !(1 << c as u8))
     }
 
     /// Conductors in either set.
@@ -125,7 +156,8 @@ impl Conductors {
 
     /// The conductors in slot order.
     pub fn iter(self) -> impl Iterator<Item = Conductor> + Clone {
-        Conductor::ALL.into_iter().filter(move |&c| self.has(c))
+        use Conductor::{A, B, C, N, S1, S2};
+        [A, S1, B, S2, C, N].into_iter().filter(move |&c| self.has(c))
     }
 }
 
@@ -137,6 +169,11 @@ impl FromIterator<Conductor> for Conductors {
 
 impl fmt::Display for Conductors {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        if Conductors::S1S2.is_subset_of(*self) {
+            // As the wires lie: the neutral between the outer ones.
+            let ordered = [Conductor::S1, Conductor::N, Conductor::S2].into_iter();
+            return ordered.filter(|&c| self.has(c)).try_for_each(|c| f.write_str(c.letter()));
+        }
         self.iter().try_for_each(|c| f.write_str(c.letter()))
     }
 }
@@ -146,7 +183,8 @@ impl fmt::Display for Conductors {
 pub enum Connection {
     /// Each phase of the set to the neutral (to earth where the node has none). The set holds phases only.
     Star(Conductors),
-    /// Each phase of the set to the next in rotation: `A` stands for a-b, `B` for b-c, `C` for c-a.
+    /// Each phase of the set to the next in rotation: `A` stands for a-b, `B` for b-c, `C` for c-a,
+    /// `S1` for s1-s2.
     Delta(Conductors),
 }
 
@@ -179,7 +217,7 @@ impl Connection {
 impl fmt::Display for Connection {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
-            Connection::Star(p) => write!(f, "{p}n"),
+            Connection::Star(p) => write!(f, "{}", p.with(Conductor::N)),
             Connection::Delta(p) if p.count() == 3 => f.write_str("abc"),
             Connection::Delta(p) => {
                 p.iter().try_for_each(|c| write!(f, "{}{}", c.letter(), c.next().letter()))
@@ -209,5 +247,7 @@ mod tests {
         assert_eq!(ca.to_string(), "ca");
         assert_eq!(ca.phases().to_string(), "ac");
         assert_eq!(Connection::Star(Conductors::ABC).to_string(), "abcn");
+        assert_eq!(Connection::Star(Conductors::S1S2).to_string(), "s1ns2");
+        assert_eq!(Connection::Delta(Conductors::NONE.with(Conductor::S1)).to_string(), "s1s2");
     }
 }

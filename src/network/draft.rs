@@ -12,7 +12,7 @@ use super::load::LoadModel;
 use super::study::Study;
 use super::transformer::VectorGroup;
 use crate::diagnostic::{Origin, Sources};
-use crate::math::PhaseMatrix;
+use crate::math::{Complex64, PhaseMatrix};
 
 /// A name from the user's files, trimmed; cheap to clone.
 pub type Name = Arc<str>;
@@ -173,8 +173,8 @@ pub struct TransformerRecord {
     pub to_volts: f64,
     /// Winding connection.
     pub group: VectorGroup,
-    /// The two terminals of a single-phase unit, on both sides; `None` for a three-phase bank.
-    pub terminals: Option<Connection>,
+    /// Terminals of a single-phase unit on its from and its to side; `None` for a three-phase bank.
+    pub terminals: Option<[Connection; 2]>,
     /// Short-circuit resistance, per unit on the rating.
     pub r_pu: f64,
     /// Short-circuit reactance, per unit on the rating.
@@ -183,12 +183,14 @@ pub struct TransformerRecord {
     pub no_load_watts: f64,
     /// Magnetising current (its reactive part), per unit of rated current.
     pub magnetizing_pu: f64,
-    /// Raise of the to voltage by the tap, per unit (0.025 for 2.5 percent).
+    /// Raise of the to voltage by a tap on the to winding, per unit (0.025 for 2.5 percent).
     pub tap_pu: f64,
+    /// Turns added by a tap on the from winding, per unit.
+    pub from_tap_pu: f64,
     /// Earthing of the from-side neutral where its node has no `n`, ohms; `None`: not given (solid).
-    pub from_earth_ohm: Option<f64>,
+    pub from_earth_ohm: Option<Complex64>,
     /// Earthing of the to-side neutral where its node has no `n`, ohms; `None`: not given (solid).
-    pub to_earth_ohm: Option<f64>,
+    pub to_earth_ohm: Option<Complex64>,
     /// Where it was written.
     pub origin: Option<Origin>,
 }

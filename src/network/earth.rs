@@ -4,7 +4,7 @@
 //! side, or a neutral earthed nowhere, has no defined voltage to earth; it gets a susceptance of
 //! [`REFERENCE_SHARE`] of its transformer's rating at its first node, and a warning says so.
 //!
-//! A star winding with neutral whose other winding is a star without (Yyn) cannot carry unbalanced
+//! A star winding with neutral whose other winding is a star without (Yyn), or a zigzag, cannot carry unbalanced
 //! current: nothing balances it on the other side. Its phases float even where its neutral is
 //! earthed, and loads from phase to neutral have no return path there.
 
@@ -13,8 +13,8 @@ use super::conductor::{Conductors, Connection};
 use super::draft::{Draft, TransformerRecord};
 use super::graph::{Graph, RawKind, Tree, place};
 use super::load::LoadModel;
-use super::model::End;
-use super::transformer::{NeutralPoint, VectorGroup, Winding};
+use super::model::{End, nominal_phase_volts};
+use super::transformer::{NeutralPoint, Winding};
 use crate::diagnostic::{Code, Diagnostics};
 use crate::math::PhaseMatrix;
 
@@ -155,19 +155,24 @@ fn holds(draft: &Draft, graph: &Graph, tree: &Tree, carried: &Carried, given: &G
     held
 }
 
-/// True where the far winding is a star with neutral and the near one a star without.
+/// True where the far winding is a star with neutral and the near one a star without, or a zigzag:
+/// nothing on the near side balances what the three phases carry together. (A far zigzag balances itself.)
 fn blocks_unbalance(record: &TransformerRecord, upstream: End) -> bool {
-    let VectorGroup::Three { from, to, .. } = record.group else { return false };
-    let (near, far) = if upstream == End::From { (from, to) } else { (to, from) };
-    near == Winding::Star && far == Winding::StarNeutral
+    let Some([near, far]) = near_and_far(record, upstream) else { return false };
+    far == Winding::StarNeutral && (near == Winding::Star || near.is_zigzag())
 }
 
-/// An earthed star winding holds its side where the other winding is a delta, or where it carries the no-load shunt.
+/// An earthed star winding holds its side where the other winding is a delta, or where it carries
+/// the no-load shunt; an earthed zigzag always does.
 fn conducts_zero_sequence(record: &TransformerRecord, upstream: End) -> bool {
-    let VectorGroup::Three { from, to, .. } = record.group else { return false };
-    let far = if upstream == End::From { to } else { from };
+    let Some([near, far]) = near_and_far(record, upstream) else { return false };
     let shunt = record.no_load_watts > 0.0 || record.magnetizing_pu > 0.0;
-    far == Winding::Delta || (upstream == End::From && shunt)
+    near.is_zigzag() || far == Winding::Delta || (upstream == End::From && shunt)
+}
+
+fn near_and_far(record: &TransformerRecord, upstream: End) -> Option<[Winding; 2]> {
+    let [from, to] = record.group.windings()?;
+    Some(if upstream == End::From { [from, to] } else { [to, from] })
 }
 
 fn charging_siemens(draft: &Draft, choice: &[Option<usize>], line: usize) -> f64 {
@@ -198,7 +203,8 @@ fn linear_shunts<'a>(
         .map(|c| (&c.node, c.connection, c.vars, c.rated_volts));
     loads.chain(capacitors).filter_map(move |(name, connection, va, rated)| {
         let node = *graph.index.get(name)?;
-        let volts = rated.unwrap_or(carried.nominal_volts[node] / crate::units::SQRT_3);
+        let volts =
+            rated.unwrap_or(nominal_phase_volts(carried.conductors[node], carried.nominal_volts[node]));
         let earth = matches!(connection, Connection::Star(_)) && !carried.conductors[node].has_neutral();
         (earth && volts > 0.0).then(|| (node, va / (volts * volts)))
     })

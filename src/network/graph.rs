@@ -3,9 +3,10 @@
 use std::collections::{HashMap, HashSet, VecDeque};
 
 use super::conductor::Conductors;
-use super::draft::{Draft, Name, SwitchState};
+use super::draft::{Draft, Name, SwitchState, TransformerRecord};
 use super::model::End;
 use super::ring::report_ring;
+use super::transformer::VectorGroup;
 use crate::diagnostic::{Code, Diagnostics, Origin, Place};
 
 /// What a branch of the draft is: the kind and the index of its record.
@@ -54,6 +55,8 @@ pub(super) struct Graph {
     pub branches: Vec<RawBranch>,
     /// Regulator records of each bank.
     pub banks: Vec<Vec<usize>>,
+    /// Further single-phase transformers of the bank that begins with a record.
+    mates: HashMap<usize, Vec<usize>>,
     /// Branches at each node, open ones too: those of node `i` are `ends[first[i]..first[i + 1]]`.
     first: Vec<u32>,
     ends: Vec<u32>,
@@ -67,6 +70,7 @@ impl Graph {
             index: HashMap::with_capacity(draft.lines.len() + 16),
             branches: Vec::with_capacity(draft.lines.len() + draft.transformers.len() + 16),
             banks: Vec::new(),
+            mates: HashMap::new(),
             first: Vec::new(),
             ends: Vec::new(),
         };
@@ -98,7 +102,15 @@ impl Graph {
         for (i, r) in draft.switches.iter().enumerate() {
             add(self, &r.switch, [&r.from, &r.to], RawKind::Switch(i), r.state, r.origin);
         }
+        let mut units: HashMap<(&Name, &Name), usize> = HashMap::new();
         for (i, r) in draft.transformers.iter().enumerate() {
+            if joins_bank(r) {
+                let first = *units.entry((&r.from, &r.to)).or_insert(i);
+                if first != i {
+                    self.mates.entry(first).or_default().push(i);
+                    continue;
+                }
+            }
             let kind = RawKind::Transformer(i);
             add(self, &r.transformer, [&r.from, &r.to], kind, SwitchState::Closed, r.origin);
         }
@@ -113,6 +125,11 @@ impl Graph {
             banks.insert((&r.from, &r.to), bank);
             add(self, &r.regulator, [&r.from, &r.to], RawKind::Bank(bank), SwitchState::Closed, r.origin);
         }
+    }
+
+    /// Transformer records of the bank that begins with one: itself, and its mates.
+    pub fn units_of(&self, first: usize) -> impl Iterator<Item = usize> + '_ {
+        std::iter::once(first).chain(self.mates.get(&first).into_iter().flatten().copied())
     }
 
     fn number(&mut self, name: &Name) -> usize {
@@ -153,6 +170,11 @@ impl Graph {
     pub fn closed_at(&self, node: usize) -> impl Iterator<Item = usize> + '_ {
         self.at(node).filter(|&b| self.branches[b].state == SwitchState::Closed)
     }
+}
+
+/// Single-phase units of two windings form one bank with others between the same two nodes.
+fn joins_bank(record: &TransformerRecord) -> bool {
+    matches!(record.group, VectorGroup::Single { .. } | VectorGroup::SingleAuto)
 }
 
 /// The place of a record's cell, where the draft came from files.

@@ -32,4 +32,4 @@ pub use model::{
 pub use regulator::{Regulator, RegulatorUnit, TapMode};
 pub use study::Study;
 pub use supply::Supply;
-pub use transformer::{NeutralPoint, Transformer, VectorGroup, Winding};
+pub use transformer::{BOND_OHM, NeutralPoint, Transformer, VectorGroup, Winding};

@@ -42,6 +42,11 @@ impl BranchId {
 /// An electrode of zero ohms is solved as one of a micro-ohm.
 pub const SOLID_EARTH_OHM: f64 = 1e-6;
 
+/// Phase-to-neutral voltage where these conductors have that line-to-line voltage, volts.
+pub(super) fn nominal_phase_volts(conductors: Conductors, line_to_line: f64) -> f64 {
+    if conductors.is_split() { line_to_line / 2.0 } else { line_to_line / crate::units::SQRT_3 }
+}
+
 /// A node: up to four conductors at one place.
 #[derive(Debug, Clone)]
 pub struct Node {
@@ -49,7 +54,7 @@ pub struct Node {
     pub name: Name,
     /// Conductors it carries.
     pub conductors: Conductors,
-    /// Nominal line-to-line voltage, volts.
+    /// Nominal line-to-line voltage, volts; behind a centre tap between s1 and s2.
     pub nominal_volts: f64,
     /// Electrode from the neutral to remote earth, ohms (at least [`SOLID_EARTH_OHM`]); `None`: none.
     pub earth_ohm: Option<f64>,
@@ -64,9 +69,9 @@ pub struct Node {
 }
 
 impl Node {
-    /// Nominal phase-to-neutral voltage, volts.
+    /// Nominal phase-to-neutral voltage, volts; behind a centre tap that of one half.
     pub fn nominal_phase_volts(&self) -> f64 {
-        self.nominal_volts / crate::units::SQRT_3
+        nominal_phase_volts(self.conductors, self.nominal_volts)
     }
 
     /// Nominal voltage across each element of a load or capacitor joined so, volts.

@@ -6,7 +6,7 @@ use super::conductor::{Conductors, Connection};
 use super::draft::{LoadSite, SwitchState};
 use super::graph::place;
 use super::load::{Capacitor, Load, LoadPlace};
-use super::model::NodeId;
+use super::model::{NodeId, nominal_phase_volts};
 use crate::diagnostic::{Code, Origin, nearest};
 
 impl Builder<'_> {
@@ -64,7 +64,7 @@ impl Builder<'_> {
             let (Some(id), SwitchState::Closed) = (new_node[node], record.state) else { continue };
             let line_to_line = joined.carried.nominal_volts[node];
             let nominal = match record.connection {
-                Connection::Star(_) => line_to_line / crate::units::SQRT_3,
+                Connection::Star(_) => nominal_phase_volts(joined.carried.conductors[node], line_to_line),
                 Connection::Delta(_) => line_to_line,
             };
             let rated_volts = record.rated_volts.unwrap_or(nominal);

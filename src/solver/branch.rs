@@ -7,7 +7,7 @@
 
 use super::terminals::Terminals;
 use crate::math::{Complex64, ONE, PhaseMatrix, PhaseVector, ZERO};
-use crate::network::{Branch, BranchKind, Conductor, Conductors, Connection, End, Network};
+use crate::network::{Branch, BranchKind, Conductors, Connection, End, Network};
 
 const N: usize = 3;
 
@@ -169,7 +169,7 @@ fn terminals(
 /// Inverse over the conductors of a set, zero elsewhere.
 fn invert_over(y: &PhaseMatrix, set: Conductors) -> Result<PhaseMatrix, SingularNode> {
     let mut y = *y;
-    let absent = || Conductor::ALL.into_iter().filter(|&c| !set.has(c)).map(Conductor::slot);
+    let absent = || (0..=N).filter(|&slot| !set.has_slot(slot));
     for k in absent() {
         y[(k, k)] = ONE;
     }
@@ -189,7 +189,7 @@ fn moves_freely(own: &PhaseMatrix, far: Conductors) -> Option<Conductors> {
 
 /// One on each conductor of a set.
 fn together(set: Conductors) -> PhaseVector {
-    PhaseVector::from_fn(|i, _| if set.iter().any(|c| c.slot() == i) { ONE } else { ZERO })
+    PhaseVector::from_fn(|i, _| if set.has_slot(i) { ONE } else { ZERO })
 }
 
 /// The far side of a winding that leaves the conductors `moving` free (`Y_own u = 0`, `u` one on each).

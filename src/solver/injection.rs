@@ -28,7 +28,7 @@ pub(super) struct Mixed<S = f64> {
     star: StarPower<S>,
     /// Power over nominal voltage of constant-current star loads.
     star_current: Slots<S>,
-    /// Slots ab, bc, ca.
+    /// Slots ab, bc, ca; s1 to s2 in the first.
     delta_power: Slots<S>,
     delta_current: Slots<S>,
     delta_floor2: f64,
@@ -147,12 +147,13 @@ impl Gathered {
 
 impl Mixed {
     fn nothing(node: &Node, floor_pu: f64) -> Self {
-        let floor = floor_pu.max(LEAST_FLOOR_PU) * node.nominal_phase_volts();
-        let floor2 = floor * floor;
+        let floor_pu = floor_pu.max(LEAST_FLOOR_PU);
+        let floor2 = (floor_pu * node.nominal_phase_volts()).powi(2);
+        let delta_floor2 = (floor_pu * node.nominal_volts).powi(2);
         let neutral = if node.conductors.has(Conductor::N) { 1.0 } else { 0.0 };
         let star = StarPower { power: Slots::ZERO, floor2, inverse_floor2: 1.0 / floor2, neutral };
         let zero = Slots::ZERO;
-        Mixed { star, star_current: zero, delta_power: zero, delta_current: zero, delta_floor2: 3.0 * floor2 }
+        Mixed { star, star_current: zero, delta_power: zero, delta_current: zero, delta_floor2 }
     }
 }
 

@@ -6,6 +6,7 @@
 
 mod accelerate;
 mod branch;
+mod coils;
 mod control;
 mod injection;
 mod lanes;
@@ -15,6 +16,7 @@ mod settings;
 mod solution;
 mod sweep;
 mod terminals;
+mod windings;
 mod workspace;
 
 pub use control::{RegulatedUnit, TapState, solve_regulated};

@@ -1,11 +1,9 @@
 //! An independent check of a solution: every branch equation and Kirchhoff's current law at every
 //! node, from the network's own data. Shares no code with the sweep and its two-ports.
 
+use super::coils;
 use crate::math::{Complex64, PhaseVector, ZERO};
-use crate::network::{
-    Branch, BranchKind, Conductor, Connection, LoadModel, Network, NeutralPoint, Node, NodeId, Transformer,
-    VectorGroup, Winding,
-};
+use crate::network::{Branch, BranchKind, Conductor, Connection, LoadModel, Network, Node, NodeId};
 use crate::solver::Solution;
 
 /// Largest mismatches of a solution.
@@ -120,141 +118,10 @@ fn branch_mismatch(network: &Network, branch: &Branch, ends: &Ends) -> (f64, f64
                 worst(&|c| (ends.from_amps[c.slot()] - expected_amps[c.slot()]).norm()),
             )
         }
-        BranchKind::Transformer(t) => (0.0, transformer_mismatch(t, ends)),
-    }
-}
-
-/// A winding: its terminals, and its voltage and current once the star point is known.
-struct WindingPair {
-    from: (usize, usize),
-    to: (usize, usize),
-}
-
-/// Current mismatch of a transformer from its winding equations: each unit's currents follow from
-/// its winding voltages, the star points' voltages from where they go.
-fn transformer_mismatch(t: &Transformer, ends: &Ends) -> f64 {
-    let pairs = winding_pairs(t);
-    let rating = t.rated_va / pairs.len() as f64;
-    let side_volts =
-        |line: f64, delta: bool| if delta || pairs.len() == 1 { line } else { line / 3f64.sqrt() };
-    let (from_delta, to_delta) = match t.group {
-        VectorGroup::Three { from, to, .. } => (from == Winding::Delta, to == Winding::Delta),
-        VectorGroup::Single { .. } => (false, false),
-    };
-    let (uf, ut) = (side_volts(t.from_volts, from_delta), side_volts(t.to_volts, to_delta));
-    let ratio = uf / (ut * (1.0 + t.tap_pu));
-    let ohm = Complex64::new(t.r_pu, t.x_pu) * ut * ut / rating;
-    let shunt = Complex64::new(t.no_load_watts / pairs.len() as f64, -t.magnetizing_pu * rating) / (uf * uf);
-
-    // Star points: known on a conductor or solid earth; through a resistance from the neutral
-    // current the ends report (what the phases carry returns through it); floating ones drop out
-    // of sums of three equal units, so only deviations from the mean are compared then.
-    let star = |point: NeutralPoint, volts: &PhaseVector, phase_amps: Complex64| match point {
-        NeutralPoint::Conductor => volts[3],
-        NeutralPoint::Earthed(ohm) => phase_amps * ohm,
-        NeutralPoint::Floating | NeutralPoint::None => ZERO,
-    };
-    let phase_sum = |amps: &PhaseVector| amps[0] + amps[1] + amps[2];
-    let from_star = star(t.from_neutral, ends.from_volts, phase_sum(ends.from_amps));
-    let to_star = star(t.to_neutral, ends.to_volts, -phase_sum(ends.to_amps));
-    let across = |volts: &PhaseVector, pair: (usize, usize), star: Complex64| {
-        let at = |slot: usize| if slot == 3 { star } else { volts[slot] };
-        at(pair.0) - at(pair.1)
-    };
-    let mut from_volts: Vec<Complex64> =
-        pairs.iter().map(|p| across(ends.from_volts, p.from, from_star)).collect();
-    let mut to_volts: Vec<Complex64> = pairs.iter().map(|p| across(ends.to_volts, p.to, to_star)).collect();
-    let floats = |point: NeutralPoint| point == NeutralPoint::Floating;
-    if floats(t.from_neutral) || floats(t.to_neutral) {
-        shift_star_points(t, &mut from_volts, &mut to_volts, ratio, shunt * ohm);
-    }
-    let mut expected = [PhaseVector::zeros(), PhaseVector::zeros()];
-    for (k, pair) in pairs.iter().enumerate() {
-        let to_current = (from_volts[k] / ratio - to_volts[k]) / ohm;
-        let from_current = to_current / ratio + shunt * from_volts[k];
-        expected[0][pair.from.0] += from_current;
-        expected[0][pair.from.1] -= from_current;
-        expected[1][pair.to.0] += to_current;
-        expected[1][pair.to.1] -= to_current;
-    }
-    let phases = 0..3;
-    let worst_phase = phases
-        .map(|k| {
-            larger((ends.from_amps[k] - expected[0][k]).norm(), (ends.to_amps[k] - expected[1][k]).norm())
-        })
-        .fold(0.0, larger);
-    let neutral = |point: NeutralPoint, amps: &PhaseVector, expected: &PhaseVector| match point {
-        NeutralPoint::Conductor => (amps[3] - expected[3]).norm(),
-        _ => 0.0,
-    };
-    let worst_neutral = larger(
-        neutral(t.from_neutral, ends.from_amps, &expected[0]),
-        neutral(t.to_neutral, ends.to_amps, &expected[1]),
-    );
-    larger(worst_phase, worst_neutral)
-}
-
-/// Moves floating star points to where their winding currents add up to zero. With `x`, `y` the
-/// shifts of the from and to winding voltages: the to currents `(vf / t - vt) / z` sum to zero
-/// where the to star floats; the from currents, with their no-load part, where the from star floats.
-fn shift_star_points(
-    t: &Transformer,
-    from: &mut [Complex64],
-    to: &mut [Complex64],
-    ratio: f64,
-    shunt_ohm: Complex64,
-) {
-    let mean = |volts: &[Complex64]| volts.iter().sum::<Complex64>() / volts.len() as f64;
-    let (f, w) = (mean(from), mean(to));
-    let (x, y) = match (t.from_neutral == NeutralPoint::Floating, t.to_neutral == NeutralPoint::Floating) {
-        // Both sums vanish: without a no-load shunt only f/t - w matters, with one f itself is zero.
-        (true, true) => (-f, -w),
-        // f/t - w + shunt z t f = 0 after the shift of f.
-        (true, false) => (w / (1.0 / ratio + shunt_ohm * ratio) - f, ZERO),
-        (false, _) => (ZERO, f / ratio - w),
-    };
-    from.iter_mut().for_each(|v| *v += x);
-    to.iter_mut().for_each(|v| *v += y);
-}
-
-/// Winding terminals of each unit by vector group, as described at [`Transformer`].
-fn winding_pairs(t: &Transformer) -> Vec<WindingPair> {
-    let (from, to, clock) = match t.group {
-        VectorGroup::Three { from, to, clock } => (from, to, clock as usize),
-        VectorGroup::Single { clock } => {
-            let pairs = t.terminals.into_iter().flat_map(Connection::pairs);
-            let single = pairs.map(|(p, q)| (p.slot(), q.slot()));
-            return single
-                .map(|(p, q)| WindingPair { from: (p, q), to: if clock == 6 { (q, p) } else { (p, q) } })
-                .collect();
+        BranchKind::Transformer(t) => {
+            (0.0, coils::mismatch_amps(t, [ends.from_volts, ends.to_volts], [ends.from_amps, ends.to_amps]))
         }
-    };
-    let (next, before) = (|k: usize| (k + 1) % 3, |k: usize| (k + 2) % 3);
-    let plain = |winding: Winding, k: usize| if winding == Winding::Delta { (k, next(k)) } else { (k, 3) };
-    let (from_delta, to_delta) = (from == Winding::Delta, to == Winding::Delta);
-    let pair = |k: usize| match (from_delta, to_delta, clock % 4) {
-        (true, false, 1) => ((k, before(k)), (k, 3)),
-        (true, false, _) => ((k, next(k)), (k, 3)),
-        (false, true, 1) => ((k, 3), (k, next(k))),
-        (false, true, _) => ((k, 3), (k, before(k))),
-        (_, _, 2) => (plain(from, k), {
-            let (p, q) = plain(to, k);
-            (q, p)
-        }),
-        _ => (plain(from, k), plain(to, k)),
-    };
-    let moves = match (from_delta == to_delta, clock) {
-        (true, 0 | 6) | (false, 1 | 11) => 0,
-        (true, 4 | 10) | (false, 5 | 3) => 1,
-        _ => 2,
-    };
-    let moved = |slot: usize| (0..moves).fold(slot, |s, _| if s == 3 { 3 } else { before(s) });
-    (0..3)
-        .map(|k| {
-            let (from, (p, q)) = pair(k);
-            WindingPair { from, to: (moved(p), moved(q)) }
-        })
-        .collect()
+    }
 }
 
 /// Takes loads, capacitors and electrodes from the current balance of each node.

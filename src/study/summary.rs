@@ -177,7 +177,12 @@ fn loads(network: &Network) -> Vec<LoadsOf> {
 
 fn phases(network: &Network) -> Vec<LoadOn> {
     let mut sums = [(0.0, 0.0); 3];
+    let mut split = (0.0, 0.0);
     for load in &network.loads {
+        if load.connection.phases().is_split() {
+            split = (split.0 + load.watts / 1e3, split.1 + load.vars / 1e3);
+            continue;
+        }
         let share = 1.0 / load.connection.elements().max(1) as f64 / 1e3;
         for (p, q) in load.connection.pairs() {
             let ends: &[Conductor] = if q == Conductor::N { &[p] } else { &[p, q] };
@@ -191,5 +196,6 @@ fn phases(network: &Network) -> Vec<LoadOn> {
     Conductor::PHASES
         .iter()
         .map(|c| LoadOn { phase: c.letter(), kw: sums[c.slot()].0, kvar: sums[c.slot()].1 })
+        .chain((split != (0.0, 0.0)).then_some(LoadOn { phase: "s1s2", kw: split.0, kvar: split.1 }))
         .collect()
 }

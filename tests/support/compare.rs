@@ -2,7 +2,7 @@
 
 use fourwire::math::{Complex64, PhaseVector};
 use fourwire::network::{Conductor, Network};
-use fourwire::solver::{Settings, Solution, Status, solve};
+use fourwire::solver::{Settings, Solution, Status, residual, solve};
 
 use super::nodal;
 
@@ -36,7 +36,14 @@ fn losses(network: &Network, solution: &Solution) -> Complex64 {
 pub fn compare(label: &str, network: &Network) -> Compared {
     let solution = solve(network, &Settings::default());
     let (status, iterations) = (solution.status, solution.iterations);
-    assert_eq!(status, Status::Converged, "{label}: {iterations} iterations, {:e}", solution.change_pu);
+    let left = residual(network, &solution);
+    let (amps, volts, node) = (left.amps, left.volts, &network.node(left.node).name);
+    assert_eq!(
+        status,
+        Status::Converged,
+        "{label}: {iterations} iterations, {:e} pu, {amps:e} A at {node}, {volts:e} V",
+        solution.change_pu
+    );
     let other =
         nodal::solve_nodal(network).unwrap_or_else(|| panic!("{label}: the nodal method does not settle"));
     let mut found = Compared { worst_pu: 0.0, lowest_pu: f64::INFINITY };

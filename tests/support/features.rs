@@ -3,7 +3,7 @@
 use std::collections::BTreeSet;
 
 use fourwire::network::{
-    Across, BranchKind, Connection, End, LoadPlace, Network, NeutralPoint, VectorGroup, Winding,
+    Across, BranchKind, Conductors, Connection, End, LoadPlace, Network, NeutralPoint, VectorGroup, Winding,
 };
 
 /// Every name that [`features`] can give and a set of random networks must have.
@@ -31,6 +31,32 @@ pub const WANTED: &[&str] = &[
     "bank Dyn",
     "bank Dy",
     "bank Dd",
+    "bank Yz",
+    "bank Yzn",
+    "bank YNzn",
+    "bank Dz",
+    "bank Dzn",
+    "bank Zy",
+    "bank Zyn",
+    "bank Zd",
+    "bank ZNyn",
+    "bank ZNd",
+    "bank YNa0",
+    "bank of unequal units",
+    "unit Iin0 an to s1ns2",
+    "unit Iin0 ab to s1ns2",
+    "unit Iin6 an to s1ns2",
+    "unit Ia0 an",
+    "unit Ii0 an to ab",
+    "unit Ii0 ab to an",
+    "tap on the from side",
+    "star earthed by a reactor",
+    "neutral of an autotransformer shared",
+    "load power split",
+    "load current split",
+    "load impedance split",
+    "load between s1 and s2",
+    "line s1ns2",
     "unit Ii0 an",
     "unit Ii6 an",
     "unit Ii0 ab",
@@ -73,13 +99,7 @@ pub fn features(network: &Network) -> BTreeSet<String> {
         if against && bank {
             found.insert(format!("{kind} against the flow"));
         }
-        branch_features(
-            network,
-            &branch.kind,
-            branch.from_conductors.count(),
-            branch.from_conductors.has_neutral(),
-            &mut found,
-        );
+        branch_features(network, &branch.kind, branch.from_conductors, &mut found);
     }
     shunt_features(network, &mut found);
     found
@@ -102,10 +122,10 @@ fn source_and_nodes(network: &Network, found: &mut BTreeSet<String>) {
 fn branch_features(
     network: &Network,
     kind: &BranchKind,
-    wires: usize,
-    neutral: bool,
+    conductors: Conductors,
     found: &mut BTreeSet<String>,
 ) {
+    let (wires, neutral, split) = (conductors.count(), conductors.has_neutral(), conductors.is_split());
     let mut note = |yes: bool, name: String| {
         if yes {
             found.insert(name);
@@ -114,6 +134,7 @@ fn branch_features(
     match kind {
         BranchKind::Line(line) => {
             note(true, format!("{wires}-wire line"));
+            note(split, "line s1ns2".into());
             note(network.line_shunt(line).norm() > 0.0, "line with charging".into());
             note(line.sets == 2, "line of two sets".into());
         }
@@ -137,19 +158,41 @@ fn branch_features(
                             Winding::Star => "y",
                             Winding::StarNeutral => "yn",
                             Winding::Delta => "d",
+                            Winding::Zigzag => "z",
+                            Winding::ZigzagNeutral => "zn",
                         };
                         format!("bank {}{}", letters(from).to_uppercase(), letters(to))
                     }
-                    (group, Some(Connection::Star(_))) => format!("unit {group} an"),
-                    (group, _) => format!("unit {group} ab"),
+                    (group, Some([from, to])) => {
+                        let letters = |c: Connection| match c {
+                            Connection::Star(set) if set.is_split() => "s1ns2",
+                            Connection::Star(_) => "an",
+                            Connection::Delta(_) => "ab",
+                        };
+                        match (letters(from), letters(to)) {
+                            (from, to) if from == to => format!("unit {group} {from}"),
+                            (from, to) => format!("unit {group} {from} to {to}"),
+                        }
+                    }
+                    (group, None) => format!("bank {group}"),
                 },
             );
             let shunt = t.no_load_watts > 0.0 || t.magnetizing_pu > 0.0;
             note(true, if shunt { "no-load shunt" } else { "no no-load shunt" }.into());
             note(t.tap_pu != 0.0, "tap".into());
+            note(t.from_tap_pu != 0.0, "tap on the from side".into());
+            note(!t.mates.is_empty(), "bank of unequal units".into());
             for point in [t.from_neutral, t.to_neutral] {
-                note(matches!(point, NeutralPoint::Earthed(r) if r > 0.0), "star earthed by ohms".into());
-                note(matches!(point, NeutralPoint::Earthed(r) if r == 0.0), "star earthed solidly".into());
+                note(matches!(point, NeutralPoint::Earthed(z) if z.re > 0.0), "star earthed by ohms".into());
+                note(
+                    matches!(point, NeutralPoint::Earthed(z) if z.im > 0.0),
+                    "star earthed by a reactor".into(),
+                );
+                note(
+                    matches!(point, NeutralPoint::Earthed(z) if z.norm() == 0.0),
+                    "star earthed solidly".into(),
+                );
+                note(point == NeutralPoint::Shared, "neutral of an autotransformer shared".into());
                 note(point == NeutralPoint::Conductor, "star on n".into());
                 note(point == NeutralPoint::Floating, "star floating".into());
             }
@@ -163,6 +206,13 @@ fn shunt_features(network: &Network, found: &mut BTreeSet<String>) {
         Connection::Delta(_) => "delta",
     };
     for load in &network.loads {
+        if load.connection.phases().is_split() {
+            found.insert(format!("load {} split", load.model.word()));
+            if let Connection::Delta(_) = load.connection {
+                found.insert("load between s1 and s2".into());
+            }
+            continue;
+        }
         found.insert(format!("load {} {}", load.model.word(), joined(load.connection)));
         if let LoadPlace::Line(_) = load.place {
             found.insert("load along a line".into());

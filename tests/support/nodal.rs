@@ -9,12 +9,11 @@
 use std::collections::HashMap;
 
 use fourwire::math::Complex64;
-use fourwire::network::{
-    Across, Branch, BranchKind, Conductor, Connection, LoadModel, Network, NeutralPoint, NodeId, Transformer,
-    VectorGroup, Winding,
-};
+use fourwire::network::{Across, Branch, BranchKind, Conductor, Connection, LoadModel, Network, NodeId};
 use nalgebra::{DMatrix, DVector};
 
+#[path = "coils.rs"]
+mod coils;
 #[path = "newton.rs"]
 mod newton;
 use newton::{at, follow};
@@ -119,7 +118,7 @@ pub fn solve_nodal(network: &Network) -> Option<NodalSolution> {
         network
             .nodes
             .iter()
-            .map(|node| Conductor::ALL.map(|c| node.conductors.has(c).then(|| system.unknown())))
+            .map(|node| [0, 1, 2, 3].map(|slot| node.conductors.has_slot(slot).then(|| system.unknown())))
             .collect(),
     );
     let source = add_supply(network, &numbering, &mut system);
@@ -201,116 +200,15 @@ fn add_branch(network: &Network, branch: &Branch, numbering: &Numbering, system:
                 }
             }
         }
-        BranchKind::Transformer(t) => add_transformer(t, branch, numbering, system),
+        BranchKind::Transformer(t) => coils::add_transformer(t, branch, numbering, system),
     }
-}
-
-/// A star point as a terminal: its own unknown, a conductor, or earth.
-fn star_point(point: NeutralPoint, node: NodeId, numbering: &Numbering, system: &mut System) -> Terminal {
-    match point {
-        NeutralPoint::None => None,
-        NeutralPoint::Conductor => numbering.at(node, Conductor::N),
-        NeutralPoint::Floating => Some(system.unknown()),
-        NeutralPoint::Earthed(ohm) if ohm > 0.0 => {
-            let star = Some(system.unknown());
-            system.admittance(star, None, Complex64::from(1.0 / ohm));
-            star
-        }
-        NeutralPoint::Earthed(_) => None,
-    }
-}
-
-fn add_transformer(t: &Transformer, branch: &Branch, numbering: &Numbering, system: &mut System) {
-    let no_load = t.no_load_watts != 0.0 || t.magnetizing_pu != 0.0;
-    let both_float = t.from_neutral == NeutralPoint::Floating && t.to_neutral == NeutralPoint::Floating;
-    let from_star = star_point(t.from_neutral, branch.from, numbering, system);
-    let to_star = if both_float && !no_load {
-        // Only the difference of both star points matters: the second is put at earth, its current sums to zero anyway.
-        None
-    } else {
-        star_point(t.to_neutral, branch.to, numbering, system)
-    };
-    let (units, uf, ut) = match t.group {
-        VectorGroup::Single { .. } => (1.0, t.from_volts, t.to_volts),
-        VectorGroup::Three { from, to, .. } => {
-            let winding =
-                |w: Winding, volts: f64| if w == Winding::Delta { volts } else { volts / 3f64.sqrt() };
-            (3.0, winding(from, t.from_volts), winding(to, t.to_volts))
-        }
-    };
-    let s = t.rated_va / units;
-    let ratio = uf / (ut * (1.0 + t.tap_pu));
-    let y = (Complex64::new(t.r_pu, t.x_pu) * ut * ut / s).inv();
-    let y0 = Complex64::new(t.no_load_watts / units, -t.magnetizing_pu * s) / (uf * uf);
-    for (from, to) in windings(t) {
-        let f = from.map(|end| end.map_or(from_star, |c| numbering.at(branch.from, c)));
-        let g = to.map(|end| end.map_or(to_star, |c| numbering.at(branch.to, c)));
-        // Into the from winding's start: (vf/t - vt) y/t + y0 vf; into the to winding's start: -(vf/t - vt) y.
-        let mut winding = |row: [Terminal; 2], column: [Terminal; 2], value: Complex64| {
-            system.difference(row[0], column, value);
-            system.difference(row[1], column, -value);
-        };
-        winding(f, f, y / (ratio * ratio) + y0);
-        winding(f, g, -y / ratio);
-        winding(g, f, -y / ratio);
-        winding(g, g, y);
-    }
-}
-
-/// Start and end of the windings of one unit; `None` is the star point.
-type Ends = [Option<Conductor>; 2];
-
-/// Windings of each unit, from the rules of the vector group.
-fn windings(t: &Transformer) -> Vec<(Ends, Ends)> {
-    let next = |c: Conductor| c.next();
-    let before = |c: Conductor| c.next().next();
-    let (from, to, clock) = match t.group {
-        VectorGroup::Single { clock } => {
-            let connection = t.terminals.expect("a single-phase unit has terminals");
-            let ends = |(p, q): (Conductor, Conductor)| [Some(p), (q != Conductor::N).then_some(q)];
-            let pair = connection.pairs().map(ends).next().expect("one unit");
-            return vec![(pair, if clock == 6 { [pair[1], pair[0]] } else { pair })];
-        }
-        VectorGroup::Three { from, to, clock } => (from, to, clock),
-    };
-    // The clock as a base connection, then moves of 120 degrees (4) and a reversal (6).
-    let delta = |w: Winding| w == Winding::Delta;
-    let bases: &[u8] = match (delta(from), delta(to)) {
-        (a, b) if a == b => &[0, 6],
-        _ => &[1, 11],
-    };
-    let (base, moves) = bases
-        .iter()
-        .flat_map(|&base| (0..3u8).map(move |moves| (base, moves)))
-        .find(|(base, moves)| (base + 4 * moves) % 12 == clock)
-        .expect("a clock number of the group");
-    let mut units = Vec::new();
-    for k in Conductor::PHASES {
-        let star = [Some(k), None];
-        let (f, mut g): (Ends, Ends) = match (delta(from), delta(to), base) {
-            (false, false, _) => (star, star),
-            (true, true, _) => ([Some(k), Some(next(k))], [Some(k), Some(next(k))]),
-            (true, false, 1) => ([Some(k), Some(before(k))], star),
-            (true, false, _) => ([Some(k), Some(next(k))], star),
-            (false, true, 1) => (star, [Some(k), Some(next(k))]),
-            (false, true, _) => (star, [Some(k), Some(before(k))]),
-        };
-        for _ in 0..moves {
-            g = g.map(|end| end.map(before));
-        }
-        if base == 6 {
-            g.swap(0, 1);
-        }
-        units.push((f, g));
-    }
-    units
 }
 
 fn add_shunts(network: &Network, numbering: &Numbering, system: &mut System) {
     for (i, node) in network.nodes.iter().enumerate() {
         let id = NodeId(i as u32);
-        for (c, y) in Conductor::ALL.into_iter().zip(node.earth_admittance()) {
-            system.admittance(numbering.at(id, c), None, y);
+        for (slot, y) in node.earth_admittance().into_iter().enumerate() {
+            system.admittance(numbering.0[id.index()][slot], None, y);
         }
     }
     let terminals = |id: NodeId, connection: Connection| {
@@ -326,6 +224,7 @@ fn add_shunts(network: &Network, numbering: &Numbering, system: &mut System) {
     for load in &network.loads {
         for (node, share) in network.load_sites(load) {
             let nominal = match load.connection {
+                Connection::Star(phases) if phases.is_split() => network.node(node).nominal_volts / 2.0,
                 Connection::Star(_) => network.node(node).nominal_volts / 3f64.sqrt(),
                 Connection::Delta(_) => network.node(node).nominal_volts,
             };

@@ -114,7 +114,7 @@ impl Grower {
         let name = format!("N{}", self.spots.len());
         let spot = match self.rng.random_range(0..100) {
             0..8 => self.switch(&parent, name),
-            8..16 => self.regulator(&parent, name),
+            8..16 if !parent.conductors.is_split() => self.regulator(&parent, name),
             16..32 => self.transformer(&parent, name),
             _ => self.line(&parent, name),
         };
@@ -255,11 +255,102 @@ impl Grower {
             v if v > 300.0 => 300e3,
             _ => 60e3,
         };
-        if three && self.chance(0.7) {
-            self.bank(parent, name, far_volts, rating)
-        } else {
-            self.unit(parent, name, far_volts, rating / 3.0)
+        if parent.conductors.is_split() {
+            return self.line(parent, name);
         }
+        match self.rng.random_range(0..100) {
+            0..50 if three => self.bank(parent, name, far_volts, rating),
+            50..60 if three && parent.held => self.auto(parent, name, far_volts, rating),
+            60..72 if three => self.units(parent, name, far_volts, rating),
+            72..86 => self.centre_tap(parent, name),
+            _ => self.unit(parent, name, far_volts, rating / 3.0),
+        }
+    }
+
+    /// An autotransformer in star.
+    fn auto(&mut self, parent: &Spot, name: String, far_volts: f64, rating: f64) -> Spot {
+        let carries_neutral = self.chance(0.6);
+        let forward = self.chance(0.7);
+        let (from, to) =
+            if forward { (parent.name.clone(), name.clone()) } else { (name.clone(), parent.name.clone()) };
+        let mut record = self.record(&name, from, to, rating);
+        record.group = VectorGroup::Auto;
+        (record.from_volts, record.to_volts) =
+            if forward { (parent.volts, far_volts) } else { (far_volts, parent.volts) };
+        if !parent.conductors.has_neutral() && !carries_neutral && self.chance(0.5) {
+            record.from_earth_ohm = Some(self.earthing());
+        }
+        self.draft.transformers.push(record);
+        if carries_neutral {
+            self.electrode(&name);
+        }
+        let conductors = if carries_neutral { Conductors::ABCN } else { Conductors::ABC };
+        // Without an earth on either side the neutral follows the parent's.
+        let wired_return = carries_neutral || parent.conductors.has_neutral();
+        Spot { name, conductors, volts: far_volts, held: true, rating, wired_return }
+    }
+
+    /// Two or three unequal single-phase units as one bank: open star, open delta and the like.
+    fn units(&mut self, parent: &Spot, name: String, far_volts: f64, rating: f64) -> Spot {
+        let [near_star, far_star] = [parent.held && self.chance(0.6), self.chance(0.5)];
+        let join = |star: bool, phase: Conductor| {
+            let set = Conductors::NONE.with(phase);
+            if star { Connection::Star(set) } else { Connection::Delta(set) }
+        };
+        let count = if self.chance(0.7) { 2 } else { 3 };
+        let volts = |star: bool, line: f64| if star { line / 3f64.sqrt() } else { line };
+        let mut far_phases = Conductors::NONE;
+        for (k, phase) in Conductor::PHASES.into_iter().take(count).enumerate() {
+            let mut record = self.record(&name, parent.name.clone(), name.clone(), rating / 3.0);
+            record.transformer = format!("T{name}{k}").into();
+            record.rated_va *= self.between(0.5, 1.0);
+            record.group = VectorGroup::Single { clock: 0 };
+            record.tap_pu = 0.0;
+            record.terminals = Some([join(near_star, phase), join(far_star, phase)]);
+            (record.from_volts, record.to_volts) =
+                (volts(near_star, parent.volts), volts(far_star, far_volts));
+            far_phases = far_phases.union(join(far_star, phase).phases());
+            self.draft.transformers.push(record);
+        }
+        let carries_neutral = far_star && self.chance(0.6);
+        if carries_neutral {
+            self.electrode(&name);
+        }
+        let conductors = if carries_neutral { far_phases.with(Conductor::N) } else { far_phases };
+        Spot { name, conductors, volts: far_volts, held: far_star, rating, wired_return: carries_neutral }
+    }
+
+    /// A single-phase unit with two halves and a point between them.
+    fn centre_tap(&mut self, parent: &Spot, name: String) -> Spot {
+        let phases: Vec<Conductor> = parent.conductors.phases().iter().collect();
+        let pairs: Vec<Conductor> =
+            phases.iter().copied().filter(|p| parent.conductors.has(p.next())).collect();
+        let across = !pairs.is_empty() && (!parent.held || self.chance(0.4));
+        if !across && !parent.held {
+            return self.line(parent, name);
+        }
+        let start = if across { self.pick(&pairs) } else { self.pick(&phases) };
+        let set = Conductors::NONE.with(start);
+        let near = if across { Connection::Delta(set) } else { Connection::Star(set) };
+        let mut record = self.record(&name, parent.name.clone(), name.clone(), 30e3);
+        record.group = VectorGroup::CentreTap { clock: self.pick(&[0, 0, 6]) };
+        record.terminals = Some([near, Connection::Star(Conductors::S1S2)]);
+        record.from_volts = if across { parent.volts } else { parent.volts / 3f64.sqrt() };
+        let volts = self.pick(&[240.0, 460.0]);
+        record.to_volts = volts;
+        self.draft.transformers.push(record);
+        let earthed = self.chance(0.8);
+        if earthed {
+            self.electrode(&name);
+        }
+        let conductors = Conductors::S1S2.with(Conductor::N);
+        Spot { name, conductors, volts, held: true, rating: 30e3, wired_return: true }
+    }
+
+    /// Resistance or reactance between a star point and earth.
+    fn earthing(&mut self) -> Complex64 {
+        let ohm = self.between(0.1, 20.0);
+        if self.chance(0.3) { Complex64::new(0.0, ohm) } else { Complex64::from(ohm) }
     }
 
     fn record(&mut self, name: &str, from: String, to: String, rated_va: f64) -> TransformerRecord {
@@ -278,6 +369,7 @@ impl Grower {
             no_load_watts: if no_load { rated_va * self.between(0.001, 0.003) } else { 0.0 },
             magnetizing_pu: if no_load { self.between(0.002, 0.01) } else { 0.0 },
             tap_pu: self.pick(&[0.0, 0.025, -0.05, 0.05]),
+            from_tap_pu: self.pick(&[0.0, 0.0, -0.025, 0.05]),
             from_earth_ohm: None,
             to_earth_ohm: None,
             origin: None,
@@ -285,22 +377,36 @@ impl Grower {
     }
 
     fn bank(&mut self, parent: &Spot, name: String, far_volts: f64, rating: f64) -> Spot {
-        let near = self.pick(&[Winding::Star, Winding::StarNeutral, Winding::Delta]);
-        let far = self.pick(&[Winding::Star, Winding::StarNeutral, Winding::StarNeutral, Winding::Delta]);
+        use Winding::{Delta, Star, StarNeutral, Zigzag, ZigzagNeutral};
+        let near =
+            self.pick(&[Star, Star, StarNeutral, StarNeutral, Delta, Delta, Delta, Zigzag, ZigzagNeutral]);
+        let far = if near.is_zigzag() {
+            self.pick(&[Star, StarNeutral, Delta])
+        } else {
+            self.pick(&[
+                Star,
+                Star,
+                StarNeutral,
+                StarNeutral,
+                StarNeutral,
+                Delta,
+                Delta,
+                Zigzag,
+                ZigzagNeutral,
+            ])
+        };
         // A star point earthed on a side that nothing else earths would be its only, and a poor, earth.
-        let near = if near == Winding::StarNeutral && !parent.held { Winding::Delta } else { near };
-        let alike = (near == Winding::Delta) == (far == Winding::Delta);
+        let near = if near.has_neutral() && !parent.held { Delta } else { near };
+        let alike = near.is_star() == far.is_star();
         let clock = self.pick(if alike { &[0, 2, 4, 6, 8, 10] } else { &[1, 3, 5, 7, 9, 11] });
-        let carries_neutral = far == Winding::StarNeutral && self.chance(0.6);
+        let carries_neutral = far.has_neutral() && self.chance(0.6);
         let forward = self.chance(0.7);
         let (from, to) =
             if forward { (parent.name.clone(), name.clone()) } else { (name.clone(), parent.name.clone()) };
         let mut record = self.record(&name, from, to, rating);
-        let near_earth =
-            (near == Winding::StarNeutral && !parent.conductors.has_neutral() && self.chance(0.5))
-                .then(|| self.between(0.1, 20.0));
-        let far_earth = (far == Winding::StarNeutral && !carries_neutral && self.chance(0.5))
-            .then(|| self.between(0.1, 20.0));
+        let near_earth = (near.has_neutral() && !parent.conductors.has_neutral() && self.chance(0.5))
+            .then(|| self.earthing());
+        let far_earth = (far.has_neutral() && !carries_neutral && self.chance(0.5)).then(|| self.earthing());
         (record.from_volts, record.to_volts) =
             if forward { (parent.volts, far_volts) } else { (far_volts, parent.volts) };
         (record.from_earth_ohm, record.to_earth_ohm) =
@@ -316,7 +422,7 @@ impl Grower {
             name,
             conductors,
             volts: far_volts,
-            held: far == Winding::StarNeutral && near != Winding::Star,
+            held: far == ZigzagNeutral || far == StarNeutral && near != Star && !near.is_zigzag(),
             rating,
             wired_return: carries_neutral,
         }
@@ -332,16 +438,20 @@ impl Grower {
         }
         let start = if across { self.pick(&pairs) } else { self.pick(&phases) };
         let set = Conductors::NONE.with(start);
-        let terminals = if across { Connection::Delta(set) } else { Connection::Star(set) };
+        let near = if across { Connection::Delta(set) } else { Connection::Star(set) };
+        // One unit in three has other terminals on its far side.
+        let far_across = if self.chance(0.3) { !across } else { across };
+        let terminals = if far_across { Connection::Delta(set) } else { Connection::Star(set) };
         let (from, to) = (parent.name.clone(), name.clone());
         let mut record = self.record(&name, from, to, rating);
-        record.group = VectorGroup::Single { clock: self.pick(&[0, 6]) };
-        record.terminals = Some(terminals);
-        let phase = 3f64.sqrt();
-        (record.from_volts, record.to_volts) =
-            if across { (parent.volts, far_volts) } else { (parent.volts / phase, far_volts / phase) };
+        let auto = !across && !far_across && self.chance(0.2);
+        record.group =
+            if auto { VectorGroup::SingleAuto } else { VectorGroup::Single { clock: self.pick(&[0, 6]) } };
+        record.terminals = Some([near, terminals]);
+        let volts = |across: bool, line: f64| if across { line } else { line / 3f64.sqrt() };
+        (record.from_volts, record.to_volts) = (volts(across, parent.volts), volts(far_across, far_volts));
         self.draft.transformers.push(record);
-        let carries_neutral = !across && self.chance(0.6);
+        let carries_neutral = !far_across && self.chance(0.6);
         if carries_neutral {
             self.electrode(&name);
         }
@@ -350,7 +460,7 @@ impl Grower {
             Connection::Star(_) => set,
             Connection::Delta(_) => set.with(start.next()),
         };
-        Spot { name, conductors, volts: far_volts, held: !across, rating, wired_return: carries_neutral }
+        Spot { name, conductors, volts: far_volts, held: !far_across, rating, wired_return: carries_neutral }
     }
 
     fn loads(&mut self, nodes: usize) {
@@ -380,7 +490,8 @@ impl Grower {
     /// A connection that the conductors allow; none where only a load to earth would be left on a side without earth.
     fn connection(&mut self, spot: &Spot, conductors: Conductors) -> Option<Connection> {
         let phases = conductors.phases();
-        let pairs: Conductors = phases.iter().filter(|p| phases.has(p.next())).collect();
+        let pairs: Conductors =
+            phases.iter().filter(|p| phases.has(p.next()) && *p != Conductor::S2).collect();
         let by_earth = !spot.conductors.has_neutral() && !spot.wired_return;
         let star = spot.held && (conductors.has_neutral() || by_earth);
         match (star, pairs.is_empty()) {

@@ -4,7 +4,7 @@ use std::collections::HashMap;
 use std::fmt::Write as _;
 
 use super::findings::findings;
-use crate::math::degrees;
+use crate::math::{SLOTS, degrees};
 use crate::network::{BranchKind, Conductor, Network, NodeId};
 use crate::output::table::{Cell, Colour, Column, Table, folded, number, printable};
 use crate::solver::Solution;
@@ -18,6 +18,9 @@ pub enum Length {
     /// Everything.
     Full,
 }
+
+/// Which columns the outer conductors of a centre tap take.
+const SPLIT_NOTE: &str = "Behind a centre tap, columns a and b hold s1 and s2.";
 
 /// Rows of a long table that are shown.
 const WORST: usize = 20;
@@ -150,8 +153,8 @@ fn nodes(text: &mut String, network: &Network, solution: &Solution, report: &Flo
     for &id in order.iter().take(shown) {
         let node = network.node(id);
         let mut row = vec![Cell::Text(node.name.to_string()), Cell::Number(node.nominal_volts / 1e3)];
-        for (value, c) in phase_pu(network, solution, id).into_iter().zip(Conductor::PHASES) {
-            let carried = node.conductors.has(c);
+        for (slot, value) in phase_pu(network, solution, id).into_iter().enumerate() {
+            let carried = node.conductors.has_slot(slot);
             row.push(if carried { Cell::Number(value.0) } else { Cell::Blank });
             row.push(if carried { Cell::Number(value.1) } else { Cell::Blank });
         }
@@ -161,6 +164,9 @@ fn nodes(text: &mut String, network: &Network, solution: &Solution, report: &Flo
         table.rows.push(row);
     }
     let _ = writeln!(text, "{heading}\n{}", table.text());
+    if order.iter().take(shown).any(|&id| network.node(id).conductors.is_split()) {
+        let _ = writeln!(text, "{SPLIT_NOTE}\n");
+    }
 }
 
 /// Voltage of each phase, per unit and degrees, to neutral where it is carried.
@@ -200,15 +206,18 @@ fn branches(text: &mut String, network: &Network, solution: &Solution, report: &
             other => other.word().to_string(),
         };
         let mut row = vec![Cell::Text(branch.name.to_string()), Cell::Text(kind)];
-        for c in Conductor::ALL {
-            let amps = solution.from_amps[b][c.slot()].norm();
-            row.push(if branch.from_conductors.has(c) { Cell::Number(amps) } else { Cell::Blank });
+        for slot in 0..SLOTS {
+            let amps = solution.from_amps[b][slot].norm();
+            row.push(if branch.from_conductors.has_slot(slot) { Cell::Number(amps) } else { Cell::Blank });
         }
         row.push(Cell::Number(report.elements[b].loss_kw));
         row.push(report.elements[b].rating_percent.into());
         table.rows.push(row);
     }
     let _ = writeln!(text, "{heading}\n{}", table.text());
+    if order.iter().take(shown).any(|&b| network.branches[b].from_conductors.is_split()) {
+        let _ = writeln!(text, "{SPLIT_NOTE}\n");
+    }
 }
 
 fn regulators(text: &mut String, report: &FlowReport) {

@@ -4,7 +4,7 @@ use serde::Serialize;
 
 use super::{ElementLoss, LoadDraw, element_volts};
 use crate::math::{Complex64, PhaseVector, SLOTS};
-use crate::network::{Branch, BranchKind, Conductor, Network, Transformer, VectorGroup};
+use crate::network::{Branch, BranchKind, Conductor, End, Network, Transformer};
 use crate::solver::Solution;
 use crate::units::SQRT_3;
 
@@ -77,24 +77,25 @@ pub(super) fn elements(network: &Network, solution: &Solution) -> Vec<ElementLos
 
 /// Largest phase current over the rating, percent.
 fn rating_percent(branch: &Branch, from: &PhaseVector, to: &PhaseVector) -> Option<f64> {
-    let largest =
-        |amps: &PhaseVector| Conductor::PHASES.iter().map(|c| amps[c.slot()].norm()).fold(0.0, f64::max);
+    let largest = |amps: &PhaseVector| (0..Conductor::N.slot()).map(|k| amps[k].norm()).fold(0.0, f64::max);
     match &branch.kind {
         BranchKind::Line(_) => Some(100.0 * largest(from).max(largest(to)) / branch.rating_amps?),
         BranchKind::Transformer(t) => {
-            let share = |amps: f64, volts: f64| 100.0 * amps / rated_amps(t, volts);
-            Some(share(largest(from), t.from_volts).max(share(largest(to), t.to_volts)))
+            let share = |amps: f64, end: End| 100.0 * amps / rated_amps(t, end);
+            Some(share(largest(from), End::From).max(share(largest(to), End::To)))
         }
         BranchKind::Switch | BranchKind::Regulator(_) => None,
     }
 }
 
-/// Rated current of a side, amperes: in each line conductor of a bank, in the winding of a single-phase unit.
-fn rated_amps(t: &Transformer, volts: f64) -> f64 {
-    match t.group {
-        VectorGroup::Three { .. } => t.rated_va / (SQRT_3 * volts),
-        VectorGroup::Single { .. } => t.rated_va / volts,
-    }
+/// Rated current of a side, amperes: in each line conductor of a three-phase bank, in the winding of
+/// a single-phase unit; of several units the least.
+fn rated_amps(t: &Transformer, end: End) -> f64 {
+    let of = |unit: &Transformer| {
+        let volts = if end == End::From { unit.from_volts } else { unit.to_volts };
+        if unit.group.is_single() { unit.rated_va / volts } else { unit.rated_va / (SQRT_3 * volts) }
+    };
+    t.units().map(of).fold(f64::INFINITY, f64::min)
 }
 
 /// Totals of the network.

@@ -3,7 +3,7 @@
 use std::fmt;
 
 use super::{ElementLoss, NodeSummary, phase_volts};
-use crate::network::{BranchKind, Conductor, Conductors, Network, Node, NodeId};
+use crate::network::{BranchKind, Conductor, Conductors, Network, Node, NodeId, VectorGroup};
 use crate::solver::Solution;
 
 /// An extreme value and where it is.
@@ -55,11 +55,12 @@ impl fmt::Display for Across {
 /// What is judged at a node: each phase; each pair of phases on a side that no earth holds.
 fn spans(node: &Node, floats: bool) -> impl Iterator<Item = Across> + use<> {
     let carried = node.conductors;
-    Conductor::PHASES.into_iter().filter(move |c| carried.has(*c)).filter_map(move |c| {
+    carried.phases().iter().filter_map(move |c| {
         if !floats {
             Some(Across::Phase(c))
         } else {
-            carried.has(c.next()).then_some(Across::Phases(c, c.next()))
+            let pair = carried.has(c.next()) && c != Conductor::S2;
+            pair.then_some(Across::Phases(c, c.next()))
         }
     })
 }
@@ -102,11 +103,16 @@ pub(super) fn floating_nodes(network: &Network) -> Vec<bool> {
     let mut floating = vec![false; network.nodes.len()];
     for &id in &network.order {
         let inherits = network.feeds[id.index()]
-            .filter(|feed| !matches!(network.branch(feed.branch).kind, BranchKind::Transformer(_)))
+            .filter(|feed| !isolates(&network.branch(feed.branch).kind))
             .is_some_and(|feed| floating[feed.parent.index()]);
         floating[id.index()] = inherits || !network.node(id).reference_on.phases().is_empty();
     }
     floating
+}
+
+/// True where no conductor goes through.
+fn isolates(kind: &BranchKind) -> bool {
+    matches!(kind, BranchKind::Transformer(t) if !matches!(t.group, VectorGroup::Auto | VectorGroup::SingleAuto))
 }
 
 /// For each node, where the voltage was last set on its way: the supply, a transformer's or a regulator's far node.
