@@ -8,6 +8,7 @@ mod accelerate;
 mod branch;
 mod coils;
 mod control;
+mod follow;
 mod injection;
 mod lanes;
 mod recover;
@@ -22,7 +23,7 @@ mod workspace;
 pub use control::{RegulatedUnit, TapState, solve_regulated};
 pub use residual::{Residual, load_current, residual};
 pub use settings::Settings;
-pub use solution::{Solution, Status};
+pub use solution::{Path, Solution, Status};
 pub use sweep::Iterations;
 pub use workspace::Workspace;
 

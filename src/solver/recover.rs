@@ -1,32 +1,83 @@
 //! From the last iterate to a solution: currents at every branch end, the independent check, the status.
 
 use super::branch::Seen;
+use super::follow::Followed;
 use super::residual::residual;
 use super::settings::Settings;
-use super::solution::{Solution, Status};
+use super::solution::{Path, Solution, Status};
 use super::sweep::Iterations;
 use super::terminals::Terminals;
 use super::workspace::Workspace;
 use crate::math::{Complex64, PhaseVector};
-use crate::network::{BranchKind, Conductors, End, Feed, NodeId};
+use crate::network::{BranchKind, Conductors, End, Feed, Network, NodeId};
 
 const N: usize = 3;
+
+/// Below this voltage at a load, share of nominal, there may be another solution above.
+const DOUBTFUL_PU: f64 = 0.8;
+/// With so few sweeps from a flat start there is none.
+const FEW_SWEEPS: usize = 25;
+/// Sweeps after which following the loads is the surer way.
+const MOST_SWEEPS: usize = 150;
+/// Solutions whose voltages differ by less are one, share of nominal.
+const SAME_PU: f64 = 1e-6;
+
+/// Whether two solutions are one.
+fn same(network: &Network, one: &Solution, other: &Solution) -> bool {
+    network
+        .nodes
+        .iter()
+        .zip(one.volts.iter().zip(&other.volts))
+        .all(|(node, (a, b))| (a - b).iter().all(|d| d.norm() < SAME_PU * node.nominal_phase_volts()))
+}
 
 impl Workspace<'_> {
     /// Solves from a flat start and checks the result.
     ///
+    /// Where the sweep does not settle, or settles at voltages so low that there may be another
+    /// solution above, the loads are followed from nothing (see the module `follow`).
+    pub fn solve(&mut self, settings: &Settings) -> Solution {
+        let swept = self.sweep(settings);
+        let converged = swept.status == Status::Converged;
+        let low = || self.lowest_at_loads() < DOUBTFUL_PU;
+        let given_up = !converged && swept.iterations >= settings.iteration_limit;
+        if given_up || converged && swept.iterations <= FEW_SWEEPS && !low() {
+            return swept;
+        }
+
+        match self.follow() {
+            Followed::Reached { passes, change_pu } => {
+                let count = swept.iterations + passes;
+                let done = Iterations { count, change_pu };
+                let followed = self.checked(settings, done, done, true);
+                let good = followed.status == Status::Converged;
+                if !good || converged && same(self.network, &swept, &followed) {
+                    return swept;
+                }
+                Solution { path: Path::Followed, ..followed }
+            }
+            Followed::Folds { share } => {
+                let status = if converged { Status::Converged } else { Status::BeyondLoadability };
+                Solution { status, path: Path::Folds { share }, ..swept }
+            }
+        }
+    }
+
+    /// Sweeps from a flat start.
+    ///
     /// Where the voltages have settled but the independent check still finds too large a current
     /// mismatch, the iteration goes on with a tighter test.
-    pub fn solve(&mut self, settings: &Settings) -> Solution {
+    fn sweep(&mut self, settings: &Settings) -> Solution {
+        let limit = settings.iteration_limit.min(MOST_SWEEPS);
         self.start_flat();
         let mut tolerance = settings.voltage_tolerance_pu;
         let mut total = Iterations { count: 0, change_pu: f64::INFINITY };
         loop {
-            let done = self.iterate(tolerance, settings.iteration_limit.saturating_sub(total.count));
+            let done = self.iterate(tolerance, limit.saturating_sub(total.count));
             total = Iterations { count: total.count + done.count, change_pu: done.change_pu.min(f64::MAX) };
             let settled = done.change_pu <= tolerance;
             let solution = self.checked(settings, total, done, settled);
-            let spent = total.count >= settings.iteration_limit;
+            let spent = total.count >= limit;
             if solution.status == Status::Converged || !settled || spent || tolerance < 1e-14 {
                 return solution;
             }

@@ -12,8 +12,26 @@ pub enum Status {
     IterationLimit,
     /// Numbers grew beyond all bounds.
     Diverged,
+    /// Loads raised from nothing have no solution beyond the share told by [`Path::Folds`].
+    BeyondLoadability,
     /// The linear part has no solution at this node: a side without reference, or opposite impedances.
     Singular(NodeId),
+}
+
+/// How the solution was reached.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub enum Path {
+    /// By sweeping from a flat start, at voltages near enough to no load that there is no doubt
+    /// which solution it is; or also when followed, with the same result.
+    Swept,
+    /// By raising the loads step by step from nothing: the sweep alone did not get there.
+    Followed,
+    /// Loads raised from nothing have no near solution beyond this share of them. A converged
+    /// solution is then one of collapsed voltages, with loads that draw less than they should.
+    Folds {
+        /// Share of all loads, 0 to 1.
+        share: f64,
+    },
 }
 
 /// Voltages and currents of a network, conductor order a, b, c, n; slots not carried are zero.
@@ -21,7 +39,9 @@ pub enum Status {
 pub struct Solution {
     /// How the solve ended. Only with [`Status::Converged`] are the other fields results.
     pub status: Status,
-    /// Iterations made.
+    /// How it was reached.
+    pub path: Path,
+    /// Iterations made: passes up and down.
     pub iterations: usize,
     /// Largest change of a node voltage in the last iteration, per unit of nominal.
     pub change_pu: f64,
@@ -46,6 +66,7 @@ impl Solution {
     pub(super) fn unsolved(network: &Network) -> Solution {
         Solution {
             status: Status::IterationLimit,
+            path: Path::Swept,
             iterations: 0,
             change_pu: f64::INFINITY,
             worst_node: network.supply.node,

@@ -1,7 +1,7 @@
 //! How far all loads can grow together until the feeder has no solution, and where it gives way.
 
 use crate::network::{Network, NodeId};
-use crate::solver::{Settings, Solution, Status, solve};
+use crate::solver::{Path, Settings, Solution, Status, solve};
 
 /// Factors are told apart down to this share.
 const RESOLUTION: f64 = 1e-3;
@@ -31,7 +31,8 @@ pub fn loadability(network: &Network, settings: &Settings) -> Loadability {
     let attempt = |factor: f64| {
         let grown = grown(network, factor);
         let solution = solve(&grown, settings);
-        (solution.status == Status::Converged).then_some(solution)
+        let good = solution.status == Status::Converged && !matches!(solution.path, Path::Folds { .. });
+        good.then_some(solution)
     };
     let (mut low, mut high, mut solved) = (0.0, None, None);
     let mut factor = 1.0;

@@ -18,6 +18,7 @@ mod coils;
 mod newton;
 use newton::{at, follow};
 
+#[allow(dead_code)] // not every test looks at all of it
 /// Solved voltages by node and slot, current drawn from the source, and total losses.
 pub struct NodalSolution {
     /// Volts to earth, slots a, b, c, n.

@@ -2,7 +2,7 @@
 
 use crate::network::Network;
 use crate::output::table::folded;
-use crate::solver::{Solution, Status};
+use crate::solver::{Path, Solution, Status};
 
 /// The message for a solution that did not converge, without any voltage; empty for one that did.
 pub fn no_solution_text(network: &Network, solution: &Solution) -> String {
@@ -11,6 +11,7 @@ pub fn no_solution_text(network: &Network, solution: &Solution) -> String {
     let place = &network.node(solution.worst_node).name;
     let count = solution.iterations;
     let (why, look) = match solution.status {
+        Status::BeyondLoadability => (beyond(solution), limit),
         Status::Converged => return String::new(),
         Status::Singular(node) => (
             format!("the linear part of the network has no solution at node {}", network.node(node).name),
@@ -31,6 +32,20 @@ pub fn no_solution_text(network: &Network, solution: &Solution) -> String {
     text.push_str(&folded("  ", &format!("Look at: {look}.")));
     text.push_str("  No results are shown, since none are good.\n");
     text
+}
+
+/// How far the loads could be followed.
+fn beyond(solution: &Solution) -> String {
+    match solution.path {
+        Path::Folds { share } if share > 0.0 => format!(
+            "raised from nothing, the loads have a solution up to {:.1} % of what is given, and none beyond",
+            100.0 * share
+        ),
+        _ => format!(
+            "no share of the loads has a solution; the voltages have not settled after {} iterations",
+            solution.iterations
+        ),
+    }
 }
 
 /// A number with its unit, or words for one that is none.
