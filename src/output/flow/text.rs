@@ -8,7 +8,7 @@ use crate::math::{SLOTS, degrees};
 use crate::network::{BranchKind, Conductor, Network, NodeId};
 use crate::output::table::{Cell, Colour, Column, Table, folded, number, printable};
 use crate::solver::Solution;
-use crate::study::flow::{Extreme, FlowReport, lowest_judged};
+use crate::study::flow::{Electrode, Extreme, FlowReport, lowest_judged};
 
 /// How much of the tables is shown.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -24,6 +24,9 @@ const SPLIT_NOTE: &str = "Behind a centre tap, columns a and b hold s1 and s2.";
 
 /// Rows of a long table that are shown.
 const WORST: usize = 20;
+/// Rows of the table of electrodes.
+const WORST_ELECTRODES: usize = 10;
+
 /// The page as text, at most 100 columns wide.
 pub fn flow_text(
     network: &Network,
@@ -40,7 +43,46 @@ pub fn flow_text(
     nodes(&mut text, network, solution, report, length);
     branches(&mut text, network, solution, report, length);
     regulators(&mut text, report);
+    electrodes(&mut text, report, length);
     text
+}
+
+/// Electrodes, those of the highest voltage first.
+fn electrodes(text: &mut String, report: &FlowReport, length: Length) {
+    let mut order: Vec<&Electrode> = report.electrodes.iter().collect();
+    if order.is_empty() {
+        return;
+    }
+    order.sort_by(|a, b| b.volts.total_cmp(&a.volts));
+    let all = order.len();
+    if length == Length::Short && all > WORST_ELECTRODES {
+        order.truncate(WORST_ELECTRODES);
+    }
+    let heading = match order.len() == all {
+        true => "Earth electrodes, highest voltage first".to_string(),
+        false => format!("Earth electrodes: the {} of highest voltage of {all} (--all for all)", order.len()),
+    };
+    let mut table = Table::new(&[
+        Column::text("node"),
+        Column::text("earths"),
+        Column::number("electrode", "ohm", 2),
+        Column::number("into earth", "A", 3),
+        Column::number("to remote earth", "V", 2),
+    ]);
+    for electrode in order {
+        let what = match &electrode.transformer {
+            Some(name) => format!("neutral point of {name}"),
+            None => "neutral".to_string(),
+        };
+        table.rows.push(vec![
+            Cell::Text(electrode.node.to_string()),
+            Cell::Text(what),
+            Cell::Number(electrode.r_ohm.hypot(electrode.x_ohm)),
+            Cell::Number(electrode.amps),
+            Cell::Number(electrode.volts),
+        ]);
+    }
+    let _ = writeln!(text, "{heading}\n{}", table.text());
 }
 
 fn head(text: &mut String, report: &FlowReport) {

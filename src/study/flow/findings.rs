@@ -4,9 +4,9 @@ use serde::Serialize;
 
 use super::losses::Totals;
 use super::places::{drop_percent, floating_nodes, judged, set_points};
-use super::{ElementLoss, LoadDraw, NodeSummary};
+use super::{Electrode, ElementLoss, LoadDraw, NodeSummary};
 use crate::network::{BranchKind, Network};
-use crate::solver::{RegulatedUnit, Solution, TapState};
+use crate::solver::{Path, RegulatedUnit, Solution, TapState};
 
 /// Conventional limit of touch voltage in normal dry conditions, volts AC (IEC 60364-4-41; from memory).
 const TOUCH_VOLTAGE_V: f64 = 50.0;
@@ -70,6 +70,9 @@ pub enum Rule {
     /// Regulator at the end of its range, hunting, or fed backwards.
     #[serde(rename = "regulator")]
     Regulator,
+    /// Voltages that are those after a collapse.
+    #[serde(rename = "voltage collapse")]
+    Collapse,
     /// A side that nothing but a stated reference holds to earth.
     #[serde(rename = "no earth")]
     NoEarth,
@@ -91,6 +94,7 @@ impl Rule {
             Rule::Overload => "overload",
             Rule::BelowFloor => "load below floor",
             Rule::Regulator => "regulator",
+            Rule::Collapse => "voltage collapse",
             Rule::NoEarth => "no earth",
             Rule::Caution => "caution",
         }
@@ -117,6 +121,7 @@ pub struct Finding {
 
 /// What findings are drawn from.
 pub(super) struct Seen<'a> {
+    pub electrodes: &'a [Electrode],
     pub network: &'a Network,
     pub solution: &'a Solution,
     pub elements: &'a [ElementLoss],
@@ -135,6 +140,7 @@ pub(super) fn all(seen: &Seen) -> Vec<Finding> {
     below_floor(seen, &mut found);
     regulators(seen, &mut found);
     unearthed(seen, &mut found);
+    collapse(seen, &mut found);
     balance(seen, &mut found);
     caution(seen, &mut found);
     let excess = |f: &Finding| match (f.rule, f.limit) {
@@ -191,21 +197,42 @@ fn nodes(seen: &Seen, found: &mut Vec<Finding>) {
             let text = format!("unbalance factor {percent:.2} %, limit {} %", study.unbalance_limit_percent);
             found.push(warning(Rule::Unbalance, place(), percent, Some(study.unbalance_limit_percent), text));
         }
-        let Some(volts) = node.neutral_volts else { continue };
-        match study.neutral_limit_v {
-            Some(limit) if volts > limit => {
-                let text = format!("neutral {volts:.2} V above remote earth, limit {limit} V");
-                found.push(warning(Rule::NeutralVoltage, place(), volts, Some(limit), text));
-            }
-            _ if volts > TOUCH_VOLTAGE_V => {
-                let text = format!(
-                    "neutral {volts:.2} V above remote earth; {TOUCH_VOLTAGE_V} V is the conventional touch limit"
-                );
-                found.push(warning(Rule::NeutralVoltage, place(), volts, None, text));
-            }
-            _ => {}
+        if let Some(volts) = node.neutral_volts {
+            found.extend(to_earth("neutral", place, volts, study.neutral_limit_v));
         }
     }
+    for electrode in seen.electrodes {
+        let Some(transformer) = &electrode.transformer else { continue };
+        let place = || format!("transformer {transformer} at node {}", electrode.node);
+        found.extend(to_earth("star point", place, electrode.volts, study.neutral_limit_v));
+    }
+}
+
+/// A neutral or star point too far from earth.
+fn to_earth(what: &str, place: impl Fn() -> String, volts: f64, limit: Option<f64>) -> Option<Finding> {
+    match limit {
+        Some(limit) if volts > limit => {
+            let text = format!("{what} {volts:.2} V above remote earth, limit {limit} V");
+            Some(warning(Rule::NeutralVoltage, place(), volts, Some(limit), text))
+        }
+        _ if volts > TOUCH_VOLTAGE_V => {
+            let text = format!(
+                "{what} {volts:.2} V above remote earth; {TOUCH_VOLTAGE_V} V is the conventional touch limit"
+            );
+            Some(warning(Rule::NeutralVoltage, place(), volts, None, text))
+        }
+        _ => None,
+    }
+}
+
+/// A solution that the unloaded state does not lead to.
+fn collapse(seen: &Seen, found: &mut Vec<Finding>) {
+    let Path::Folds { share } = seen.solution.path else { return };
+    let text = format!(
+        "raised from nothing, the loads can be fed up to {:.1} % only; what is shown is the state after the voltage has collapsed, with loads below their floor",
+        100.0 * share
+    );
+    found.push(warning(Rule::Collapse, "network".to_string(), 100.0 * share, Some(100.0), text));
 }
 
 fn overloads(seen: &Seen, found: &mut Vec<Finding>) {

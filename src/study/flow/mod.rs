@@ -3,6 +3,7 @@
 //! [`FlowReport`] is the result record of `flow`: its fields and their names are those of the
 //! result files. Voltages are to remote earth, currents positive from `from` to `to` at both ends.
 
+mod electrodes;
 mod findings;
 mod losses;
 mod places;
@@ -13,6 +14,7 @@ use crate::math::{Complex64, PhaseVector, degrees, unbalance_factor};
 use crate::network::{BranchKind, Conductor, Conductors, LoadPlace, Name, Network, Node, NodeId, TapMode};
 use crate::solver::{RegulatedUnit, Solution, Status, TapState, load_current};
 
+pub use electrodes::Electrode;
 pub use findings::{Finding, FindingSeverity, Rule};
 pub use losses::Totals;
 pub use places::{Extreme, Glance, lowest_judged};
@@ -155,6 +157,8 @@ pub struct FlowReport {
     pub regulators: Vec<RegulatorTap>,
     /// Loads as drawn.
     pub loads: Vec<LoadDraw>,
+    /// Earth electrodes, of neutrals and of star points.
+    pub electrodes: Vec<Electrode>,
     /// Limits exceeded and other remarks, worst first within a rule.
     pub findings: Vec<Finding>,
     /// Extremes for the summary; the lists above hold the same numbers.
@@ -181,7 +185,9 @@ impl FlowReport {
         let nodes_summary = nodes_summary(network, solution);
         let regulators = regulators(network, units);
         let glance = places::glance(network, solution, &elements, &nodes_summary);
+        let electrodes = electrodes::electrodes(network, solution);
         let seen = findings::Seen {
+            electrodes: &electrodes,
             network,
             solution,
             elements: &elements,
@@ -206,6 +212,7 @@ impl FlowReport {
             totals,
             regulators,
             loads,
+            electrodes,
             findings,
             glance,
         })
