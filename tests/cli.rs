@@ -251,6 +251,7 @@ fn results_can_be_written_again_and_leave_nothing_else() {
     names.sort_unstable();
     let expected = [
         "currents.csv",
+        "electrodes.csv",
         "elements.csv",
         "findings.csv",
         "loads.csv",

@@ -3,9 +3,9 @@
 use super::branches::Branches;
 use super::carry::{Carried, carry};
 use super::draft::Draft;
-use super::earth::{Given, SideEarth, sides};
-use super::graph::{Graph, Tree, grow, place, report_isolated_switches, report_unfed};
-use super::model::{BranchId, Feed, Network, Node, NodeId, SOLID_EARTH_OHM};
+use super::earth::{Given, SideEarth, Standing, sides};
+use super::graph::{Graph, RawFeed, RawTie, Tree, grow, place, report_isolated_switches, report_unfed};
+use super::model::{BranchId, Feed, Network, Node, NodeId, SOLID_EARTH_OHM, Stay, StayPlace, Tie};
 use super::supply::{Supply, circulant, held_volts, sequence_impedance};
 use super::validate;
 use crate::diagnostic::{Code, Diagnostics, Origin, nearest};
@@ -43,6 +43,7 @@ pub(super) struct Joined {
     pub(super) carried: Carried,
     pub(super) given: Given,
     pub(super) sides: Vec<SideEarth>,
+    pub(super) stays: Vec<(usize, SideEarth)>,
 }
 
 impl Builder<'_> {
@@ -63,8 +64,8 @@ impl Builder<'_> {
         let carried = carry(draft, &graph, &tree, &electrodes, self.diagnostics);
         self.check_electrodes(&graph, &tree, &carried);
         let given = Given { electrodes, line_constructions };
-        let sides = sides(draft, &graph, &tree, &carried, &given, self.diagnostics);
-        self.assemble(&Joined { graph, tree, carried, given, sides })
+        let Standing { sides, stays } = sides(draft, &graph, &tree, &carried, &given, self.diagnostics);
+        self.assemble(&Joined { graph, tree, carried, given, sides, stays })
     }
 
     /// Index of the supply node: always 0, where there is a supply.
@@ -172,10 +173,31 @@ impl Builder<'_> {
         let supply = self.supply(new_node[0]?)?;
         let feeds = feeds(tree, &new_node, &parts.new_branch, nodes.len());
         let order = tree.order.iter().filter_map(|&n| new_node[n]).collect();
+        let ties = ties(tree, &new_node, &parts.new_branch);
+        let stays = joined.stays.iter().filter_map(|&(part, earth)| {
+            let place = match part.checked_sub(graph.names.len()) {
+                None => StayPlace::Node(new_node[part]?),
+                Some(tie) => StayPlace::TieEnd(tie),
+            };
+            Some(Stay { place, siemens: earth.reference_siemens, on: earth.on })
+        });
+        let stays = stays.collect();
         let (loads, capacitors) = self.shunts(joined, &new_node, &parts);
         let study = self.draft.study.clone();
         let Branches { branches, constructions, .. } = parts;
-        Some(Network { study, supply, nodes, branches, constructions, loads, capacitors, feeds, order })
+        Some(Network {
+            study,
+            supply,
+            nodes,
+            branches,
+            constructions,
+            loads,
+            capacitors,
+            feeds,
+            order,
+            ties: ties?,
+            stays,
+        })
     }
 
     fn supply(&self, node: NodeId) -> Option<Supply> {
@@ -190,6 +212,15 @@ impl Builder<'_> {
             earth_ohm: record.earth_ohm,
         })
     }
+}
+
+/// The ties by new indices; `None` where a branch of one could not be made, which was told.
+fn ties(tree: &Tree, new_node: &[Option<NodeId>], new_branch: &[Option<BranchId>]) -> Option<Vec<Tie>> {
+    let of = |tie: &RawTie| {
+        let RawFeed { branch, parent, upstream } = tie.feed;
+        Some(Tie { branch: new_branch[branch]?, near: new_node[parent]?, far: new_node[tie.far]?, upstream })
+    };
+    tree.ties.iter().map(of).collect()
 }
 
 fn feeds(

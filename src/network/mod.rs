@@ -28,6 +28,7 @@ pub use draft::{
 pub use load::{Capacitor, Load, LoadModel, LoadPlace};
 pub use model::{
     Branch, BranchId, BranchKind, ConstructionId, End, Feed, Line, Network, Node, NodeId, SOLID_EARTH_OHM,
+    Stay, StayPlace, Tie,
 };
 pub use regulator::{Regulator, RegulatorUnit, TapMode};
 pub use study::Study;

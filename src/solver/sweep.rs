@@ -68,8 +68,28 @@ impl Workspace<'_> {
         self.passes(Passes::Settle);
     }
 
-    /// Makes the passes with the widest instructions the processor has; gives the largest change, per unit.
+    /// Makes the passes; gives the largest change, per unit. With rings, passes over the opened
+    /// network find the mismatch at the openings first, and those that count follow with it mended.
     fn passes(&mut self, which: Passes) -> f64 {
+        let Some(mut ties) = self.ties.take() else { return self.tree_passes(which) };
+        if which == Passes::Down {
+            self.state.amps.fill(Slots::ZERO);
+        }
+        ties.own.copy_from_slice(&self.state.amps);
+        ties.before.copy_from_slice(&self.state.volts);
+        ties.draw(&mut self.state.amps);
+        self.tree_passes(Passes::Settle);
+        ties.correct(&self.state.volts);
+        self.state.amps.copy_from_slice(&ties.own);
+        ties.draw(&mut self.state.amps);
+        self.state.volts.copy_from_slice(&ties.before);
+        let change = self.tree_passes(if which == Passes::Down { Passes::UpAndDown } else { which });
+        self.ties = Some(ties);
+        change
+    }
+
+    /// Passes over the tree, with the widest instructions the processor has.
+    fn tree_passes(&mut self, which: Passes) -> f64 {
         let Workspace { layout, loads, state, .. } = self;
         #[cfg(target_arch = "x86_64")]
         if std::arch::is_x86_feature_detected!("avx2") && std::arch::is_x86_feature_detected!("fma") {

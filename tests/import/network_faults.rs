@@ -74,20 +74,40 @@ const CASES: &[(&str, Files)] = &[
         ],
     ),
     (
-        "closed ring",
-        &[lines!(
-            "L1,S,A,abcn,100,cable,",
-            "L2,A,B,abcn,100,cable,",
-            "L3,B,C,abcn,100,cable,",
-            "L4,C,A,abcn,100,cable,"
+        "ring of switches alone",
+        &[(
+            "switches.csv",
+            "switch,from,to,phases,state\nQ1,A,B,abcn,\nQ2,B,C,abcn,\nQ3,C,A,abcn,\nQ4,B,D,abcn,open\n",
         )],
     ),
-    ("two lines side by side", &[lines!("L1,S,A,abcn,100,cable,", "L1b,S,A,abcn,100,cable,")]),
     (
-        "ring over a switch",
+        "two switches side by side",
+        &[("switches.csv", "switch,from,to,phases,state\nQ1,A,B,abcn,\nQ2,A,B,an,\n")],
+    ),
+    (
+        "the poles of a switch written apart",
+        &[("switches.csv", "switch,from,to,phases,state\nQ1,A,B,an,\nQ2,A,B,b,\nQ3,A,B,c,\n")],
+    ),
+    (
+        "ring in which the phases do not meet",
         &[
-            lines!("L1,S,A,abcn,100,cable,", "L2,A,B,abcn,100,cable,"),
-            ("switches.csv", "switch,from,to,phases,state\nQ1,B,S,abcn,closed\n"),
+            ("lines.csv", "line,from,to,phases,length_m,construction\n"),
+            ("source.csv", "node,kv\nS,11\n"),
+            (
+                "transformers.csv",
+                "transformer,from,to,kva,kv_from,kv_to,group,r_percent,x_percent\nT1,S,A,100,11,0.4,Dyn11,1,4\nT2,S,A,100,11,0.4,Dyn1,1,4\n",
+            ),
+        ],
+    ),
+    (
+        "ring at two voltages",
+        &[
+            ("lines.csv", "line,from,to,phases,length_m,construction\n"),
+            ("source.csv", "node,kv\nS,11\n"),
+            (
+                "transformers.csv",
+                "transformer,from,to,kva,kv_from,kv_to,group,r_percent,x_percent\nT1,S,A,100,11,0.4,Dyn11,1,4\nT2,S,A,100,11,0.69,Dyn11,1,4\n",
+            ),
         ],
     ),
     ("line from a node to itself", &[lines!("L1,S,A,abcn,100,cable,", "L2,A,A,abcn,100,cable,")]),
