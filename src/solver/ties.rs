@@ -66,7 +66,8 @@ impl Ties {
         let smallest = (0..count).min_by(|&a, &b| u[(a, a)].norm().total_cmp(&u[(b, b)].norm()));
         if let Some(k) = smallest {
             let largest = sizes.iter().copied().fold(0.0, f64::max);
-            if !(u[(k, k)].norm() > 1e-15 * largest) {
+            let pivot = u[(k, k)].norm();
+            if pivot.is_nan() || pivot <= 1e-15 * largest {
                 return Err(meshed.ties.first().map_or(meshed.supply.node, |tie| tie.far));
             }
         }
