@@ -11,13 +11,13 @@ mod control;
 mod follow;
 mod injection;
 mod lanes;
+mod ports;
 mod recover;
 mod residual;
 mod settings;
 mod solution;
 mod sweep;
 mod terminals;
-mod ties;
 mod windings;
 mod workspace;
 
