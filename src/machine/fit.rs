@@ -1,0 +1,333 @@
+//! Equivalent circuit out of ratings: bounded least squares.
+//!
+//! Eight unknowns (stator resistance and leakage, magnetising reactance, resistances of two cages, leakage of
+//! the inner one, fixed losses, full-load slip) meet eight ratings: shaft power at that slip, slip, power
+//! factor, efficiency, locked-rotor current, torque and power factor, breakdown torque. Each is weighted by how
+//! well it is known: what stands on the nameplate firmly, what was filled in from tables loosely.
+
+use nalgebra::{SMatrix, SVector};
+use serde::Serialize;
+
+use super::circuit::{Cage, Circuit, MechanicalLoss};
+use super::nameplate::{Rated, Ratings};
+use crate::math::{Complex64, polar};
+use crate::units::SQRT_3;
+
+const SIZE: usize = 8;
+type Vector = SVector<f64, SIZE>;
+
+/// Part of the rotor's leakage that both cages share, as a part of the stator's leakage.
+const SHARED_LEAKAGE: f64 = 0.5;
+/// Part of the fixed losses that is core loss; the rest is friction and windage.
+const CORE_SHARE: f64 = 0.5;
+
+/// Bounds of the unknowns in per unit of rated volts over full-load amperes, in the order of [`circuit_of`].
+/// The sixth is outer over inner resistance, the seventh a part of rated power, the eighth of rated slip.
+const LOW: [f64; SIZE] = [0.002, 0.01, 0.8, 0.002, 0.001, 1.0, 0.002, 0.4];
+const HIGH: [f64; SIZE] = [0.25, 0.30, 20.0, 0.4, 2.0, 300.0, 0.12, 2.5];
+
+/// A rating, and what the fitted circuit does.
+#[derive(Debug, Clone, PartialEq, Serialize)]
+pub struct FitItem {
+    /// Name of the rating.
+    pub quantity: &'static str,
+    /// What the nameplate or the tables say.
+    pub wanted: f64,
+    /// What the circuit gives.
+    pub obtained: f64,
+    /// True where the value is on the nameplate or follows from it; false where a table filled it in.
+    pub firm: bool,
+}
+
+impl FitItem {
+    /// Error in percent of what was wanted.
+    pub fn error_percent(&self) -> f64 {
+        100.0 * (self.obtained / self.wanted - 1.0)
+    }
+}
+
+/// A fitted circuit with the error of each rating.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Fit {
+    /// The circuit.
+    pub circuit: Circuit,
+    /// Each rating against what the circuit does at rated voltage: full load at rated shaft power, standstill,
+    /// greatest torque.
+    pub items: Vec<FitItem>,
+    /// Steps that the least squares took, all starts together.
+    pub steps: u32,
+}
+
+impl Fit {
+    /// The largest error, percent, among the ratings that stand on the nameplate.
+    pub fn worst_firm(&self) -> Option<&FitItem> {
+        let firm = self.items.iter().filter(|i| i.firm);
+        firm.max_by(|a, b| a.error_percent().abs().total_cmp(&b.error_percent().abs()))
+    }
+
+    /// The item of a name.
+    pub fn item(&self, quantity: &str) -> Option<&FitItem> {
+        self.items.iter().find(|i| i.quantity == quantity)
+    }
+}
+
+/// Why no circuit was found.
+#[derive(Debug, Clone, PartialEq)]
+pub struct FitFault {
+    /// The rating that the circuit misses most, where one stands out.
+    pub worst: Option<FitItem>,
+    /// What is wrong, with the numbers.
+    pub message: String,
+    /// How to mend it.
+    pub mend: String,
+}
+
+/// Largest error of a rating on the nameplate that is still taken for a fit, percent.
+pub const REFUSED_ABOVE_PERCENT: f64 = 20.0;
+
+/// Fits the double-cage circuit to ratings.
+///
+/// # Errors
+/// No circuit within bounds that comes within [`REFUSED_ABOVE_PERCENT`] of every rating on the nameplate, or
+/// carries the rated power: the ratings contradict each other.
+pub fn fit(ratings: &Ratings) -> Result<Fit, FitFault> {
+    let problem = Problem::new(ratings);
+    let mut best: Option<(f64, Vector)> = None;
+    let mut steps = 0;
+    for start in problem.starts() {
+        let (cost, found, taken) = problem.descend(start);
+        steps += taken;
+        if best.as_ref().is_none_or(|(b, _)| cost < *b) {
+            best = Some((cost, found));
+        }
+        if cost < 1e-10 {
+            break;
+        }
+    }
+    let mend = "check locked-rotor current and torque, breakdown torque, power factor, efficiency and speed; \
+                leave blank the one you trust least";
+    let unknowns = best.map(|(_, x)| x).filter(|x| x.iter().all(|v| v.is_finite())).ok_or_else(|| FitFault {
+        worst: None,
+        message: "no equivalent circuit fits these ratings".to_string(),
+        mend: mend.to_string(),
+    })?;
+    let circuit = problem.circuit_of(&unknowns);
+    let items = check(&circuit, ratings).ok_or_else(|| FitFault {
+        worst: None,
+        message: "the circuit that fits best does not carry the rated power".to_string(),
+        mend: mend.to_string(),
+    })?;
+    let fit = Fit { circuit, items, steps };
+    match fit.worst_firm() {
+        Some(worst) if !(worst.error_percent().abs() <= REFUSED_ABOVE_PERCENT) => Err(FitFault {
+            message: format!(
+                "no motor can have all these ratings: the nearest circuit has a {} of {:.3} instead of {:.3}",
+                worst.quantity, worst.obtained, worst.wanted
+            ),
+            worst: Some(worst.clone()),
+            mend: mend.to_string(),
+        }),
+        _ => Ok(fit),
+    }
+}
+
+/// What a circuit does against the ratings at rated voltage; `None` if it cannot carry rated power.
+pub fn check(circuit: &Circuit, ratings: &Ratings) -> Option<Vec<FitItem>> {
+    let volts = balanced(ratings.volts);
+    let slip = slip_of_power(circuit, ratings)?;
+    let full = circuit.operation(slip, &volts);
+    let locked = circuit.operation(1.0, &volts);
+    let torque = ratings.torque_nm();
+    let item = |quantity, rated: &Rated, obtained| FitItem {
+        quantity,
+        wanted: rated.value,
+        obtained,
+        firm: !rated.is_filled(),
+    };
+    Some(vec![
+        item("slip", &ratings.slip, slip),
+        item("efficiency", &ratings.efficiency, ratings.shaft_w.value / full.input_w),
+        item("pf", &ratings.pf, full.pf()?),
+        item("amps", &ratings.amps, full.amps[0].norm()),
+        item("locked_rotor_amps", &ratings.locked_rotor_amps, locked.amps[0].norm()),
+        item("locked_rotor_torque", &ratings.locked_rotor_torque, locked.torque_nm / torque),
+        item("locked_rotor_pf", &ratings.locked_rotor_pf, locked.pf()?),
+        item("breakdown_torque", &ratings.breakdown_torque, circuit.breakdown(ratings.volts).torque_nm / torque),
+    ])
+}
+
+/// Phase voltages of a balanced line-to-line voltage, a at zero.
+pub fn balanced(volts: f64) -> [Complex64; 3] {
+    let third = 2.0 * std::f64::consts::PI / 3.0;
+    [0.0, -third, third].map(|angle| polar(volts / SQRT_3, angle))
+}
+
+/// Shaft power at a slip under rated balanced voltage, watts.
+fn shaft_w(circuit: &Circuit, slip: f64, volts: f64) -> f64 {
+    let speed = circuit.speed_rad_s(slip);
+    (circuit.balanced_torque_nm(slip, volts) - circuit.mechanical.torque_nm(speed)) * speed
+}
+
+/// The slip nearest to synchronous speed at which the shaft gives rated power.
+fn slip_of_power(circuit: &Circuit, ratings: &Ratings) -> Option<f64> {
+    let wanted = ratings.shaft_w.value;
+    let enough = |slip: f64| shaft_w(circuit, slip, ratings.volts) >= wanted;
+    let mut high = (1..=400).map(|i| f64::from(i) * 0.001).find(|&s| enough(s))?;
+    let mut low = high - 0.001;
+    for _ in 0..60 {
+        let middle = 0.5 * (low + high);
+        if enough(middle) { high = middle } else { low = middle }
+    }
+    Some(0.5 * (low + high))
+}
+
+struct Problem<'a> {
+    ratings: &'a Ratings,
+    /// Rated phase volts over full-load amperes.
+    base_ohm: f64,
+    /// One over the tolerance of each rating.
+    weights: [f64; SIZE],
+}
+
+impl<'a> Problem<'a> {
+    fn new(ratings: &'a Ratings) -> Self {
+        let weight = |rated: &Rated, firm: f64, loose: f64| 1.0 / if rated.is_filled() { loose } else { firm };
+        let weights = [
+            1.0 / 0.005,
+            weight(&ratings.slip, 0.02, 0.25),
+            weight(&ratings.pf, 0.01, 0.05),
+            weight(&ratings.efficiency, 0.05, 0.25),
+            weight(&ratings.locked_rotor_amps, 0.005, 0.005),
+            weight(&ratings.locked_rotor_torque, 0.005, 0.005),
+            weight(&ratings.locked_rotor_pf, 0.03, 0.20),
+            weight(&ratings.breakdown_torque, 0.005, 0.005),
+        ];
+        Problem { ratings, base_ohm: ratings.volts / SQRT_3 / ratings.amps.value, weights }
+    }
+
+    /// The circuit of unknowns, which are logarithms.
+    fn circuit_of(&self, unknowns: &Vector) -> Circuit {
+        let [r1, x1, xm, inner_r, inner_x, ratio, fixed, _] = (*unknowns).map(f64::exp).into();
+        let z = self.base_ohm;
+        let fixed_w = fixed * self.ratings.shaft_w.value;
+        Circuit {
+            r1_ohm: r1 * z,
+            x1_ohm: x1 * z,
+            xm_ohm: xm * z,
+            core_siemens: CORE_SHARE * fixed_w / (self.ratings.volts * self.ratings.volts),
+            rotor_x_ohm: SHARED_LEAKAGE * x1 * z,
+            inner: Cage { r_ohm: inner_r * z, x_ohm: inner_x * z },
+            outer: Some(Cage { r_ohm: ratio * inner_r * z, x_ohm: 0.0 }),
+            mechanical: MechanicalLoss {
+                watts: (1.0 - CORE_SHARE) * fixed_w,
+                at_rad_s: self.ratings.rated_rad_s(),
+            },
+            sync_rad_s: self.ratings.sync_rad_s(),
+        }
+    }
+
+    /// Weighted errors of the ratings, logarithmic.
+    fn errors(&self, unknowns: &Vector) -> Vector {
+        let r = self.ratings;
+        let circuit = self.circuit_of(unknowns);
+        let slip_error = unknowns[SIZE - 1];
+        let slip = r.slip.value * slip_error.exp();
+        let volts = balanced(r.volts);
+        let full = circuit.operation(slip, &volts);
+        let locked = circuit.operation(1.0, &volts);
+        let shaft = shaft_w(&circuit, slip, r.volts);
+        let torque = r.torque_nm();
+        // Logarithm that stays defined where a trial goes astray.
+        let log = |a: f64, b: f64| (a / b).max(1e-6).ln();
+        let efficiency = (shaft / full.input_w).clamp(-1.0, 0.9999);
+        let raw = [
+            log(shaft, r.shaft_w.value),
+            slip_error,
+            log(full.pf().unwrap_or(0.0), r.pf.value),
+            log(1.0 - efficiency, 1.0 - r.efficiency.value),
+            log(locked.amps[0].norm(), r.locked_rotor_amps.value),
+            log(locked.torque_nm / torque, r.locked_rotor_torque.value),
+            log(locked.pf().unwrap_or(0.0), r.locked_rotor_pf.value),
+            log(circuit.breakdown(r.volts).torque_nm / torque, r.breakdown_torque.value),
+        ];
+        Vector::from_fn(|i, _| raw[i] * self.weights[i])
+    }
+
+    fn bounds(&self) -> (Vector, Vector) {
+        (Vector::from(LOW.map(f64::ln)), Vector::from(HIGH.map(f64::ln)))
+    }
+
+    /// Starting values: leakage out of locked-rotor current, running resistance out of slip, and several
+    /// splits between the cages.
+    fn starts(&self) -> Vec<Vector> {
+        let r = self.ratings;
+        let z = r.amps.value / r.locked_rotor_amps.value;
+        let (low, high) = self.bounds();
+        let mut starts = Vec::new();
+        for (ratio, inner_x) in [(4.0, 0.1), (10.0, 0.1), (3.0, 0.3), (30.0, 0.2), (10.0, 0.5), (1.5, 0.05)] {
+            let values =
+                [0.25 * z, 0.5 * z, 2.5, 0.9 * r.slip.value, inner_x, ratio, 0.25 * (1.0 - r.efficiency.value), 1.0];
+            let start = Vector::from(values.map(f64::ln));
+            starts.push(start.zip_zip_map(&low, &high, |v, l, h| v.clamp(l, h)));
+        }
+        starts
+    }
+
+    /// Damped Gauss-Newton (Levenberg-Marquardt) held within bounds: cost, unknowns, steps.
+    fn descend(&self, start: Vector) -> (f64, Vector, u32) {
+        let (low, high) = self.bounds();
+        let (mut x, mut damping) = (start, 1e-2);
+        let mut errors = self.errors(&x);
+        let mut cost = errors.norm_squared();
+        let mut steps = 0;
+        while steps < 120 && cost > 1e-12 && damping < 1e8 {
+            steps += 1;
+            let jacobian = self.jacobian(&x, &errors);
+            let gradient = jacobian.transpose() * errors;
+            let mut normal = jacobian.transpose() * jacobian;
+            for i in 0..SIZE {
+                // An unknown at its bound that wants out is held.
+                let held = (x[i] <= low[i] && gradient[i] > 0.0) || (x[i] >= high[i] && gradient[i] < 0.0);
+                if held {
+                    normal.row_mut(i).fill(0.0);
+                    normal.column_mut(i).fill(0.0);
+                    normal[(i, i)] = 1.0;
+                } else {
+                    normal[(i, i)] = normal[(i, i)] * (1.0 + damping) + 1e-9;
+                }
+            }
+            let held = |i: usize| (x[i] <= low[i] && gradient[i] > 0.0) || (x[i] >= high[i] && gradient[i] < 0.0);
+            let right = Vector::from_fn(|i, _| if held(i) { 0.0 } else { -gradient[i] });
+            let Some(step) = normal.cholesky().map(|c| c.solve(&right)) else {
+                damping *= 10.0;
+                continue;
+            };
+            let longest = step.amax().max(1.0);
+            let trial = (x + step / longest).zip_zip_map(&low, &high, |v, l, h| v.clamp(l, h));
+            let trial_errors = self.errors(&trial);
+            let trial_cost = trial_errors.norm_squared();
+            if trial_cost < cost {
+                let gain = 1.0 - trial_cost / cost;
+                (x, errors, cost) = (trial, trial_errors, trial_cost);
+                damping = (damping * 0.3).max(1e-9);
+                if gain < 1e-7 {
+                    break;
+                }
+            } else {
+                damping *= 4.0;
+            }
+        }
+        (cost, x, steps)
+    }
+
+    fn jacobian(&self, x: &Vector, errors: &Vector) -> SMatrix<f64, SIZE, SIZE> {
+        let step = 1e-6;
+        let mut jacobian = SMatrix::<f64, SIZE, SIZE>::zeros();
+        for i in 0..SIZE {
+            let mut moved = *x;
+            moved[i] += step;
+            jacobian.set_column(i, &((self.errors(&moved) - errors) / step));
+        }
+        jacobian
+    }
+}
