@@ -21,6 +21,13 @@ const SHARED_LEAKAGE: f64 = 0.5;
 /// Part of the fixed losses that is core loss; the rest is friction and windage.
 const CORE_SHARE: f64 = 0.5;
 
+/// How much a breakdown torque above that of a table counts, against one below it.
+const EXCESS_WEIGHT: f64 = 0.01;
+/// Sum of squared weighted errors at which no further start is tried.
+const GOOD_ENOUGH: f64 = 0.02;
+/// Most rounds of descent from one start.
+const ROUNDS: u32 = 8;
+
 /// Bounds of the unknowns in per unit of rated volts over full-load amperes, in the order of [`circuit_of`].
 /// The sixth is outer over inner resistance, the seventh a part of rated power, the eighth of rated slip.
 const LOW: [f64; SIZE] = [0.002, 0.01, 0.8, 0.002, 0.001, 1.0, 0.002, 0.4];
@@ -95,12 +102,12 @@ pub fn fit(ratings: &Ratings) -> Result<Fit, FitFault> {
     let mut best: Option<(f64, Vector)> = None;
     let mut steps = 0;
     for start in problem.starts() {
-        let (cost, found, taken) = problem.descend(start);
+        let (cost, found, taken) = problem.search(start);
         steps += taken;
         if best.as_ref().is_none_or(|(b, _)| cost < *b) {
             best = Some((cost, found));
         }
-        if cost < 1e-10 {
+        if cost < GOOD_ENOUGH {
             break;
         }
     }
@@ -181,6 +188,16 @@ fn slip_of_power(circuit: &Circuit, ratings: &Ratings) -> Option<f64> {
     Some(0.5 * (low + high))
 }
 
+/// A smooth stand-in for the greatest torque, newton metres: a high power mean over slips. The true maximum
+/// jumps between the humps of two cages, where a descent by slopes would stick.
+fn smooth_peak(circuit: &Circuit, volts: f64) -> f64 {
+    let torques: [f64; 64] =
+        std::array::from_fn(|i| circuit.balanced_torque_nm(10f64.powf(-2.5 * i as f64 / 63.0), volts));
+    let most = torques.iter().copied().fold(f64::MIN_POSITIVE, f64::max);
+    let mean: f64 = torques.iter().map(|t| (t / most).max(0.0).powi(40)).sum();
+    most * mean.powf(1.0 / 40.0)
+}
+
 struct Problem<'a> {
     ratings: &'a Ratings,
     /// Rated phase volts over full-load amperes.
@@ -227,7 +244,9 @@ impl<'a> Problem<'a> {
     }
 
     /// Weighted errors of the ratings, logarithmic.
-    fn errors(&self, unknowns: &Vector) -> Vector {
+    ///
+    /// `shift` corrects the smooth maximum of [`smooth_peak`] to the true one.
+    fn errors(&self, unknowns: &Vector, shift: f64) -> Vector {
         let r = self.ratings;
         let circuit = self.circuit_of(unknowns);
         let slip_error = unknowns[SIZE - 1];
@@ -240,6 +259,10 @@ impl<'a> Problem<'a> {
         // Logarithm that stays defined where a trial goes astray.
         let log = |a: f64, b: f64| (a / b).max(1e-6).ln();
         let efficiency = (shaft / full.input_w).clamp(-1.0, 0.9999);
+        let peak = log(smooth_peak(&circuit, r.volts) / torque, r.breakdown_torque.value) - shift;
+        // A table's breakdown torque is the least that a motor must have.
+        let excess = r.breakdown_torque.is_filled() && peak > 0.0;
+        let peak = if excess { peak * EXCESS_WEIGHT } else { peak };
         let raw = [
             log(shaft, r.shaft_w.value),
             slip_error,
@@ -248,7 +271,7 @@ impl<'a> Problem<'a> {
             log(locked.amps[0].norm(), r.locked_rotor_amps.value),
             log(locked.torque_nm / torque, r.locked_rotor_torque.value),
             log(locked.pf().unwrap_or(0.0), r.locked_rotor_pf.value),
-            log(circuit.breakdown(r.volts).torque_nm / torque, r.breakdown_torque.value),
+            peak,
         ];
         Vector::from_fn(|i, _| raw[i] * self.weights[i])
     }
@@ -273,16 +296,41 @@ impl<'a> Problem<'a> {
         starts
     }
 
+    /// Rounds of descent, each with the smooth maximum corrected anew: cost, unknowns, steps.
+    fn search(&self, start: Vector) -> (f64, Vector, u32) {
+        let (mut x, mut cost, mut steps) = (start, f64::INFINITY, 0);
+        for _ in 0..ROUNDS {
+            let shift = self.shift(&x);
+            let (_, found, taken) = self.descend(x, shift);
+            steps += taken;
+            let now = self.errors(&found, self.shift(&found)).norm_squared();
+            let gain = cost - now;
+            if now < cost {
+                (x, cost) = (found, now);
+            }
+            if !(gain > 1e-4 * cost + 1e-9) {
+                break;
+            }
+        }
+        (cost, x, steps)
+    }
+
+    /// Logarithm of the smooth over the true maximum of torque.
+    fn shift(&self, unknowns: &Vector) -> f64 {
+        let circuit = self.circuit_of(unknowns);
+        (smooth_peak(&circuit, self.ratings.volts) / circuit.breakdown(self.ratings.volts).torque_nm).ln()
+    }
+
     /// Damped Gauss-Newton (Levenberg-Marquardt) held within bounds: cost, unknowns, steps.
-    fn descend(&self, start: Vector) -> (f64, Vector, u32) {
+    fn descend(&self, start: Vector, shift: f64) -> (f64, Vector, u32) {
         let (low, high) = self.bounds();
         let (mut x, mut damping) = (start, 1e-2);
-        let mut errors = self.errors(&x);
+        let mut errors = self.errors(&x, shift);
         let mut cost = errors.norm_squared();
         let mut steps = 0;
-        while steps < 120 && cost > 1e-12 && damping < 1e8 {
+        while steps < 60 && cost > 1e-12 && damping < 1e8 {
             steps += 1;
-            let jacobian = self.jacobian(&x, &errors);
+            let jacobian = self.jacobian(&x, &errors, shift);
             let gradient = jacobian.transpose() * errors;
             let mut normal = jacobian.transpose() * jacobian;
             for i in 0..SIZE {
@@ -304,7 +352,7 @@ impl<'a> Problem<'a> {
             };
             let longest = step.amax().max(1.0);
             let trial = (x + step / longest).zip_zip_map(&low, &high, |v, l, h| v.clamp(l, h));
-            let trial_errors = self.errors(&trial);
+            let trial_errors = self.errors(&trial, shift);
             let trial_cost = trial_errors.norm_squared();
             if trial_cost < cost {
                 let gain = 1.0 - trial_cost / cost;
@@ -320,13 +368,13 @@ impl<'a> Problem<'a> {
         (cost, x, steps)
     }
 
-    fn jacobian(&self, x: &Vector, errors: &Vector) -> SMatrix<f64, SIZE, SIZE> {
+    fn jacobian(&self, x: &Vector, errors: &Vector, shift: f64) -> SMatrix<f64, SIZE, SIZE> {
         let step = 1e-6;
         let mut jacobian = SMatrix::<f64, SIZE, SIZE>::zeros();
         for i in 0..SIZE {
             let mut moved = *x;
             moved[i] += step;
-            jacobian.set_column(i, &((self.errors(&moved) - errors) / step));
+            jacobian.set_column(i, &((self.errors(&moved, shift) - errors) / step));
         }
         jacobian
     }
