@@ -4,6 +4,7 @@ use serde::Serialize;
 
 use super::circuit::{Circuit, Operation, Phases};
 use super::load::DrivenLoad;
+use super::nameplate::Ratings;
 use crate::catalog::motors;
 use crate::math::{Complex64, sequence_components};
 
@@ -27,6 +28,19 @@ pub struct Motor {
 }
 
 impl Motor {
+    /// A motor of complete ratings with a circuit and a load.
+    pub fn new(ratings: &Ratings, circuit: Circuit, load: DrivenLoad) -> Motor {
+        Motor {
+            circuit,
+            volts: ratings.volts,
+            amps: ratings.amps.value,
+            torque_nm: ratings.torque_nm(),
+            rated_rad_s: ratings.rated_rad_s(),
+            inertia_kgm2: ratings.inertia_kgm2.value,
+            load,
+        }
+    }
+
     /// Moment of inertia of rotor and load, kg m2.
     pub fn total_inertia_kgm2(&self) -> f64 {
         self.inertia_kgm2 + self.load.inertia_kgm2
