@@ -214,10 +214,10 @@ impl<'a> Problem<'a> {
             weight(&ratings.slip, 0.02, 0.25),
             weight(&ratings.pf, 0.01, 0.05),
             weight(&ratings.efficiency, 0.05, 0.25),
-            weight(&ratings.locked_rotor_amps, 0.005, 0.005),
-            weight(&ratings.locked_rotor_torque, 0.005, 0.005),
+            weight(&ratings.locked_rotor_amps, 0.005, 0.01),
+            weight(&ratings.locked_rotor_torque, 0.005, 0.01),
             weight(&ratings.locked_rotor_pf, 0.03, 0.20),
-            weight(&ratings.breakdown_torque, 0.005, 0.005),
+            weight(&ratings.breakdown_torque, 0.005, 0.01),
         ];
         Problem { ratings, base_ohm: ratings.volts / SQRT_3 / ratings.amps.value, weights }
     }

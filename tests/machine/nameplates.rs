@@ -171,37 +171,108 @@ fn the_fit_finds_a_known_machine() {
 /// The minimum torques and maximum currents of NEMA design B (Tables 12-2 to 12-4 and 12.35.1), each row as one motor.
 fn design_b(poles: u32, hp: f64) -> Ratings {
     let mut ratings = Nameplate { poles: Some(poles), ..plate(hp) }.resolve().unwrap();
-    ratings.breakdown_torque.origin = Origin::Given;
+    for rated in [&mut ratings.locked_rotor_amps, &mut ratings.locked_rotor_torque, &mut ratings.breakdown_torque] {
+        rated.origin = Origin::Given;
+    }
     ratings
 }
 
-const ROWS: [f64; 25] = [
-    1.0, 1.5, 2.0, 3.0, 5.0, 7.5, 10.0, 15.0, 20.0, 25.0, 30.0, 40.0, 50.0, 60.0, 75.0, 100.0, 125.0, 150.0, 200.0,
-    250.0, 300.0, 350.0, 400.0, 450.0, 500.0,
-];
+/// Rows of the torque table: horsepower and synchronous speed.
+fn rows() -> Vec<(f64, u32)> {
+    let table = include_str!("../../src/catalog/data/motor_torques_design_B.csv");
+    let of = |line: &str| {
+        let mut cells = line.split(',');
+        let hp: f64 = cells.next()?.parse().ok()?;
+        let speed: f64 = cells.next()?.parse().ok()?;
+        Some((hp, (7200.0 / speed).round() as u32))
+    };
+    table.lines().skip(1).filter_map(of).collect()
+}
 
+/// All rows from 7.5 hp up come within 3 %. Of the small ones only some do: with the greatest current (8.5 to 16 kVA
+/// a horsepower) the leakage is so small that no circuit of constant reactances keeps its greatest torque as low as the
+/// least one of the table. They are listed.
 #[test]
 fn design_b_rows() {
-    let mut good = 0;
-    let mut failures = Vec::new();
-    for poles in [2u32, 4, 6, 8] {
-        for hp in ROWS {
-            let ratings = design_b(poles, hp);
-            let errors = match fit(&ratings) {
-                Ok(f) => ["locked_rotor_amps", "locked_rotor_torque", "breakdown_torque"]
-                    .map(|q| f.item(q).unwrap().error_percent()),
-                Err(f) => {
-                    failures.push(format!("{hp} hp {poles} poles: {}", f.message));
-                    continue;
+    let (mut good, mut failures) = (0, Vec::new());
+    for (hp, poles) in rows() {
+        let mut beyond = |what: String| {
+            assert!(hp < 7.5, "{what}");
+            failures.push(what);
+        };
+        match fit(&design_b(poles, hp)) {
+            Ok(f) => {
+                let errors = ["locked_rotor_amps", "locked_rotor_torque", "breakdown_torque"]
+                    .map(|q| f.item(q).unwrap().error_percent());
+                if errors.iter().all(|e| e.abs() <= 3.0) {
+                    good += 1;
+                } else {
+                    beyond(format!("{hp} hp {poles} poles: current, torque, breakdown {errors:.1?} %"));
                 }
-            };
-            if errors.iter().all(|e| e.abs() <= 3.0) {
-                good += 1;
-            } else {
-                failures.push(format!("{hp} hp {poles} poles: {errors:.1?} %"));
             }
+            Err(fault) => beyond(format!("{hp} hp {poles} poles: {}", fault.message)),
         }
     }
     println!("{good} rows within 3 %; beyond:\n{}", failures.join("\n"));
-    assert!(good >= 60, "{good}");
+    assert_eq!(good + failures.len(), 94);
+    assert!(good >= 73, "{good}");
+}
+
+/// A plate with nothing but power, voltage and poles: standstill and full load as in the tables, breakdown torque not
+/// below the table's, which is a least value.
+#[test]
+fn a_bare_plate_fits() {
+    for (hp, poles) in [(5.0, 4), (25.0, 2), (50.0, 6), (100.0, 4), (150.0, 4), (250.0, 4), (500.0, 2)] {
+        let ratings = Nameplate { poles: Some(poles), ..plate(hp) }.resolve().unwrap();
+        let fitted = fit(&ratings).unwrap();
+        let error = |q: &str| fitted.item(q).unwrap().error_percent();
+        for (quantity, most) in [("locked_rotor_amps", 1.0), ("locked_rotor_torque", 1.0), ("amps", 2.0)] {
+            assert!(error(quantity).abs() < most, "{hp} hp: {:?}", fitted.items);
+        }
+        assert!(error("breakdown_torque") > -1.0 && error("pf").abs() < 2.0 && error("efficiency").abs() < 1.0);
+    }
+}
+
+/// Ratings that no circuit can have: no nearest circuit is passed off as a fit.
+#[test]
+fn impossible_ratings_are_refused() {
+    let impossible = Nameplate {
+        amps: Some(115.0),
+        rpm: Some(1780.0),
+        locked_rotor_amps: Some(1200.0),
+        locked_rotor_torque: Some(1.0),
+        breakdown_torque: Some(1.3),
+        locked_rotor_pf: Some(0.2),
+        efficiency: Some(0.945),
+        ..plate(100.0)
+    };
+    let fault = fit(&impossible.resolve().unwrap()).unwrap_err();
+    assert!(fault.message.contains("instead of") && !fault.mend.is_empty(), "{fault:?}");
+}
+
+/// Plates as small motors have them.
+#[test]
+fn small_plates() {
+    for (hp, volts, amps, rpm, eff, pf, code) in [
+        (1.0, 460.0, Some(1.5), 1750.0, Some(0.855), None, None),
+        (1.0, 460.0, Some(1.5), 1750.0, Some(0.855), None, Some('L')),
+        (1.0, 460.0, None, 1750.0, None, None, None),
+        (3.0, 460.0, Some(4.1), 1755.0, Some(0.895), None, Some('K')),
+        (3.0, 230.0, None, 1755.0, None, Some(0.77), None),
+        (5.0, 460.0, Some(6.4), 1750.0, Some(0.895), Some(0.82), Some('J')),
+        (5.0, 460.0, Some(6.4), 3500.0, None, None, None),
+        (10.0, 460.0, Some(12.5), 1760.0, Some(0.917), None, Some('H')),
+        (20.0, 460.0, Some(24.0), 1765.0, Some(0.93), None, Some('G')),
+        (150.0, 460.0, Some(170.0), 1785.0, Some(0.954), None, Some('G')),
+    ] {
+        let plate = Nameplate { hp: Some(hp), volts: Some(volts), amps, rpm: Some(rpm), efficiency: eff, pf, code, frequency_hz: 60.0, ..Nameplate::default() };
+        match fit(&plate.resolve().unwrap()) {
+        Ok(f) => {
+            println!("{hp} hp {code:?}");
+            for i in &f.items { print!("  {}{} {:.3} {:.3} {:+.1}% ", i.quantity, if i.firm {"*"} else {""}, i.wanted, i.obtained, i.error_percent()); }
+            println!();
+        }
+        Err(e) => println!("{hp} {e:?}"),
+        }
+    }
 }
