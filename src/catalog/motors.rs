@@ -49,8 +49,7 @@ pub struct DesignTorques {
 /// The NEMA MG 1 code letter (10.37.2), or none for a letter that is not in use.
 pub fn code_letter(letter: char) -> Option<CodeLetter> {
     let wanted = letter.to_ascii_uppercase().to_string();
-    let row =
-        rows(include_str!("data/motor_code_letters.csv")).find(|c| text(c, "code").trim() == wanted)?;
+    let row = rows(include_str!("data/motor_code_letters.csv")).find(|c| text(c, "code").trim() == wanted)?;
     Some(CodeLetter {
         from: number(&row, "kva_per_hp_min")?,
         to: number(&row, "kva_per_hp_max"),
@@ -61,7 +60,13 @@ pub fn code_letter(letter: char) -> Option<CodeLetter> {
 /// Full-load amperes of a three-phase motor, NFPA 70 Table 430.250; made for sizing wires, so above what most
 /// motors draw. `volts` is the rated line-to-line voltage; between the printed voltages amperes go as 1/volts.
 pub fn full_load_amps(hp: f64, volts: f64) -> Option<TableValue> {
-    amps(include_str!("data/motor_fla_nec_430_250.csv"), "A", &[115, 200, 208, 230, 460, 575, 2300], hp, volts)
+    amps(
+        include_str!("data/motor_fla_nec_430_250.csv"),
+        "A",
+        &[115, 200, 208, 230, 460, 575, 2300],
+        hp,
+        volts,
+    )
 }
 
 /// Greatest locked-rotor amperes of NEMA designs B, C and D: NEMA MG 1 12.35.1, NFPA 70 Table 430.251(B).
@@ -252,7 +257,10 @@ mod tests {
     #[test]
     fn derating() {
         let at = |p: f64| unbalance_derating(p).map(|v| v.value);
-        assert_eq!((at(0.5), at(2.0), at(5.0), at(5.01), at(f64::NAN)), (Some(1.0), Some(0.95), Some(0.75), None, None));
+        assert_eq!(
+            (at(0.5), at(2.0), at(5.0), at(5.01), at(f64::NAN)),
+            (Some(1.0), Some(0.95), Some(0.75), None, None)
+        );
         assert!(at(1.5).is_some_and(|v| (v - 0.975).abs() < 1e-12));
     }
 }

@@ -170,7 +170,8 @@ impl Circuit {
             ("mechanical loss", self.mechanical.watts),
         ];
         let low = above.iter().filter(|(_, v)| !(*v > 0.0 && v.is_finite())).map(|(n, _)| (n, "above 0"));
-        let negative = from.iter().filter(|(_, v)| !(*v >= 0.0 && v.is_finite())).map(|(n, _)| (n, "0 or more"));
+        let negative =
+            from.iter().filter(|(_, v)| !(*v >= 0.0 && v.is_finite())).map(|(n, _)| (n, "0 or more"));
         low.chain(negative).map(|(name, wanted)| format!("{name} must be {wanted}")).collect()
     }
 

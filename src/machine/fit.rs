@@ -9,7 +9,7 @@ use nalgebra::{SMatrix, SVector};
 use serde::Serialize;
 
 use super::circuit::{Cage, Circuit, MechanicalLoss};
-use super::nameplate::{Rated, Ratings};
+use super::nameplate::{Origin, Rated, Ratings};
 use crate::math::{Complex64, polar};
 use crate::units::SQRT_3;
 
@@ -21,8 +21,8 @@ const SHARED_LEAKAGE: f64 = 0.5;
 /// Part of the fixed losses that is core loss; the rest is friction and windage.
 const CORE_SHARE: f64 = 0.5;
 
-/// How much a breakdown torque above that of a table counts, against one below it.
-const EXCESS_WEIGHT: f64 = 0.01;
+/// Weight of a breakdown torque above that of a table: 20 % more counts as one tolerance.
+const EXCESS_WEIGHT: f64 = 5.0;
 /// Sum of squared weighted errors at which no further start is tried.
 const GOOD_ENOUGH: f64 = 0.02;
 /// Most rounds of descent from one start.
@@ -51,6 +51,12 @@ impl FitItem {
     pub fn error_percent(&self) -> f64 {
         100.0 * (self.obtained / self.wanted - 1.0)
     }
+
+    /// True where the error is greater than some percent, or no number.
+    fn is_beyond(&self, percent: f64) -> bool {
+        let error = self.error_percent().abs();
+        error > percent || error.is_nan()
+    }
 }
 
 /// A fitted circuit with the error of each rating.
@@ -70,6 +76,12 @@ impl Fit {
     pub fn worst_firm(&self) -> Option<&FitItem> {
         let firm = self.items.iter().filter(|i| i.firm);
         firm.max_by(|a, b| a.error_percent().abs().total_cmp(&b.error_percent().abs()))
+    }
+
+    /// The largest error of full-load current and of what stands on the nameplate, percent.
+    fn worst_running(&self) -> f64 {
+        let counts = |i: &&FitItem| i.firm || i.quantity == "amps";
+        self.items.iter().filter(counts).map(|i| i.error_percent().abs()).fold(0.0, f64::max)
     }
 
     /// The item of a name.
@@ -92,56 +104,72 @@ pub struct FitFault {
 /// Largest error of a rating on the nameplate that is still taken for a fit, percent.
 pub const REFUSED_ABOVE_PERCENT: f64 = 20.0;
 
+/// Error of full-load current or of a rating on the nameplate above which values of tables give way, percent.
+const LOOSEN_ABOVE_PERCENT: f64 = 4.0;
+
 /// Fits the double-cage circuit to ratings.
 ///
 /// # Errors
 /// No circuit within bounds that comes within [`REFUSED_ABOVE_PERCENT`] of every rating on the nameplate, or
 /// carries the rated power: the ratings contradict each other.
 pub fn fit(ratings: &Ratings) -> Result<Fit, FitFault> {
-    let problem = Problem::new(ratings);
-    let mut best: Option<(f64, Vector)> = None;
-    let mut steps = 0;
-    for start in problem.starts() {
-        let (cost, found, taken) = problem.search(start);
-        steps += taken;
-        if best.as_ref().is_none_or(|(b, _)| cost < *b) {
-            best = Some((cost, found));
-        }
-        if cost < GOOD_ENOUGH {
-            break;
-        }
+    let first = fit_with(ratings, Trust::Tables);
+    let tabled = [&ratings.locked_rotor_amps, &ratings.locked_rotor_torque, &ratings.breakdown_torque];
+    let fine = first.as_ref().is_ok_and(|f| f.worst_running() <= LOOSEN_ABOVE_PERCENT);
+    if fine || !tabled.iter().any(|r| r.is_filled()) {
+        return first;
     }
-    let mend = "check locked-rotor current and torque, breakdown torque, power factor, efficiency and speed; \
-                leave blank the one you trust least";
-    let unknowns = best.map(|(_, x)| x).filter(|x| x.iter().all(|v| v.is_finite())).ok_or_else(|| FitFault {
-        worst: None,
-        message: "no equivalent circuit fits these ratings".to_string(),
-        mend: mend.to_string(),
-    })?;
+    // Tables hold least torques and greatest currents, which not every motor can have together.
+    let second = fit_with(ratings, Trust::Plate);
+    match (&first, &second) {
+        (Ok(a), Ok(b)) if a.worst_running() < b.worst_running() => first,
+        (Ok(_), Err(_)) => first,
+        _ => second,
+    }
+}
+
+fn fit_with(ratings: &Ratings, trust: Trust) -> Result<Fit, FitFault> {
+    let problem = Problem::new(ratings, trust);
+    let refused = |worst: Option<FitItem>, message: String| FitFault {
+        worst,
+        message,
+        mend: "check locked-rotor current and torque, breakdown torque, power factor, efficiency and speed; \
+               leave blank the one you trust least"
+            .to_string(),
+    };
+    let (unknowns, steps) = problem
+        .solve()
+        .ok_or_else(|| refused(None, "no equivalent circuit fits these ratings".to_string()))?;
     let circuit = problem.circuit_of(&unknowns);
-    let items = check(&circuit, ratings).ok_or_else(|| FitFault {
-        worst: None,
-        message: "the circuit that fits best does not carry the rated power".to_string(),
-        mend: mend.to_string(),
+    let items = check(&circuit, ratings).ok_or_else(|| {
+        refused(None, "the circuit that fits best does not carry the rated power".to_string())
     })?;
     let fit = Fit { circuit, items, steps };
     match fit.worst_firm() {
-        Some(worst) if !(worst.error_percent().abs() <= REFUSED_ABOVE_PERCENT) => Err(FitFault {
-            message: format!(
+        Some(worst) if worst.is_beyond(REFUSED_ABOVE_PERCENT) => {
+            let message = format!(
                 "no motor can have all these ratings: the nearest circuit has a {} of {:.3} instead of {:.3}",
                 worst.quantity, worst.obtained, worst.wanted
-            ),
-            worst: Some(worst.clone()),
-            mend: mend.to_string(),
-        }),
+            );
+            Err(refused(Some(worst.clone()), message))
+        }
         _ => Ok(fit),
     }
+}
+
+/// How firmly values out of tables are held.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+enum Trust {
+    /// Standstill and breakdown as in the tables.
+    Tables,
+    /// They give way to the nameplate and to running well.
+    Plate,
 }
 
 /// What a circuit does against the ratings at rated voltage; `None` if it cannot carry rated power.
 pub fn check(circuit: &Circuit, ratings: &Ratings) -> Option<Vec<FitItem>> {
     let volts = balanced(ratings.volts);
-    let slip = slip_of_power(circuit, ratings)?;
+    let slip = full_load_slip(circuit, ratings.volts, ratings.shaft_w.value)?;
     let full = circuit.operation(slip, &volts);
     let locked = circuit.operation(1.0, &volts);
     let torque = ratings.torque_nm();
@@ -159,7 +187,11 @@ pub fn check(circuit: &Circuit, ratings: &Ratings) -> Option<Vec<FitItem>> {
         item("locked_rotor_amps", &ratings.locked_rotor_amps, locked.amps[0].norm()),
         item("locked_rotor_torque", &ratings.locked_rotor_torque, locked.torque_nm / torque),
         item("locked_rotor_pf", &ratings.locked_rotor_pf, locked.pf()?),
-        item("breakdown_torque", &ratings.breakdown_torque, circuit.breakdown(ratings.volts).torque_nm / torque),
+        item(
+            "breakdown_torque",
+            &ratings.breakdown_torque,
+            circuit.breakdown(ratings.volts).torque_nm / torque,
+        ),
     ])
 }
 
@@ -176,9 +208,8 @@ fn shaft_w(circuit: &Circuit, slip: f64, volts: f64) -> f64 {
 }
 
 /// The slip nearest to synchronous speed at which the shaft gives rated power.
-fn slip_of_power(circuit: &Circuit, ratings: &Ratings) -> Option<f64> {
-    let wanted = ratings.shaft_w.value;
-    let enough = |slip: f64| shaft_w(circuit, slip, ratings.volts) >= wanted;
+pub(super) fn full_load_slip(circuit: &Circuit, volts: f64, wanted_w: f64) -> Option<f64> {
+    let enough = |slip: f64| shaft_w(circuit, slip, volts) >= wanted_w;
     let mut high = (1..=400).map(|i| f64::from(i) * 0.001).find(|&s| enough(s))?;
     let mut low = high - 0.001;
     for _ in 0..60 {
@@ -207,19 +238,44 @@ struct Problem<'a> {
 }
 
 impl<'a> Problem<'a> {
-    fn new(ratings: &'a Ratings) -> Self {
-        let weight = |rated: &Rated, firm: f64, loose: f64| 1.0 / if rated.is_filled() { loose } else { firm };
+    fn new(ratings: &'a Ratings, trust: Trust) -> Self {
+        let table = if trust == Trust::Tables { 0.01 } else { 0.10 };
+        let weight = |rated: &Rated, given: f64, derived: f64, filled: f64| {
+            1.0 / match rated.origin {
+                Origin::Given => given,
+                Origin::Derived(_) => derived,
+                Origin::Filled(_) => filled,
+            }
+        };
         let weights = [
             1.0 / 0.005,
-            weight(&ratings.slip, 0.02, 0.25),
-            weight(&ratings.pf, 0.01, 0.05),
-            weight(&ratings.efficiency, 0.05, 0.25),
-            weight(&ratings.locked_rotor_amps, 0.005, 0.01),
-            weight(&ratings.locked_rotor_torque, 0.005, 0.01),
-            weight(&ratings.locked_rotor_pf, 0.03, 0.20),
-            weight(&ratings.breakdown_torque, 0.005, 0.01),
+            weight(&ratings.slip, 0.02, 0.02, 0.25),
+            weight(&ratings.pf, 0.01, 0.01, 0.05),
+            weight(&ratings.efficiency, 0.05, 0.05, 0.25),
+            // A code letter is a range.
+            weight(&ratings.locked_rotor_amps, 0.005, 0.02, table),
+            weight(&ratings.locked_rotor_torque, 0.005, 0.01, table),
+            weight(&ratings.locked_rotor_pf, 0.03, 0.03, 0.20),
+            weight(&ratings.breakdown_torque, 0.005, 0.01, table),
         ];
         Problem { ratings, base_ohm: ratings.volts / SQRT_3 / ratings.amps.value, weights }
+    }
+
+    /// The best unknowns from all starts, and the steps taken; none where nothing finite was found.
+    fn solve(&self) -> Option<(Vector, u32)> {
+        let mut best: Option<(f64, Vector)> = None;
+        let mut steps = 0;
+        for start in self.starts() {
+            let (cost, found, taken) = self.search(start);
+            steps += taken;
+            if best.as_ref().is_none_or(|(b, _)| cost < *b) {
+                best = Some((cost, found));
+            }
+            if cost < GOOD_ENOUGH {
+                break;
+            }
+        }
+        best.map(|(_, x)| (x, steps)).filter(|(x, _)| x.iter().all(|v| v.is_finite()))
     }
 
     /// The circuit of unknowns, which are logarithms.
@@ -262,7 +318,7 @@ impl<'a> Problem<'a> {
         let peak = log(smooth_peak(&circuit, r.volts) / torque, r.breakdown_torque.value) - shift;
         // A table's breakdown torque is the least that a motor must have.
         let excess = r.breakdown_torque.is_filled() && peak > 0.0;
-        let peak = if excess { peak * EXCESS_WEIGHT } else { peak };
+        let peak = if excess { peak * EXCESS_WEIGHT / self.weights[SIZE - 1] } else { peak };
         let raw = [
             log(shaft, r.shaft_w.value),
             slip_error,
@@ -288,8 +344,16 @@ impl<'a> Problem<'a> {
         let (low, high) = self.bounds();
         let mut starts = Vec::new();
         for (ratio, inner_x) in [(4.0, 0.1), (10.0, 0.1), (3.0, 0.3), (30.0, 0.2), (10.0, 0.5), (1.5, 0.05)] {
-            let values =
-                [0.25 * z, 0.5 * z, 2.5, 0.9 * r.slip.value, inner_x, ratio, 0.25 * (1.0 - r.efficiency.value), 1.0];
+            let values = [
+                0.25 * z,
+                0.5 * z,
+                2.5,
+                0.9 * r.slip.value,
+                inner_x,
+                ratio,
+                0.25 * (1.0 - r.efficiency.value),
+                1.0,
+            ];
             let start = Vector::from(values.map(f64::ln));
             starts.push(start.zip_zip_map(&low, &high, |v, l, h| v.clamp(l, h)));
         }
@@ -308,7 +372,8 @@ impl<'a> Problem<'a> {
             if now < cost {
                 (x, cost) = (found, now);
             }
-            if !(gain > 1e-4 * cost + 1e-9) {
+            let worthwhile = gain > 1e-4 * cost + 1e-9;
+            if !worthwhile {
                 break;
             }
         }
@@ -344,7 +409,8 @@ impl<'a> Problem<'a> {
                     normal[(i, i)] = normal[(i, i)] * (1.0 + damping) + 1e-9;
                 }
             }
-            let held = |i: usize| (x[i] <= low[i] && gradient[i] > 0.0) || (x[i] >= high[i] && gradient[i] < 0.0);
+            let held =
+                |i: usize| (x[i] <= low[i] && gradient[i] > 0.0) || (x[i] >= high[i] && gradient[i] < 0.0);
             let right = Vector::from_fn(|i, _| if held(i) { 0.0 } else { -gradient[i] });
             let Some(step) = normal.cholesky().map(|c| c.solve(&right)) else {
                 damping *= 10.0;

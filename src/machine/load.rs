@@ -61,7 +61,10 @@ impl DrivenLoad {
         };
         let finite = |v: f64| v.is_finite() && v >= 0.0;
         wants(finite(self.torque_nm), "load torque must be 0 or more");
-        wants(self.rated_rad_s.is_finite() && self.rated_rad_s > 0.0, "rated speed of the load must be above 0");
+        wants(
+            self.rated_rad_s.is_finite() && self.rated_rad_s > 0.0,
+            "rated speed of the load must be above 0",
+        );
         wants(finite(self.inertia_kgm2), "load inertia must be 0 or more");
         if let Shape::Table(points) = &self.shape {
             wants(points.len() >= 2, "the table of speed and torque needs two points or more");
@@ -107,7 +110,9 @@ mod tests {
 
     #[test]
     fn faults_are_told_and_nothing_panics() {
-        for points in [vec![], vec![(0.0, 1.0)], vec![(0.5, 1.0), (0.5, 1.0)], vec![(f64::NAN, 1.0), (1.0, -1.0)]] {
+        for points in
+            [vec![], vec![(0.0, 1.0)], vec![(0.5, 1.0), (0.5, 1.0)], vec![(f64::NAN, 1.0), (1.0, -1.0)]]
+        {
             let broken = load(Shape::Table(points));
             assert!(!broken.faults().is_empty());
             let _ = broken.torque_nm(50.0);

@@ -27,16 +27,20 @@ mod fit;
 mod load;
 mod nameplate;
 mod ode;
+mod progress;
 mod resolve;
 mod running;
 mod runup;
 mod starter;
 
-pub use circuit::{Cage, Circuit, Matrix3, MechanicalLoss, Operation, Peak, Phases, SequencePart, sequence_matrix};
+pub use circuit::{
+    Cage, Circuit, Matrix3, MechanicalLoss, Operation, Peak, Phases, SequencePart, sequence_matrix,
+};
 pub use fit::{Fit, FitFault, FitItem, REFUSED_ABOVE_PERCENT, balanced, check, fit};
 pub use load::{DrivenLoad, Shape};
 pub use nameplate::{Design, Nameplate, NameplateFault, Origin, Rated, Ratings};
 pub use ode::{Advance, Ode, OdeFault, StepControl, Stop};
+pub use progress::{Condition, Progress, net_nm};
 pub use running::{CannotRun, Motor, Running, Unbalance, run, running_slip, unbalance};
 pub use runup::{
     Energies, Finish, Instant, Outcome, RunUp, RunUpFault, RunUpSettings, StiffBus, Terminals, run_up,

@@ -138,6 +138,8 @@ pub struct Ratings {
     pub pf: Rated,
     /// Number of poles.
     pub poles: u32,
+    /// Where the number of poles comes from.
+    pub poles_origin: Origin,
     /// Full-load slip.
     pub slip: Rated,
     /// Locked-rotor line current, amperes.
@@ -174,7 +176,8 @@ impl Ratings {
         self.shaft_w.value / self.rated_rad_s()
     }
 
-    /// Values that the nameplate does not have: name of the column, value, source.
+    /// Values that the nameplate does not have: name, value, source. The design letter is told apart, by
+    /// [`Ratings::design_origin`].
     pub fn filled(&self) -> Vec<(&'static str, f64, &str)> {
         let all = [
             ("amps", Some(&self.amps)),
@@ -188,12 +191,15 @@ impl Ratings {
             ("breakdown_torque", Some(&self.breakdown_torque)),
             ("inertia_kgm2", Some(&self.inertia_kgm2)),
         ];
-        all.into_iter()
-            .filter_map(|(name, rated)| match rated {
-                Some(Rated { value, origin: Origin::Filled(source) }) => Some((name, *value, source.as_str())),
-                _ => None,
-            })
-            .collect()
+        let poles = match &self.poles_origin {
+            Origin::Filled(source) => Some(("poles", f64::from(self.poles), source.as_str())),
+            _ => None,
+        };
+        let rest = all.into_iter().filter_map(|(name, rated)| match rated {
+            Some(Rated { value, origin: Origin::Filled(source) }) => Some((name, *value, source.as_str())),
+            _ => None,
+        });
+        poles.into_iter().chain(rest).collect()
     }
 }
 

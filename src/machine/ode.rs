@@ -16,15 +16,8 @@ const WEIGHTS: [[f64; 6]; 6] = [
     [35.0 / 384.0, 0.0, 500.0 / 1113.0, 125.0 / 192.0, -2187.0 / 6784.0, 11.0 / 84.0],
 ];
 /// Order 5 less order 4.
-const ERROR: [f64; 7] = [
-    71.0 / 57600.0,
-    0.0,
-    -71.0 / 16695.0,
-    71.0 / 1920.0,
-    -17253.0 / 339200.0,
-    22.0 / 525.0,
-    -1.0 / 40.0,
-];
+const ERROR: [f64; 7] =
+    [71.0 / 57600.0, 0.0, -71.0 / 16695.0, 71.0 / 1920.0, -17253.0 / 339200.0, 22.0 / 525.0, -1.0 / 40.0];
 
 /// How exact, and how far a step may go.
 #[derive(Debug, Clone, PartialEq)]
@@ -156,7 +149,8 @@ impl Ode {
                 self.next_s = grown.clamp(self.control.shortest_s, self.control.longest_s);
                 return self.accept(step, trial, stops, rate);
             }
-            let shrink = if trial.error.is_finite() { (0.9 * trial.error.powf(-0.2)).clamp(0.1, 0.9) } else { 0.1 };
+            let shrink =
+                if trial.error.is_finite() { (0.9 * trial.error.powf(-0.2)).clamp(0.1, 0.9) } else { 0.1 };
             wanted = step * shrink;
             if wanted < self.control.shortest_s {
                 return Err(OdeFault::StepTooShort(self.time_s));
@@ -306,7 +300,10 @@ mod tests {
             }
         }
         assert_eq!((hits[0].0, hits[1].0), (1, 0));
-        assert!((hits[0].1 - 0.5f64.asin()).abs() < 1e-8 && (hits[1].1 - 0.9f64.asin()).abs() < 1e-8, "{hits:?}");
+        assert!(
+            (hits[0].1 - 0.5f64.asin()).abs() < 1e-8 && (hits[1].1 - 0.9f64.asin()).abs() < 1e-8,
+            "{hits:?}"
+        );
     }
 
     #[test]

@@ -36,7 +36,7 @@ pub(super) fn resolve(plate: &Nameplate) -> Result<Ratings, Vec<NameplateFault>>
     };
     let hp = shaft_w.value / WATTS_PER_HORSEPOWER;
     let (design, design_origin) = design(plate);
-    let Some(poles) = poles(plate, &mut faults) else { return Err(faults.0) };
+    let Some((poles, poles_origin)) = poles(plate, &mut faults) else { return Err(faults.0) };
     let full = full_load(plate, design, poles, hp, volts, &shaft_w, &mut faults);
     let locked_rotor_amps = locked_rotor_amps(plate, design, hp, volts, &full.amps, &mut faults);
     let torques = torques(plate, design, hp, poles, &mut faults);
@@ -49,6 +49,7 @@ pub(super) fn resolve(plate: &Nameplate) -> Result<Ratings, Vec<NameplateFault>>
         efficiency: full.efficiency,
         pf: full.pf,
         poles,
+        poles_origin,
         slip: full.slip,
         locked_rotor_amps,
         locked_rotor_pf,
@@ -98,14 +99,16 @@ fn power(plate: &Nameplate, faults: &mut Faults) -> Option<Rated> {
     let from_hp = plate.hp.map(|hp| hp * WATTS_PER_HORSEPOWER);
     match (plate.shaft_w, from_hp) {
         (Some(w), Some(h)) if (w / h - 1.0).abs() > 0.04 => {
-            let message = format!("{:.1} kW is not {:.1} hp ({:.1} kW)", w / KILO, h / WATTS_PER_HORSEPOWER, h / KILO);
+            let message =
+                format!("{:.1} kW is not {:.1} hp ({:.1} kW)", w / KILO, h / WATTS_PER_HORSEPOWER, h / KILO);
             faults.add("hp", message, "keep the one that stands on the nameplate");
             None
         }
         (Some(w), _) => Some(Rated::given(w)),
         (None, Some(h)) => Some(Rated::derived(h, "horsepower of 745.7 W")),
         (None, None) => {
-            let (Some(v), Some(i), Some(e), Some(p)) = (plate.volts, plate.amps, plate.efficiency, plate.pf) else {
+            let (Some(v), Some(i), Some(e), Some(p)) = (plate.volts, plate.amps, plate.efficiency, plate.pf)
+            else {
                 faults.add("hp", "the shaft power is missing", "give hp or kw of the nameplate");
                 return None;
             };
@@ -124,30 +127,40 @@ fn design(plate: &Nameplate) -> (Design, Origin) {
     }
 }
 
-/// Poles from the speed: the fewest whose synchronous speed is above it... and no further than 30 % above.
-fn poles(plate: &Nameplate, faults: &mut Faults) -> Option<u32> {
+/// Poles from the speed: the most whose synchronous speed is above it.
+fn poles(plate: &Nameplate, faults: &mut Faults) -> Option<(u32, Origin)> {
     let sync = |poles: u32| 120.0 * plate.frequency_hz / f64::from(poles);
-    let Some(rpm) = plate.rpm else { return Some(plate.poles.unwrap_or(4)) };
-    let found = plate.poles.or_else(|| (1..=32).map(|pair| 2 * pair).rfind(|&p| sync(p) > rpm));
-    let slip = found.map(|p| 1.0 - rpm / sync(p));
-    match (found, slip) {
-        (Some(p), Some(s)) if s > 0.0 && s < 0.3 => Some(p),
-        (Some(p), Some(s)) => {
-            let message = format!(
-                "{rpm} rpm would be a slip of {:.1} % with {p} poles at {} Hz ({:.0} rpm synchronous)",
-                100.0 * s,
-                plate.frequency_hz,
-                sync(p)
-            );
-            faults.add("rpm", message, "give the full-load speed, below the synchronous speed by some percent");
-            None
+    let Some(rpm) = plate.rpm else {
+        let common = || Origin::Filled("common practice, no source".to_string());
+        return Some(plate.poles.map_or_else(|| (4, common()), |p| (p, Origin::Given)));
+    };
+    let even = || (1..=32).map(|pair| 2 * pair);
+    let hz = plate.frequency_hz;
+    let found = plate.poles.or_else(|| even().rfind(|&p| sync(p) > rpm));
+    let synchronous = even().find(|&p| (rpm / sync(p) - 1.0).abs() < 1e-4);
+    let mend = "give the full-load speed of the nameplate, some percent below synchronous speed";
+    match (found, synchronous) {
+        (Some(p), None) if rpm < sync(p) && rpm > 0.7 * sync(p) => {
+            let origin =
+                if plate.poles.is_some() { Origin::Given } else { Origin::Derived("rpm".to_string()) };
+            return Some((p, origin));
         }
-        _ => {
-            let message = format!("{rpm} rpm is at or above synchronous speed at {} Hz", plate.frequency_hz);
-            faults.add("rpm", message, "give the full-load speed of the nameplate");
-            None
+        (_, Some(p)) => {
+            faults.add("rpm", format!("{rpm} rpm is the synchronous speed of {p} poles at {hz} Hz"), mend);
+        }
+        (Some(p), None) => {
+            let slip = 100.0 * (1.0 - rpm / sync(p));
+            faults.add(
+                "rpm",
+                format!("{rpm} rpm would be a slip of {slip:.1} % with {p} poles at {hz} Hz"),
+                mend,
+            );
+        }
+        (None, None) => {
+            faults.add("rpm", format!("{rpm} rpm is above every synchronous speed at {hz} Hz"), mend);
         }
     }
+    None
 }
 
 struct FullLoad {
@@ -185,10 +198,12 @@ fn full_load(
     };
     let needed = shaft.value / (SQRT_3 * volts * efficiency.value * pf.value);
     let amps = plate.amps.map_or_else(
-        || if pf.is_filled() || efficiency.is_filled() {
-            Rated::filled(needed, "power over volts, with the efficiency and power factor filled in")
-        } else {
-            Rated::derived(needed, "power, volts, efficiency and power factor")
+        || {
+            if pf.is_filled() || efficiency.is_filled() {
+                Rated::filled(needed, "power over volts, with the efficiency and power factor filled in")
+            } else {
+                Rated::derived(needed, "power, volts, efficiency and power factor")
+            }
         },
         Rated::given,
     );
@@ -196,14 +211,19 @@ fn full_load(
         Some(s) => Rated::derived(s, "full-load and synchronous speed"),
         None => filled_slip(hp, efficiency.value, design),
     };
-    check_full_load(&FullLoad { amps: amps.clone(), efficiency: efficiency.clone(), pf: pf.clone(), slip: slip.clone() }, needed, faults);
+    check_full_load(
+        &FullLoad { amps: amps.clone(), efficiency: efficiency.clone(), pf: pf.clone(), slip: slip.clone() },
+        needed,
+        faults,
+    );
     FullLoad { amps, efficiency, pf, slip }
 }
 
 /// Efficiency of the table, no better than a high given slip allows.
 fn filled_efficiency(hp: f64, slip: Option<f64>, design: Design) -> Rated {
     let row = motors::full_load_efficiency(hp);
-    let (value, source) = row.map_or((0.9, "common practice, no source".to_string()), |r| (r.value, r.source));
+    let (value, source) =
+        row.map_or((0.9, "common practice, no source".to_string()), |r| (r.value, r.source));
     let most = 0.96 * (1.0 - slip.unwrap_or(if design == Design::D { 0.08 } else { 0.0 }));
     if value > most {
         return Rated::filled(most, format!("{source}, lowered to what the slip allows"));
@@ -223,13 +243,23 @@ fn filled_slip(hp: f64, efficiency: f64, design: Design) -> Rated {
 fn check_full_load(full: &FullLoad, needed: f64, faults: &mut Faults) {
     let FullLoad { amps, efficiency, pf, slip } = full;
     if !(efficiency.value > 0.1 && efficiency.value < 1.0) {
-        let message = format!("{:.1} A at this power and power factor would need an efficiency of {:.1} %", amps.value, 100.0 * efficiency.value);
+        let message = format!(
+            "{:.1} A at this power and power factor would need an efficiency of {:.1} %",
+            amps.value,
+            100.0 * efficiency.value
+        );
         faults.add("amps", message, "check amps, volts, pf and power; one of them is wrong");
     } else if !(pf.value > 0.1 && pf.value < 1.0) {
-        let message = format!("{:.1} A at this power and efficiency would need a power factor of {:.2}", amps.value, pf.value);
+        let message = format!(
+            "{:.1} A at this power and efficiency would need a power factor of {:.2}",
+            amps.value, pf.value
+        );
         faults.add("amps", message, "check amps, volts, efficiency_percent and power; one of them is wrong");
     } else if (needed / amps.value - 1.0).abs() > 0.06 {
-        let message = format!("power, volts, efficiency and power factor make {needed:.1} A, the nameplate says {:.1} A", amps.value);
+        let message = format!(
+            "power, volts, efficiency and power factor make {needed:.1} A, the nameplate says {:.1} A",
+            amps.value
+        );
         faults.add("amps", message, "check the four values; leave blank the one you trust least");
     }
     if efficiency.value >= 1.0 - slip.value && !slip.is_filled() {
@@ -275,10 +305,13 @@ fn locked_rotor_amps(
         }
     }
     let found = stated.unwrap_or_else(|| match (code, design) {
-        (Some(c), _) => Rated::derived(of_code(c.middle()), &format!("middle of the code letter ({})", c.source)),
-        (None, Design::N | Design::H) => {
-            Rated::filled(6.0 * full_load.value, "about 6 times full load, IEEE Std 399-1997 9.5.2 (from memory)")
+        (Some(c), _) => {
+            Rated::derived(of_code(c.middle()), &format!("middle of the code letter ({})", c.source))
         }
+        (None, Design::N | Design::H) => Rated::filled(
+            6.0 * full_load.value,
+            "about 6 times full load, IEEE Std 399-1997 9.5.2 (from memory)",
+        ),
         (None, _) => match motors::locked_rotor_amps(hp, volts) {
             Some(row) if design == Design::A => {
                 Rated::filled(row.value, format!("{} (design A has no limit and may draw more)", row.source))
@@ -288,9 +321,15 @@ fn locked_rotor_amps(
         },
     });
     if found.value < 1.2 * full_load.value {
-        let message =
-            format!("{:.1} A at standstill is not well above {:.1} A at full load", found.value, full_load.value);
-        faults.add("locked_rotor_amps", message, "check amps, volts and the locked-rotor value or code letter");
+        let message = format!(
+            "{:.1} A at standstill is not well above {:.1} A at full load",
+            found.value, full_load.value
+        );
+        faults.add(
+            "locked_rotor_amps",
+            message,
+            "check amps, volts and the locked-rotor value or code letter",
+        );
     }
     found
 }
@@ -299,7 +338,9 @@ fn locked_rotor_pf(plate: &Nameplate, hp: f64, full_load_pf: &Rated) -> Rated {
     match (plate.locked_rotor_pf, motors::locked_rotor_pf(hp)) {
         (Some(pf), _) => Rated::given(pf),
         (None, Some(row)) => Rated::filled(row.value, row.source),
-        (None, None) => Rated::filled(0.2f64.min(full_load_pf.value), "IEEE Std 399-1997 9.5.2 (from memory)"),
+        (None, None) => {
+            Rated::filled(0.2f64.min(full_load_pf.value), "IEEE Std 399-1997 9.5.2 (from memory)")
+        }
     }
 }
 
@@ -335,18 +376,32 @@ fn torques(
     if locked.value > most.value * 1.001 {
         match (given_locked, given_most) {
             (Some(l), Some(m)) => {
-                let message = format!("breakdown torque {:.0} % is below locked-rotor torque {:.0} %", 100.0 * m, 100.0 * l);
-                faults.add("breakdown_torque_percent", message, "breakdown torque is the greatest of the whole curve; check both");
+                let message = format!(
+                    "breakdown torque {:.0} % is below locked-rotor torque {:.0} %",
+                    100.0 * m,
+                    100.0 * l
+                );
+                faults.add(
+                    "breakdown_torque_percent",
+                    message,
+                    "breakdown torque is the greatest of the whole curve; check both",
+                );
             }
             (Some(l), None) => most = Rated::filled(l, "raised to the given locked-rotor torque"),
-            _ => locked = Rated::filled(0.95 * most.value, "lowered to stay below the given breakdown torque"),
+            _ => {
+                locked = Rated::filled(0.95 * most.value, "lowered to stay below the given breakdown torque")
+            }
         }
     }
     if let (Some(p), Some(l)) = (plate.pull_up_torque, given_locked.or(given_most))
         && p > 1.001 * l
     {
         let message = format!("pull-up torque {:.0} % is above {:.0} %", 100.0 * p, 100.0 * l);
-        faults.add("pull_up_torque_percent", message, "pull-up torque is the least of the curve; check the three torques");
+        faults.add(
+            "pull_up_torque_percent",
+            message,
+            "pull-up torque is the least of the curve; check the three torques",
+        );
     }
     (locked, pull_up, most)
 }

@@ -3,6 +3,7 @@
 use serde::Serialize;
 
 use super::circuit::{Circuit, Operation, Phases};
+use super::fit::{balanced, full_load_slip};
 use super::load::DrivenLoad;
 use super::nameplate::Ratings;
 use crate::catalog::motors;
@@ -39,6 +40,34 @@ impl Motor {
             inertia_kgm2: ratings.inertia_kgm2.value,
             load,
         }
+    }
+
+    /// A motor whose circuit is given directly: full load is where the shaft gives `shaft_w` at rated voltage.
+    ///
+    /// `None` where the circuit never gives that much, or its values make no sense.
+    pub fn of_circuit(
+        circuit: Circuit,
+        volts: f64,
+        shaft_w: f64,
+        inertia_kgm2: f64,
+        load: DrivenLoad,
+    ) -> Option<Motor> {
+        let sensible = circuit.faults().is_empty() && volts > 0.0 && shaft_w > 0.0;
+        if !sensible {
+            return None;
+        }
+        let slip = full_load_slip(&circuit, volts, shaft_w)?;
+        let rated_rad_s = circuit.speed_rad_s(slip);
+        let amps = circuit.operation(slip, &balanced(volts)).amps[0].norm();
+        Some(Motor {
+            circuit,
+            volts,
+            amps,
+            torque_nm: shaft_w / rated_rad_s,
+            rated_rad_s,
+            inertia_kgm2,
+            load,
+        })
     }
 
     /// Moment of inertia of rotor and load, kg m2.
@@ -139,9 +168,7 @@ pub fn running_slip(motor: &Motor, volts: &Phases) -> Result<f64, CannotRun> {
         return Err(CannotRun::NotANumber);
     }
     let c = &motor.circuit;
-    let margin = |slip: f64| {
-        c.operation(slip, volts).torque_nm - motor.resisting_nm(c.speed_rad_s(slip))
-    };
+    let margin = |slip: f64| c.operation(slip, volts).torque_nm - motor.resisting_nm(c.speed_rad_s(slip));
     // Without load and friction the motor runs at synchronous speed, or a breath below.
     if margin(0.0) >= 0.0 {
         return Ok(0.0);
@@ -162,7 +189,9 @@ pub fn running_slip(motor: &Motor, volts: &Phases) -> Result<f64, CannotRun> {
     }
     // The peak may stand between two points.
     let step = 10f64.powf(5.0 / f64::from(POINTS));
-    if let Some(peak) = highest(best.1 / step, (best.1 * step).min(1.0), &margin).filter(|&s| margin(s) >= 0.0) {
+    if let Some(peak) =
+        highest(best.1 / step, (best.1 * step).min(1.0), &margin).filter(|&s| margin(s) >= 0.0)
+    {
         return Ok(crossing(best.1 / step, peak, &margin));
     }
     Err(CannotRun::Overload { covered: best.0.max(0.0), slip: best.1 })

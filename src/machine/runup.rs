@@ -3,9 +3,10 @@
 use serde::Serialize;
 
 use super::circuit::Phases;
-use super::ode::{Advance, Ode, OdeFault, Stop, StepControl};
+use super::ode::{Advance, Ode, OdeFault, StepControl, Stop};
+use super::progress::{Condition, Progress, net_nm};
 use super::running::Motor;
-use super::starter::{ChangeOver, Coupling, Seen, Stage, Starter};
+use super::starter::{Seen, Starter};
 
 /// When a run-up counts as done.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -97,7 +98,8 @@ pub struct Energies {
 impl Energies {
     /// What does not add up: in, less losses, work and motion; a part of what came in.
     pub fn imbalance(&self) -> f64 {
-        let out = self.stator + self.rotor + self.core + self.starter + self.mechanical + self.load + self.kinetic;
+        let out =
+            self.stator + self.rotor + self.core + self.starter + self.mechanical + self.load + self.kinetic;
         (self.input - out) / self.input.abs().max(f64::MIN_POSITIVE)
     }
 }
@@ -173,33 +175,26 @@ pub fn run_up<T: Terminals>(
     settings: &RunUpSettings,
 ) -> Result<RunUp, RunUpFault<T::Fault>> {
     let mut faults = [starter.faults(), motor.circuit.faults(), motor.load.faults()].concat();
-    if !(motor.total_inertia_kgm2() > 0.0) {
+    let turns = motor.total_inertia_kgm2() > 0.0;
+    if !turns {
         faults.push("rotor and load need a moment of inertia above 0".to_string());
     }
-    if !(settings.most_s > 0.0 && settings.relative > 0.0 && settings.from_rad_s >= 0.0) {
+    let sensible = settings.most_s > 0.0 && settings.relative > 0.0 && settings.from_rad_s >= 0.0;
+    if !sensible {
         faults.push("time and tolerance must be above 0, the first speed 0 or more".to_string());
     }
     if !faults.is_empty() {
         return Err(RunUpFault::Settings(faults));
     }
-    let stages = starter.stages(motor);
-    let mut climb = Climb { motor, stages: &stages, stage: 0, stage_began_s: 0.0, settings, terminals };
-    climb.run()
+    let progress = Progress::new(motor, starter, 0.0);
+    Climb { motor, progress, settings, terminals }.run()
 }
 
 struct Climb<'a, T: Terminals> {
     motor: &'a Motor,
-    stages: &'a [Stage],
-    stage: usize,
-    stage_began_s: f64,
+    progress: Progress,
     settings: &'a RunUpSettings,
     terminals: &'a mut T,
-}
-
-/// Net torque of an instant; a motor at standstill is not driven backwards.
-fn net_nm(instant: &Instant) -> f64 {
-    let net = instant.seen.torque_nm - instant.resisting_nm;
-    if instant.speed_rad_s <= 0.0 { net.max(0.0) } else { net }
 }
 
 impl<T: Terminals> Climb<'_, T> {
@@ -207,7 +202,8 @@ impl<T: Terminals> Climb<'_, T> {
         let mut state = vec![0.0; SIZE];
         state[0] = self.settings.from_rad_s;
         let first = self.instant(0.0, state[0]).map_err(RunUpFault::Terminals)?;
-        let mut ode = Ode::new(0.0, state, self.control(), &mut |t, y, dy| self.rate(t, y, dy)).map_err(fault)?;
+        let mut ode =
+            Ode::new(0.0, state, self.control(), &mut |t, y, dy| self.rate(t, y, dy)).map_err(fault)?;
         let mut trace = vec![first];
         let mut changes = Vec::new();
         let outcome = loop {
@@ -215,23 +211,11 @@ impl<T: Terminals> Climb<'_, T> {
                 break outcome;
             }
             let until = self.next_corner(ode.time_s());
-            let corners = self.motor.load.corners();
-            let speeds: Vec<f64> = self.stop_speeds().into_iter().chain(corners).collect();
-            let stops: Vec<_> = speeds.iter().map(|&s| move |_: f64, y: &[f64]| y[0] - s).collect();
-            // Coming to rest is a corner too: below zero the load would drive.
-            let rest = |_: f64, y: &[f64]| -y[0];
-            let mut all: Vec<Stop<'_>> = vec![&rest];
-            all.extend(stops.iter().map(|s| s as Stop<'_>));
-            let advance = ode.advance(until, &all, &mut |t, y, dy| self.rate(t, y, dy)).map_err(fault)?;
-            if let Advance::Stopped(0) = advance {
-                ode.state_mut()[0] = 0.0;
-            }
+            let advance = self.advance(&mut ode, until)?;
             let (time, speed) = (ode.time_s(), ode.state()[0]);
             trace.push(self.instant(time, speed).map_err(RunUpFault::Terminals)?);
-            if self.change_due(time, speed) {
-                self.stage += 1;
-                self.stage_began_s = time;
-                changes.push((time, self.stage));
+            if self.progress.go_on(self.motor, time, speed) {
+                changes.push((time, self.progress.stage()));
                 trace.push(self.instant(time, speed).map_err(RunUpFault::Terminals)?);
             }
             if advance != Advance::Step || time >= until {
@@ -239,6 +223,26 @@ impl<T: Terminals> Climb<'_, T> {
             }
         };
         Ok(self.result(outcome, &ode, trace, changes))
+    }
+
+    /// One step, ended at rest and at every speed where something changes.
+    fn advance(&mut self, ode: &mut Ode, until: f64) -> Result<Advance, RunUpFault<T::Fault>> {
+        let finish = match self.settings.finish {
+            Finish::AtSpeed(speed) => Some(speed),
+            Finish::Settled(_) => None,
+        };
+        let change = self.progress.change_speed(self.motor);
+        let speeds = change.into_iter().chain(finish).chain(self.motor.load.corners());
+        let stops: Vec<_> = speeds.map(|s| move |_: f64, y: &[f64]| y[0] - s).collect();
+        // Coming to rest is a corner too: below zero the load would drive.
+        let rest = |_: f64, y: &[f64]| -y[0];
+        let mut all: Vec<Stop<'_>> = vec![&rest];
+        all.extend(stops.iter().map(|s| s as Stop<'_>));
+        let advance = ode.advance(until, &all, &mut |t, y, dy| self.rate(t, y, dy)).map_err(fault)?;
+        if advance == Advance::Stopped(0) {
+            ode.state_mut()[0] = 0.0;
+        }
+        Ok(advance)
     }
 
     fn control(&self) -> StepControl {
@@ -257,29 +261,20 @@ impl<T: Terminals> Climb<'_, T> {
         }
     }
 
-    fn coupling(&self) -> Coupling {
-        self.stages.get(self.stage).map_or(Coupling::Direct, |s| s.coupling)
-    }
-
-    fn until(&self) -> Option<ChangeOver> {
-        self.stages.get(self.stage).and_then(|s| s.until)
-    }
-
     fn instant(&mut self, time_s: f64, speed_rad_s: f64) -> Result<Instant, T::Fault> {
-        let (motor, coupling, stage_s) = (self.motor, self.coupling(), time_s - self.stage_began_s);
-        let draws = |volts: &Phases| coupling.seen(motor, speed_rad_s, stage_s, volts);
+        let (motor, progress) = (self.motor, &self.progress);
+        let draws = |volts: &Phases| progress.seen(motor, time_s, speed_rad_s, volts);
         let volts = self.terminals.volts(time_s, &draws)?;
         let seen = draws(&volts);
         let resisting_nm = motor.resisting_nm(speed_rad_s);
-        Ok(Instant { time_s, speed_rad_s, stage: self.stage, volts, seen, resisting_nm })
+        Ok(Instant { time_s, speed_rad_s, stage: progress.stage(), volts, seen, resisting_nm })
     }
 
     fn rate(&mut self, time_s: f64, state: &[f64], rates: &mut [f64]) -> Result<(), T::Fault> {
         let speed = state.first().copied().unwrap_or(0.0);
-        let now = self.instant(time_s, speed)?;
-        let seen = &now.seen;
+        let seen = self.instant(time_s, speed)?.seen;
         let all = [
-            net_nm(&now) / self.motor.total_inertia_kgm2(),
+            net_nm(self.motor, speed, seen.torque_nm) / self.motor.total_inertia_kgm2(),
             seen.input_w,
             seen.stator_w,
             seen.rotor_w,
@@ -294,69 +289,29 @@ impl<T: Terminals> Climb<'_, T> {
 
     /// The next time at which something has a corner, or the end.
     fn next_corner(&self, now_s: f64) -> f64 {
-        let change = match self.until() {
-            Some(ChangeOver::AfterSeconds(s)) => Some(self.stage_began_s + s),
-            _ => None,
-        };
-        let ramp = self.coupling().corners().map(|s| self.stage_began_s + s);
-        let given = self.settings.corners_s.iter().copied();
-        let later = given.chain(change).chain(ramp).filter(|&t| t > now_s);
-        later.fold(self.settings.most_s, f64::min)
-    }
-
-    fn stop_speeds(&self) -> Vec<f64> {
-        let change = match self.until() {
-            Some(ChangeOver::AtSpeed(part)) => Some(part * self.motor.circuit.sync_rad_s),
-            _ => None,
-        };
-        let finish = match self.settings.finish {
-            Finish::AtSpeed(speed) => Some(speed),
-            Finish::Settled(_) => None,
-        };
-        change.into_iter().chain(finish).collect()
-    }
-
-    fn change_due(&self, time_s: f64, speed_rad_s: f64) -> bool {
-        match self.until() {
-            Some(ChangeOver::AfterSeconds(s)) => time_s >= self.stage_began_s + s,
-            Some(ChangeOver::AtSpeed(part)) => speed_rad_s >= part * self.motor.circuit.sync_rad_s,
-            None => false,
-        }
-    }
-
-    /// True where a change is to come without the speed rising further.
-    fn change_to_come(&self, time_s: f64) -> bool {
-        matches!(self.until(), Some(ChangeOver::AfterSeconds(_)))
-            || self.coupling().is_ramping(time_s - self.stage_began_s)
-            || self.settings.corners_s.iter().any(|&t| t > time_s)
+        let given = self.settings.corners_s.iter().copied().filter(|&t| t > now_s);
+        given.chain(self.progress.next_corner(now_s)).fold(self.settings.most_s, f64::min)
     }
 
     fn ended(&self, now: &Instant) -> Option<Outcome> {
-        if let Finish::AtSpeed(speed) = self.settings.finish
-            && now.speed_rad_s >= speed
-        {
-            return Some(Outcome::Running);
-        }
+        let settled = match self.settings.finish {
+            Finish::AtSpeed(speed) if now.speed_rad_s >= speed => return Some(Outcome::Running),
+            Finish::AtSpeed(_) => None,
+            Finish::Settled(part) => Some(part),
+        };
         if now.time_s >= self.settings.most_s {
             return Some(Outcome::TooSlow);
         }
-        if self.change_to_come(now.time_s) {
+        if self.settings.corners_s.iter().any(|&t| t > now.time_s) {
             return None;
         }
-        let net = net_nm(now) / self.motor.torque_nm;
-        let beyond = self.motor.circuit.slip(now.speed_rad_s) < self.breakdown_slip();
-        match self.settings.finish {
-            Finish::Settled(part) if self.until().is_none() && beyond && net <= part => Some(Outcome::Running),
-            _ if net <= STALLED => Some(Outcome::Stalled),
-            _ => None,
-        }
-    }
-
-    /// Slip below which torque falls with rising speed. A drive follows its own ramp: any speed near rated.
-    fn breakdown_slip(&self) -> f64 {
-        match self.coupling() {
-            Coupling::Drive { .. } => 1.1 * self.motor.circuit.slip(self.motor.rated_rad_s),
-            _ => self.motor.circuit.breakdown(self.motor.volts).slip,
+        let torque = now.seen.torque_nm;
+        // With a speed to reach, settling below it is no end but a stall.
+        let part = settled.unwrap_or(0.0);
+        match self.progress.condition(self.motor, now.time_s, now.speed_rad_s, torque, part) {
+            Condition::Running if settled.is_some() => Some(Outcome::Running),
+            Condition::Running | Condition::Stalled => Some(Outcome::Stalled),
+            Condition::Waiting | Condition::Accelerating => None,
         }
     }
 
@@ -365,21 +320,13 @@ impl<T: Terminals> Climb<'_, T> {
         let joules = |i: usize| ode.state().get(i).copied().unwrap_or(0.0);
         let gained = speed * speed - self.settings.from_rad_s * self.settings.from_rad_s;
         let amps = trace.iter().flat_map(|i| i.seen.amps).map(|a| a.norm()).fold(0.0, f64::max);
-        let breakdown = self.motor.circuit.breakdown(self.motor.volts).slip;
-        let climbing = trace.iter().filter(|i| {
-            let off = self.stages.get(i.stage).is_some_and(|s| s.coupling == Coupling::Off);
-            !off && self.motor.circuit.slip(i.speed_rad_s) >= breakdown
-        });
-        let least = climbing
-            .map(|i| ((i.seen.torque_nm - i.resisting_nm) / self.motor.torque_nm, i.speed_rad_s))
-            .min_by(|a, b| a.0.total_cmp(&b.0));
         RunUp {
             outcome,
             seconds: ode.time_s(),
             speed_rad_s: speed,
             changes,
             greatest_amps: amps,
-            least_margin: least,
+            least_margin: least_margin(self.motor, &trace),
             energies: Energies {
                 input: joules(1),
                 stator: joules(2),
@@ -396,8 +343,13 @@ impl<T: Terminals> Climb<'_, T> {
     }
 }
 
-/// Accelerating torque, part of full-load torque, at which a motor below breakdown counts as stalled.
-const STALLED: f64 = 1e-3;
+/// Least accelerating torque before breakdown, part of full-load torque, and its speed; pauses left out.
+fn least_margin(motor: &Motor, trace: &[Instant]) -> Option<(f64, f64)> {
+    let breakdown = motor.circuit.breakdown(motor.volts).slip;
+    let climbing = |i: &&Instant| i.seen.torque_nm > 0.0 && motor.circuit.slip(i.speed_rad_s) >= breakdown;
+    let margin = |i: &Instant| ((i.seen.torque_nm - i.resisting_nm) / motor.torque_nm, i.speed_rad_s);
+    trace.iter().filter(climbing).map(margin).min_by(|a, b| a.0.total_cmp(&b.0))
+}
 
 fn fault<E>(fault: OdeFault<E>) -> RunUpFault<E> {
     match fault {

@@ -177,7 +177,10 @@ impl Starter {
                 vec![first(at(ramp_s), full), last(at(0.0))]
             }
             Starter::Capacitor { var, change } => {
-                vec![first(Coupling::Capacitor(var / (motor.volts * motor.volts)), change), last(Coupling::Direct)]
+                vec![
+                    first(Coupling::Capacitor(var / (motor.volts * motor.volts)), change),
+                    last(Coupling::Direct),
+                ]
             }
         }
     }
@@ -214,14 +217,21 @@ impl Starter {
             Starter::Drive { limit_amps, ramp_s, efficiency, pf } => {
                 wants(limit_amps > 0.0, "the current limit must be above 0");
                 wants(ramp_s > 0.0 && ramp_s.is_finite(), "the ramp must be above 0 seconds");
-                wants(part(efficiency) && part(pf), "efficiency and power factor must be above 0 and up to 1");
+                wants(
+                    part(efficiency) && part(pf),
+                    "efficiency and power factor must be above 0 and up to 1",
+                );
                 None
             }
             Starter::Direct => None,
         };
         match change {
-            Some(ChangeOver::AfterSeconds(s)) => wants(s > 0.0 && s.is_finite(), "the change-over time must be above 0"),
-            Some(ChangeOver::AtSpeed(p)) => wants(p > 0.0 && p < 1.0, "the change-over speed must be below synchronous speed"),
+            Some(ChangeOver::AfterSeconds(s)) => {
+                wants(s > 0.0 && s.is_finite(), "the change-over time must be above 0")
+            }
+            Some(ChangeOver::AtSpeed(p)) => {
+                wants(p > 0.0 && p < 1.0, "the change-over speed must be below synchronous speed")
+            }
             None => {}
         }
         faults
@@ -276,7 +286,8 @@ impl Coupling {
 
 /// Currents, torque and losses all in the same proportion to those on the line.
 fn scaled(motor: &Motor, slip: f64, direct: &Operation, part: f64) -> Seen {
-    let sum = |of: fn(&super::circuit::SequencePart) -> f64| part * (of(&direct.positive) + of(&direct.negative));
+    let sum =
+        |of: fn(&super::circuit::SequencePart) -> f64| part * (of(&direct.positive) + of(&direct.negative));
     Seen {
         admittance: motor.circuit.phase_matrix(slip) * Complex64::from(part),
         amps: direct.amps.map(|a| a * part),

@@ -39,7 +39,8 @@ fn kloss_in_closed_form() {
     let x = circuit.x1_ohm + circuit.rotor_x_ohm;
     let (peak_slip, peak) = (circuit.inner.r_ohm / x, 460.0 * 460.0 / (2.0 * x * SYNC));
     let (slip, j) = (0.03, m.total_inertia_kgm2());
-    let time = j * SYNC / (2.0 * peak) * ((1.0 - slip * slip) / (2.0 * peak_slip) - peak_slip * f64::ln(slip));
+    let time =
+        j * SYNC / (2.0 * peak) * ((1.0 - slip * slip) / (2.0 * peak_slip) - peak_slip * f64::ln(slip));
     let done = run_up(&m, &Starter::Direct, &mut stiff(), &to(SYNC * (1.0 - slip))).unwrap();
     assert_eq!(done.outcome, Outcome::Running);
     near("time", done.seconds, time, 1e-6);
@@ -61,10 +62,19 @@ fn constant_accelerating_torque() {
 
 /// `t = J integral dw / (T - TL)` by Simpson's rule.
 fn quadrature(m: &Motor, volts: &Phases, speed: f64) -> f64 {
-    let slowness = |w: f64| 1.0 / (m.circuit.operation(m.circuit.slip(w), volts).torque_nm - m.resisting_nm(w));
+    let slowness =
+        |w: f64| 1.0 / (m.circuit.operation(m.circuit.slip(w), volts).torque_nm - m.resisting_nm(w));
     let pieces = 20_000;
     let step = speed / f64::from(pieces);
-    let weight = |i: i32| if i == 0 || i == pieces { 1.0 } else if i % 2 == 1 { 4.0 } else { 2.0 };
+    let weight = |i: i32| {
+        if i == 0 || i == pieces {
+            1.0
+        } else if i % 2 == 1 {
+            4.0
+        } else {
+            2.0
+        }
+    };
     let sum: f64 = (0..=pieces).map(|i| weight(i) * slowness(f64::from(i) * step)).sum();
     m.total_inertia_kgm2() * sum * step / 3.0
 }
@@ -78,7 +88,10 @@ fn time_agrees_with_quadrature() {
             let speed = 0.97 * SYNC;
             let done = run_up(&m, &Starter::Direct, &mut StiffBus(volts), &to(speed)).unwrap();
             let time = quadrature(&m, &volts, speed);
-            println!("{shape:?}: {:.6} s, by quadrature {time:.6} s, {} evaluations", done.seconds, done.evaluations);
+            println!(
+                "{shape:?}: {:.6} s, by quadrature {time:.6} s, {} evaluations",
+                done.seconds, done.evaluations
+            );
             // The corner of the table costs Simpson's rule some digits.
             near("time", done.seconds, time, 1e-5);
             assert!(done.energies.imbalance().abs() < 1e-5, "{:?}", done.energies);
@@ -93,7 +106,8 @@ fn trace_agrees_with_a_second_integrator() {
     let done = run_up(&m, &Starter::Direct, &mut StiffBus(uneven()), &RunUpSettings::default()).unwrap();
     assert_eq!(done.outcome, Outcome::Running);
     let rate = |w: f64| {
-        (m.circuit.operation(m.circuit.slip(w), &uneven()).torque_nm - m.resisting_nm(w)) / m.total_inertia_kgm2()
+        (m.circuit.operation(m.circuit.slip(w), &uneven()).torque_nm - m.resisting_nm(w))
+            / m.total_inertia_kgm2()
     };
     let (mut speed, mut time) = (0.0, 0.0);
     for instant in &done.trace {
@@ -165,7 +179,8 @@ fn admittance_currents_and_power_agree() {
                 let scale = power.norm().max(1.0);
                 assert!((0..3).all(|i| (drawn[i] - seen.amps[i]).norm() < 1e-9 * scale), "{stage:?}");
                 assert!((power.re - seen.input_w).abs() < 1e-9 * scale, "{stage:?} {speed}");
-                let out = seen.stator_w + seen.rotor_w + seen.core_w + seen.starter_w + seen.torque_nm * speed;
+                let out =
+                    seen.stator_w + seen.rotor_w + seen.core_w + seen.starter_w + seen.torque_nm * speed;
                 assert!((seen.input_w - out).abs() < 1e-9 * scale, "{stage:?} {speed}");
             }
         }
@@ -216,19 +231,26 @@ fn the_limit_of_a_soft_starter_holds() {
 fn stalls_are_told() {
     // Too little voltage for a constant load: at standstill for ever.
     let m = motor(double_cage(), Shape::Constant, 400.0);
-    let low = run_up(&m, &Starter::Direct, &mut StiffBus(balanced(230.0)), &RunUpSettings::default()).unwrap();
+    let low =
+        run_up(&m, &Starter::Direct, &mut StiffBus(balanced(230.0)), &RunUpSettings::default()).unwrap();
     assert_eq!((low.outcome, low.speed_rad_s, low.seconds), (Outcome::Stalled, 0.0, 0.0));
     // A fan on too low a voltage hangs half way up.
     let fan = motor(double_cage(), Shape::Quadratic, 700.0);
-    let hung = run_up(&fan, &Starter::Direct, &mut StiffBus(balanced(260.0)), &RunUpSettings::default()).unwrap();
-    assert!(hung.outcome == Outcome::Stalled && hung.speed_rad_s > 50.0 && hung.speed_rad_s < 0.95 * SYNC, "{hung:?}");
+    let hung =
+        run_up(&fan, &Starter::Direct, &mut StiffBus(balanced(260.0)), &RunUpSettings::default()).unwrap();
+    assert!(
+        hung.outcome == Outcome::Stalled && hung.speed_rad_s > 50.0 && hung.speed_rad_s < 0.95 * SYNC,
+        "{hung:?}"
+    );
     // A change-over at a speed that star never reaches.
     let change = ChangeOver::AtSpeed(0.95);
-    let star = run_up(&m, &Starter::StarDelta { change, pause_s: 0.0 }, &mut stiff(), &RunUpSettings::default());
+    let star =
+        run_up(&m, &Starter::StarDelta { change, pause_s: 0.0 }, &mut stiff(), &RunUpSettings::default());
     assert_eq!(star.unwrap().outcome, Outcome::Stalled);
     // By time it goes on from where it stands.
     let change = ChangeOver::AfterSeconds(2.0);
-    let timed = run_up(&m, &Starter::StarDelta { change, pause_s: 0.1 }, &mut stiff(), &RunUpSettings::default());
+    let timed =
+        run_up(&m, &Starter::StarDelta { change, pause_s: 0.1 }, &mut stiff(), &RunUpSettings::default());
     let timed = timed.unwrap();
     assert_eq!((timed.outcome, timed.changes.len()), (Outcome::Running, 2));
     near("change", timed.changes[1].0, 2.1, 1e-9);
@@ -284,7 +306,8 @@ fn senseless_settings_are_told() {
     (m.inertia_kgm2, m.load.inertia_kgm2) = (0.0, -1.0);
     m.circuit.xm_ohm = f64::NAN;
     let starter = Starter::Autotransformer { tap: 1.5, change: ChangeOver::AtSpeed(2.0) };
-    let Err(RunUpFault::Settings(faults)) = run_up(&m, &starter, &mut stiff(), &RunUpSettings::default()) else {
+    let Err(RunUpFault::Settings(faults)) = run_up(&m, &starter, &mut stiff(), &RunUpSettings::default())
+    else {
         panic!("not refused")
     };
     assert!(faults.len() >= 5, "{faults:?}");

@@ -61,14 +61,17 @@ fn independent(m: &Motor, volts: &Phases) -> (f64, Phases) {
 #[test]
 fn running_agrees_with_symmetrical_components() {
     let m = motor(double_cage(), Shape::Quadratic, 370.0);
-    for volts in [triangle(460.0, 460.0, 460.0), triangle(470.0, 455.0, 440.0), triangle(430.0, 470.0, 462.0)] {
+    for volts in [triangle(460.0, 460.0, 460.0), triangle(470.0, 455.0, 440.0), triangle(430.0, 470.0, 462.0)]
+    {
         let running = run(&m, &volts).unwrap();
         let (slip, amps) = independent(&m, &volts);
         assert!((running.slip / slip - 1.0).abs() < 1e-8, "{} {slip}", running.slip);
-        for i in 0..3 {
-            assert!((running.operation.amps[i] - amps[i]).norm() < 1e-8 * amps[i].norm());
+        for (there, here) in running.operation.amps.iter().zip(amps) {
+            assert!((there - here).norm() < 1e-8 * here.norm());
         }
-        assert!((running.operation.input_w - running.loss_w() - running.shaft_w).abs() < 1e-6 * running.shaft_w);
+        assert!(
+            (running.operation.input_w - running.loss_w() - running.shaft_w).abs() < 1e-6 * running.shaft_w
+        );
         assert!((running.shaft_nm - m.load.torque_nm(running.speed_rad_s)).abs() < 1e-6 * running.shaft_nm);
         // A voltage common to all phases changes nothing.
         let lifted = run(&m, &volts.map(|v| v + polar(90.0, 0.7))).unwrap();
@@ -91,10 +94,11 @@ fn nema_percent() {
 #[test]
 fn three_and_a_half_percent() {
     let volts = triangle(460.0 * 1.035, 460.0 * 0.9825, 460.0 * 0.9825);
-    let fitted = fit(&Nameplate { frequency_hz: 60.0, hp: Some(100.0), volts: Some(460.0), ..Nameplate::default() }
-        .resolve()
-        .unwrap())
-    .unwrap();
+    let fitted =
+        fit(&Nameplate { frequency_hz: 60.0, hp: Some(100.0), volts: Some(460.0), ..Nameplate::default() }
+            .resolve()
+            .unwrap())
+        .unwrap();
     let running = run(&motor(fitted.circuit, Shape::Constant, 395.0), &volts).unwrap();
     assert!((running.unbalance.nema_percent - 3.5).abs() < 1e-9);
     assert!((running.unbalance.derating.unwrap() - 0.85).abs() < 1e-9);
