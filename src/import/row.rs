@@ -88,6 +88,19 @@ impl<'r> Row<'r> {
         self.intake.diagnostics.error(code, place, message, cure);
     }
 
+    /// Reports a filled cell that can be read but hardly meant so.
+    pub(crate) fn warning(
+        &mut self,
+        code: Code,
+        column: usize,
+        message: impl Into<String>,
+        cure: impl Into<String>,
+    ) {
+        let cell = self.filled(column).next();
+        let place = self.intake.sources.place(self.origin, cell.map(|c| c.header.name), cell.map(|c| c.text));
+        self.intake.diagnostics.warning(code, place, message, cure);
+    }
+
     /// Reports a fault of the row as a whole.
     pub(crate) fn row_error(&mut self, code: Code, message: impl Into<String>, cure: impl Into<String>) {
         let place = self.intake.sources.place(self.origin, None, None);
@@ -196,7 +209,7 @@ impl<'r> Row<'r> {
         let value = match self.parse(cell.text, percent) {
             Ok(value) => value,
             Err(fault) => {
-                let (code, message, cure) = explain(&fault, cell.text, spec, header);
+                let (code, message, cure) = explain(&fault, cell.text, spec, header, self.layout.marks());
                 self.error(code, column, message, cure);
                 return Number::Faulty;
             }

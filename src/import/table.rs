@@ -97,11 +97,20 @@ fn open<'t>(
         if records.cells().is_blank_or_comment() {
             continue;
         }
-        let names = normal_names(records.cells().iter());
+        let typed: Vec<&str> = records.cells().iter().map(trim).collect();
+        let names = normal_names(typed.iter().copied());
         intake.sources.set_columns(file, names.clone());
         let (sources, diagnostics) = (&intake.sources, &mut intake.diagnostics);
-        let layout =
-            lay_out(schema, &names, records.separator, Arc::clone(text), origin, sources, diagnostics)?;
+        let layout = lay_out(
+            schema,
+            &names,
+            &typed,
+            records.separator,
+            Arc::clone(text),
+            origin,
+            sources,
+            diagnostics,
+        )?;
         return Some((layout, records));
     }
 }
