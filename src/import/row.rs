@@ -88,6 +88,26 @@ impl<'r> Row<'r> {
         self.intake.diagnostics.error(code, place, message, cure);
     }
 
+    /// Text of a cell as it stands, without a report.
+    pub(crate) fn peek(&self, column: usize) -> Option<&'r str> {
+        self.filled(column).next().map(|c| c.text)
+    }
+
+    /// Notes a branch that could not be read, by its ends where they are known.
+    pub(crate) fn lose_branch(&mut self, from: usize, to: usize) {
+        for end in [from, to] {
+            match self.peek(end) {
+                Some(name) => _ = self.intake.unread.nodes.insert(Name::from(name)),
+                None => self.intake.unread.branches = true,
+            }
+        }
+    }
+
+    /// Notes a row that could not be read.
+    pub(crate) fn lose(&mut self) {
+        self.intake.lose(self.layout.schema.file);
+    }
+
     /// Reports a filled cell that can be read but hardly meant so.
     pub(crate) fn warning(
         &mut self,

@@ -83,7 +83,12 @@ const GROUPS: [&str; 21] = [
 pub(super) fn read(intake: &mut Intake, file: FileId) -> Vec<TransformerRecord> {
     let mut records = Vec::new();
     let mut unique = Unique::new("transformer");
-    read_table(intake, file, &TRANSFORMERS, |row| records.extend(read_row(row, &mut unique)));
+    read_table(intake, file, &TRANSFORMERS, |row| match read_row(row, &mut unique) {
+        Some(record) => records.push(record),
+        None => {
+            row.lose_branch(FROM, TO);
+        }
+    });
     records
 }
 
