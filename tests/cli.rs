@@ -1,5 +1,8 @@
 //! The program as it is run: exit status, results in every form, faults told, nothing half written.
 
+#[path = "cli/told.rs"]
+mod told;
+
 use std::fs;
 use std::path::{Path, PathBuf};
 use std::process::{Command, Output, Stdio};

@@ -23,7 +23,7 @@ pub use conductor::{Conductor, Conductors, Connection};
 pub use draft::{
     Across, CapacitorRecord, Construction, Draft, FaultLevel, LineRecord, LoadRecord, LoadSite, Name,
     NodeRecord, RegulatorControl, RegulatorRecord, SupplyRecord, SwitchRecord, SwitchState,
-    TransformerRecord,
+    TransformerRecord, Unread,
 };
 pub use load::{Capacitor, Load, LoadModel, LoadPlace};
 pub use model::{

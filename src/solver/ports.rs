@@ -50,11 +50,7 @@ impl Ports {
     ///
     /// # Errors
     /// A node at a ring in which currents are not determined.
-    pub fn new(
-        workspace: &mut Workspace,
-        meshed: &Network,
-        machines: &[NodeId],
-    ) -> Result<Ports, NodeId> {
+    pub fn new(workspace: &mut Workspace, meshed: &Network, machines: &[NodeId]) -> Result<Ports, NodeId> {
         let ports = ports(workspace, meshed, machines);
         let count = ports.len();
         let mut influence = DMatrix::zeros(count, count);
@@ -187,9 +183,8 @@ impl Port {
 
     /// Voltage at the port: across an opening, else to earth.
     fn volts(&self, volts: &[Slots]) -> Complex64 {
-        let at = |position: usize, slot: usize| {
-            Complex64::new(volts[position].re[slot], volts[position].im[slot])
-        };
+        let at =
+            |position: usize, slot: usize| Complex64::new(volts[position].re[slot], volts[position].im[slot]);
         match *self {
             Port::Opening { tail, far, slot } => at(tail, slot) - at(far, slot),
             Port::Stay { position, slot, .. } | Port::Machine { position, slot, .. } => at(position, slot),

@@ -116,6 +116,8 @@ const CASES: &[(&str, Files)] = &[
     // Names.
     ("load at a missing node", &[loads!("house,AA,,an,5,1", "shop,nowhere,,an,5,1")]),
     ("load along a missing line", &[loads!("house,,L2,an,5,1")]),
+    ("load at a line", &[loads!("house,L1,,an,5,1")]),
+    ("node row of a line", &[("nodes.csv", "node,x,y\nL1,1,2\n")]),
     ("capacitor at a missing node", &[("capacitors.csv", "capacitor,node,phases,kvar\nC1,B,abc,10\n")]),
     ("node row of a missing node", &[("nodes.csv", "node,x,y\nB,1,2\n")]),
     ("unknown construction", &[lines!("L1,S,A,abcn,100,cabel,", "L2,A,B,abcn,100,overhead,")]),
@@ -173,6 +175,24 @@ const CASES: &[(&str, Files)] = &[
     (
         "transformer for another voltage",
         &[transformers!("T1,A,B,,100,11,0.4,Dyn11,1,4,,"), loads!("house,B,,an,5,1")],
+    ),
+    (
+        "transformer for a higher voltage class",
+        &[
+            ("source.csv", "node,kv\nS,6.6\n"),
+            lines!("L1,S,A,abc,100,three,"),
+            transformers!("T1,A,B,,100,11,0.4,Dyn11,1,4,,"),
+            loads!("house,B,,an,5,1"),
+        ],
+    ),
+    (
+        "transformer by its phase voltage",
+        &[
+            ("source.csv", "node,kv\nS,11\n"),
+            lines!("L1,S,A,abc,100,three,"),
+            transformers!("T1,A,B,,100,6.35,0.4,Dyn11,1,4,,"),
+            loads!("house,B,,an,5,1"),
+        ],
     ),
     (
         "transformer the wrong way round",

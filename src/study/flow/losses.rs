@@ -40,11 +40,7 @@ fn power(volts: &PhaseVector, amps: &PhaseVector) -> Complex64 {
 }
 
 /// Loss and loading of every branch, then of every electrode and of every reference to earth.
-pub(super) fn elements(
-    network: &Network,
-    solution: &Solution,
-    electrodes: &[Electrode],
-) -> Vec<ElementLoss> {
+pub(super) fn elements(network: &Network, solution: &Solution, electrodes: &[Electrode]) -> Vec<ElementLoss> {
     let mut rows = Vec::with_capacity(network.branches.len());
     for (b, branch) in network.branches.iter().enumerate() {
         let (from, to) = (&solution.volts[branch.from.index()], &solution.volts[branch.to.index()]);
