@@ -5,8 +5,12 @@ use fourwire::math::{Complex64, polar};
 
 #[path = "machine/nameplates.rs"]
 mod nameplates;
+#[path = "machine/robust.rs"]
+mod robust;
 #[path = "machine/runups.rs"]
 mod runups;
+#[path = "machine/several.rs"]
+mod several;
 #[path = "machine/unbalanced.rs"]
 mod unbalanced;
 

@@ -238,8 +238,9 @@ impl Circuit {
     /// One sequence at the slip that it sees.
     fn part(&self, slip: f64, volts: Complex64) -> SequencePart {
         let rotor = self.rotor_admittance(slip);
-        let gap_volts = volts / (ONE + self.stator() * self.gap_admittance(slip));
-        let amps = gap_volts * self.gap_admittance(slip);
+        let gap = Complex64::new(self.core_siemens, -1.0 / self.xm_ohm) + rotor;
+        let gap_volts = volts / (ONE + self.stator() * gap);
+        let amps = gap_volts * gap;
         let square = gap_volts.norm_sqr();
         let gap_w = 3.0 * square * rotor.re;
         SequencePart {

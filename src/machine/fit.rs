@@ -9,11 +9,13 @@ use nalgebra::{SMatrix, SVector};
 use serde::Serialize;
 
 use super::circuit::{Cage, Circuit, MechanicalLoss};
+use super::full_load::{balanced, check, shaft_w};
 use super::nameplate::{Origin, Rated, Ratings};
-use crate::math::{Complex64, polar};
 use crate::units::SQRT_3;
 
 const SIZE: usize = 8;
+/// Slips at which torque is looked at for its maximum.
+const SLIPS: usize = 48;
 type Vector = SVector<f64, SIZE>;
 
 /// Part of the rotor's leakage that both cages share, as a part of the stator's leakage.
@@ -166,64 +168,10 @@ enum Trust {
     Plate,
 }
 
-/// What a circuit does against the ratings at rated voltage; `None` if it cannot carry rated power.
-pub fn check(circuit: &Circuit, ratings: &Ratings) -> Option<Vec<FitItem>> {
-    let volts = balanced(ratings.volts);
-    let slip = full_load_slip(circuit, ratings.volts, ratings.shaft_w.value)?;
-    let full = circuit.operation(slip, &volts);
-    let locked = circuit.operation(1.0, &volts);
-    let torque = ratings.torque_nm();
-    let item = |quantity, rated: &Rated, obtained| FitItem {
-        quantity,
-        wanted: rated.value,
-        obtained,
-        firm: !rated.is_filled(),
-    };
-    Some(vec![
-        item("slip", &ratings.slip, slip),
-        item("efficiency", &ratings.efficiency, ratings.shaft_w.value / full.input_w),
-        item("pf", &ratings.pf, full.pf()?),
-        item("amps", &ratings.amps, full.amps[0].norm()),
-        item("locked_rotor_amps", &ratings.locked_rotor_amps, locked.amps[0].norm()),
-        item("locked_rotor_torque", &ratings.locked_rotor_torque, locked.torque_nm / torque),
-        item("locked_rotor_pf", &ratings.locked_rotor_pf, locked.pf()?),
-        item(
-            "breakdown_torque",
-            &ratings.breakdown_torque,
-            circuit.breakdown(ratings.volts).torque_nm / torque,
-        ),
-    ])
-}
-
-/// Phase voltages of a balanced line-to-line voltage, a at zero.
-pub fn balanced(volts: f64) -> [Complex64; 3] {
-    let third = 2.0 * std::f64::consts::PI / 3.0;
-    [0.0, -third, third].map(|angle| polar(volts / SQRT_3, angle))
-}
-
-/// Shaft power at a slip under rated balanced voltage, watts.
-fn shaft_w(circuit: &Circuit, slip: f64, volts: f64) -> f64 {
-    let speed = circuit.speed_rad_s(slip);
-    (circuit.balanced_torque_nm(slip, volts) - circuit.mechanical.torque_nm(speed)) * speed
-}
-
-/// The slip nearest to synchronous speed at which the shaft gives rated power.
-pub(super) fn full_load_slip(circuit: &Circuit, volts: f64, wanted_w: f64) -> Option<f64> {
-    let enough = |slip: f64| shaft_w(circuit, slip, volts) >= wanted_w;
-    let mut high = (1..=400).map(|i| f64::from(i) * 0.001).find(|&s| enough(s))?;
-    let mut low = high - 0.001;
-    for _ in 0..60 {
-        let middle = 0.5 * (low + high);
-        if enough(middle) { high = middle } else { low = middle }
-    }
-    Some(0.5 * (low + high))
-}
-
 /// A smooth stand-in for the greatest torque, newton metres: a high power mean over slips. The true maximum
 /// jumps between the humps of two cages, where a descent by slopes would stick.
-fn smooth_peak(circuit: &Circuit, volts: f64) -> f64 {
-    let torques: [f64; 64] =
-        std::array::from_fn(|i| circuit.balanced_torque_nm(10f64.powf(-2.5 * i as f64 / 63.0), volts));
+fn smooth_peak(circuit: &Circuit, volts: f64, slips: &[f64; SLIPS]) -> f64 {
+    let torques = slips.map(|slip| circuit.balanced_torque_nm(slip, volts));
     let most = torques.iter().copied().fold(f64::MIN_POSITIVE, f64::max);
     let mean: f64 = torques.iter().map(|t| (t / most).max(0.0).powi(40)).sum();
     most * mean.powf(1.0 / 40.0)
@@ -235,6 +183,8 @@ struct Problem<'a> {
     base_ohm: f64,
     /// One over the tolerance of each rating.
     weights: [f64; SIZE],
+    /// Slips of [`smooth_peak`], from 0.3 % to standstill.
+    slips: [f64; SLIPS],
 }
 
 impl<'a> Problem<'a> {
@@ -258,7 +208,9 @@ impl<'a> Problem<'a> {
             weight(&ratings.locked_rotor_pf, 0.03, 0.03, 0.20),
             weight(&ratings.breakdown_torque, 0.005, 0.01, table),
         ];
-        Problem { ratings, base_ohm: ratings.volts / SQRT_3 / ratings.amps.value, weights }
+        let base_ohm = ratings.volts / SQRT_3 / ratings.amps.value;
+        let slips = std::array::from_fn(|i| 10f64.powf(-2.5 * i as f64 / (SLIPS - 1) as f64));
+        Problem { ratings, base_ohm, weights, slips }
     }
 
     /// The best unknowns from all starts, and the steps taken; none where nothing finite was found.
@@ -315,7 +267,8 @@ impl<'a> Problem<'a> {
         // Logarithm that stays defined where a trial goes astray.
         let log = |a: f64, b: f64| (a / b).max(1e-6).ln();
         let efficiency = (shaft / full.input_w).clamp(-1.0, 0.9999);
-        let peak = log(smooth_peak(&circuit, r.volts) / torque, r.breakdown_torque.value) - shift;
+        let peak =
+            log(smooth_peak(&circuit, r.volts, &self.slips) / torque, r.breakdown_torque.value) - shift;
         // A table's breakdown torque is the least that a motor must have.
         let excess = r.breakdown_torque.is_filled() && peak > 0.0;
         let peak = if excess { peak * EXCESS_WEIGHT / self.weights[SIZE - 1] } else { peak };
@@ -383,7 +336,9 @@ impl<'a> Problem<'a> {
     /// Logarithm of the smooth over the true maximum of torque.
     fn shift(&self, unknowns: &Vector) -> f64 {
         let circuit = self.circuit_of(unknowns);
-        (smooth_peak(&circuit, self.ratings.volts) / circuit.breakdown(self.ratings.volts).torque_nm).ln()
+        (smooth_peak(&circuit, self.ratings.volts, &self.slips)
+            / circuit.breakdown(self.ratings.volts).torque_nm)
+            .ln()
     }
 
     /// Damped Gauss-Newton (Levenberg-Marquardt) held within bounds: cost, unknowns, steps.
