@@ -137,3 +137,19 @@ fn a_weak_star_point_is_found() {
     let page = text(&run(&["flow", &at(&folder)]).stdout);
     assert!(!page.contains("weak star point"), "{page}");
 }
+
+#[test]
+fn the_search_for_the_limit_tells_how_far_it_is() {
+    use fourwire::study::loadability::{loadability, loadability_with};
+    let folder = small(10.0, HEADER);
+    let reading = fourwire::import::read_folder(folder.path());
+    let network = fourwire::network::build(&reading.draft).network.expect("a network");
+    let settings = fourwire::solver::Settings::default();
+    let mut told = Vec::new();
+    let found = loadability_with(&network, &settings, |at| told.push((at.solved, at.expected)));
+    assert_eq!(found, loadability(&network, &settings));
+    assert!(
+        told.len() > 5 && told.iter().enumerate().all(|(i, t)| t.0 as usize == i && t.1 > t.0),
+        "{told:?}"
+    );
+}
