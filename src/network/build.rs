@@ -6,6 +6,7 @@ use super::draft::Draft;
 use super::earth::{Given, SideEarth, Standing, sides};
 use super::graph::{Graph, RawFeed, RawTie, Tree, grow, place, report_isolated_switches, report_unfed};
 use super::model::{BranchId, Feed, Network, Node, NodeId, SOLID_EARTH_OHM, Stay, StayPlace, Tie};
+use super::plausible;
 use super::supply::{Supply, circulant, held_volts, sequence_impedance};
 use super::validate;
 use crate::diagnostic::{Code, Diagnostics, Origin, nearest};
@@ -27,6 +28,10 @@ pub struct Built {
 pub fn build(draft: &Draft) -> Built {
     let mut diagnostics = Diagnostics::new();
     let network = Builder { draft, diagnostics: &mut diagnostics }.run();
+    if let Some(network) = &network {
+        plausible::sizes(draft, network, &mut diagnostics);
+        plausible::star_points(draft, network, &mut diagnostics);
+    }
     let network = if diagnostics.has_errors() { None } else { network };
     Built { network, diagnostics }
 }

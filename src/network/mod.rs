@@ -10,9 +10,11 @@ mod earth;
 mod graph;
 mod load;
 mod model;
+mod plausible;
 mod regulator;
 mod ring;
 mod shunts;
+mod star_point;
 mod study;
 mod supply;
 mod transformer;
@@ -31,6 +33,7 @@ pub use model::{
     Stay, StayPlace, Tie,
 };
 pub use regulator::{Regulator, RegulatorUnit, TapMode};
+pub use star_point::{WeakStarPoint, weak_star_points};
 pub use study::Study;
 pub use supply::Supply;
 pub use transformer::{BOND_OHM, NeutralPoint, Transformer, VectorGroup, Winding};
