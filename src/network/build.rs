@@ -206,6 +206,7 @@ impl Builder<'_> {
         });
         let stays = stays.collect();
         let (loads, capacitors) = self.shunts(joined, &new_node, &parts);
+        let motors = self.motors(joined, &new_node);
         let study = self.draft.study.clone();
         let Branches { branches, constructions, .. } = parts;
         Some(Network {
@@ -216,6 +217,7 @@ impl Builder<'_> {
             constructions,
             loads,
             capacitors,
+            motors,
             feeds,
             order,
             ties: ties?,

@@ -10,6 +10,7 @@ mod earth;
 mod graph;
 mod load;
 mod model;
+mod motor;
 mod plausible;
 mod regulator;
 mod ring;
@@ -22,7 +23,7 @@ mod validate;
 
 pub use build::{Built, build};
 pub use conductor::{Conductor, Conductors, Connection};
-pub use draft::{
+pub use draft::{MotorRecord, 
     Across, CapacitorRecord, Construction, Draft, FaultLevel, LineRecord, LoadRecord, LoadSite, Name,
     NodeRecord, RegulatorControl, RegulatorRecord, SupplyRecord, SwitchRecord, SwitchState,
     TransformerRecord, Unread,
@@ -32,6 +33,7 @@ pub use model::{
     Branch, BranchId, BranchKind, ConstructionId, End, Feed, Line, Network, Node, NodeId, SOLID_EARTH_OHM,
     Stay, StayPlace, Tie,
 };
+pub use motor::{Motor, MotorState};
 pub use regulator::{Regulator, RegulatorUnit, TapMode};
 pub use star_point::{WeakStarPoint, weak_star_points};
 pub use study::Study;

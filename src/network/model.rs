@@ -8,6 +8,7 @@
 use super::conductor::{Conductor, Conductors, Connection};
 use super::draft::{Construction, Name};
 use super::load::{Capacitor, Load, LoadPlace};
+use super::motor::Motor;
 use super::regulator::Regulator;
 use super::study::Study;
 use super::supply::Supply;
@@ -225,6 +226,8 @@ pub struct Network {
     pub loads: Vec<Load>,
     /// Capacitors in service.
     pub capacitors: Vec<Capacitor>,
+    /// Motors.
+    pub motors: Vec<Motor>,
     /// How each node is fed; `None` only for the supply node.
     pub feeds: Vec<Option<Feed>>,
     /// Nodes from the supply outwards, breadth first: a parent stands before its children.
