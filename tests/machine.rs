@@ -162,3 +162,17 @@ fn double_cage_by_hand() {
         assert!((whole.operation(slip, &balanced(460.0)).amps[0] - amps).norm() < 1e-9 * amps.norm());
     }
 }
+
+/// A circuit given directly: Chapman's motor gives 10,478 W (Example 7-3 without rounding) at slip 0.022 and 18.89 A.
+#[test]
+fn a_circuit_given_directly() {
+    let load = DrivenLoad { shape: Shape::Quadratic, torque_nm: 50.0, rated_rad_s: 184.0, inertia_kgm2: 0.2 };
+    let motor = Motor::of_circuit(chapman(), 460.0, 10_478.0, 0.1, load.clone()).unwrap();
+    near("slip", chapman().slip(motor.rated_rad_s), 0.022, 1e-4);
+    near("current", motor.amps, 18.892, 1e-4);
+    near("torque", motor.torque_nm * motor.rated_rad_s, 10_478.0, 1e-9);
+    // More than its breakdown torque, or a broken circuit: none.
+    assert!(Motor::of_circuit(chapman(), 460.0, 60e3, 0.1, load.clone()).is_none());
+    let broken = Circuit { xm_ohm: -1.0, ..chapman() };
+    assert!(Motor::of_circuit(broken, 460.0, 10_478.0, 0.1, load).is_none());
+}
