@@ -1,22 +1,4 @@
-//! Equivalent circuit of a three-phase cage motor, one phase of a star, all ohms seen from the stator.
-//!
-//! ```text
-//!  o--R1--jX1--+-------+------jXr--+------+
-//!              |       |           |      |
-//!              Gc     jXm        Ri/s   Ro/s
-//!              |       |          jXi    jXo
-//!  o-----------+-------+-----------+------+
-//! ```
-//!
-//! Heavy currents saturate the leakage paths: `X1` and `Xr` fall from their running values to a part `k` of
-//! them at standstill, `1 - (1 - k) g(s)` with `g = s^2 (1 + a^2) / (s^2 + a^2)` and `a` 0.3, so that the circuit
-//! stays linear at a given slip (common practice is to let leakage change with slip; the curve is our own). It
-//! belongs to full voltage: on less, a motor draws a little less and turns a little less strongly than computed.
-//!
-//! The positive sequence sees slip `s`, the negative sequence `2 - s`; the star point floats (or the windings
-//! stand in delta), so no zero-sequence current flows. One cage: leave the outer cage out.
-//! Formulae: any text on induction machines, e.g. Chapman, Electric Machinery Fundamentals, chapter on
-//! induction motors; double cage as two rotor branches in parallel.
+//! Equivalent circuit of a three-phase cage motor, with positive and negative sequence.
 
 use crate::math::{Complex64, ONE, SequenceVoltages, ZERO, sequence_components};
 use crate::units::SQRT_3;
@@ -52,7 +34,25 @@ impl MechanicalLoss {
     }
 }
 
-/// Equivalent circuit of the whole motor; see the [module](self) for the drawing.
+/// Equivalent circuit of a three-phase cage motor, one phase of a star, all ohms seen from the stator.
+///
+/// ```text
+///  o--R1--jX1--+-------+------jXr--+------+
+///              |       |           |      |
+///              Gc     jXm        Ri/s   Ro/s
+///              |       |          jXi    jXo
+///  o-----------+-------+-----------+------+
+/// ```
+///
+/// Heavy currents saturate the leakage paths: `X1` and `Xr` fall from their running values to a part `k` of
+/// them at standstill, `1 - (1 - k) g(s)` with `g = s^2 (1 + a^2) / (s^2 + a^2)` and `a` 0.3, so that the circuit
+/// stays linear at a given slip (common practice is to let leakage change with slip; the curve is our own). It
+/// belongs to full voltage: on less, a motor draws a little less and turns a little less strongly than computed.
+///
+/// The positive sequence sees slip `s`, the negative sequence `2 - s`; the star point floats (or the windings
+/// stand in delta), so no zero-sequence current flows. One cage: leave the outer cage out.
+/// Formulae: any text on induction machines, e.g. Chapman, Electric Machinery Fundamentals, chapter on
+/// induction motors; double cage as two rotor branches in parallel.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Circuit {
     /// Stator resistance `R1`, ohms.
