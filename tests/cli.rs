@@ -258,6 +258,7 @@ fn results_can_be_written_again_and_leave_nothing_else() {
         "elements.csv",
         "findings.csv",
         "loads.csv",
+        "motors_running.csv",
         "nodes.csv",
         "nodes_summary.csv",
         "regulators.csv",

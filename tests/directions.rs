@@ -6,7 +6,8 @@ use std::path::{Path, PathBuf};
 
 /// What each module may use, besides itself.
 fn allowed() -> HashMap<&'static str, &'static [&'static str]> {
-    let below_import: &[&str] = &["math", "units", "diagnostic", "catalog", "impedance", "machine", "network"];
+    let below_import: &[&str] =
+        &["math", "units", "diagnostic", "catalog", "impedance", "machine", "network"];
     HashMap::from([
         ("math", &["units"] as &[&str]),
         ("units", &[]),
@@ -18,7 +19,10 @@ fn allowed() -> HashMap<&'static str, &'static [&'static str]> {
         ("import", below_import),
         ("solver", &["math", "units", "machine", "network"]),
         ("study", &["math", "units", "diagnostic", "catalog", "impedance", "machine", "network", "solver"]),
-        ("output", &["math", "units", "diagnostic", "catalog", "impedance", "machine", "network", "solver", "study"]),
+        (
+            "output",
+            &["math", "units", "diagnostic", "catalog", "impedance", "machine", "network", "solver", "study"],
+        ),
         (
             "cli",
             &[

@@ -8,8 +8,8 @@ use sha2::{Digest, Sha256};
 use super::constructions::DescribedConstruction;
 use super::text::decode;
 use super::{
-    Intake, Reading, capacitors, constructions, lines, loads, matrices, nodes, place_of_file, regulators,
-    source, study, switches, transformers, unsupported,
+    Intake, Reading, capacitors, constructions, lines, loads, matrices, motors, nodes, place_of_file,
+    regulators, source, study, switches, transformers, unsupported,
 };
 use crate::catalog::Catalog;
 use crate::diagnostic::{Code, Diagnostics, FileId, SourceFile, nearest};
@@ -261,7 +261,7 @@ fn fill(
         }
     }
     let [study, source, nodes, conductors, spacings, constructions, matrices, rest @ ..] = ids;
-    let [lines, switches, transformers, regulators, loads, capacitors, motors, profiles] = rest;
+    let [lines, switches, transformers, regulators, loads, capacitors, motor_file, profiles] = rest;
     let mut draft = Draft {
         study: with(intake, study, study::read),
         supplies: with(intake, source, source::read),
@@ -278,7 +278,8 @@ fn fill(
     draft.regulators = with(intake, regulators, regulators::read);
     draft.loads = with(intake, loads, loads::read);
     draft.capacitors = with(intake, capacitors, capacitors::read);
-    with(intake, motors, unsupported::motors);
+    let frequency_hz = draft.study.frequency_hz;
+    draft.motors = motor_file.map(|id| motors::read(intake, id, frequency_hz)).unwrap_or_default();
     with(intake, profiles, unsupported::profiles);
     draft.sources = std::mem::take(&mut intake.sources);
     draft.unread = std::mem::take(&mut intake.unread);

@@ -80,7 +80,8 @@ static MOTORS: Schema = Schema {
         Column::number("locked_rotor_torque_percent", PERCENT, "%", "the locked-rotor torque")
             .range(Range::Positive),
         Column::number("pull_up_torque_percent", PERCENT, "%", "the pull-up torque").range(Range::Positive),
-        Column::number("breakdown_torque_percent", PERCENT, "%", "the breakdown torque").range(Range::Positive),
+        Column::number("breakdown_torque_percent", PERCENT, "%", "the breakdown torque")
+            .range(Range::Positive),
         Column::text("design", "the design letter"),
         Column::family(
             &[
@@ -125,7 +126,8 @@ static MOTORS: Schema = Schema {
         Column::number("starter_kvar", KILO, "kvar", "the starting capacitors").range(Range::Positive),
         Column::number("starter_efficiency_percent", PERCENT, "%", "the efficiency of the drive")
             .range(Range::Within(1.0, 100.0)),
-        Column::number("starter_pf", 1.0, "", "the power factor of the drive").range(Range::Within(0.01, 1.0)),
+        Column::number("starter_pf", 1.0, "", "the power factor of the drive")
+            .range(Range::Within(0.01, 1.0)),
     ],
 };
 
@@ -285,6 +287,7 @@ fn circuit(row: &mut Row<'_>, ratings: &Ratings) -> Option<Circuit> {
             xm_ohm: xm?,
             core_siemens: 0.0,
             rotor_x_ohm: 0.0,
+            standstill_leakage: 1.0,
             inner: Cage { r_ohm: r2?, x_ohm: x2? },
             outer: None,
             mechanical: MechanicalLoss { watts: 0.0, at_rad_s: ratings.rated_rad_s() },
@@ -302,8 +305,9 @@ fn circuit(row: &mut Row<'_>, ratings: &Ratings) -> Option<Circuit> {
 /// Column of `motors.csv` that a name of the machine's faults and fits means.
 fn column_of(name: &str) -> usize {
     let plain = name.trim_end_matches("_percent");
-    let found = MOTORS.columns.iter().position(|c| {
-        c.headers().any(|h| h.name == name || h.name.trim_end_matches("_percent") == plain)
-    });
+    let found = MOTORS
+        .columns
+        .iter()
+        .position(|c| c.headers().any(|h| h.name == name || h.name.trim_end_matches("_percent") == plain));
     found.unwrap_or(MOTOR)
 }

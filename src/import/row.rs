@@ -104,6 +104,11 @@ impl<'r> Row<'r> {
         }
     }
 
+    /// Errors told so far, of this row and all before it.
+    pub(crate) fn faults(&self) -> usize {
+        self.intake.diagnostics.counts().0
+    }
+
     /// Notes a row that could not be read.
     pub(crate) fn lose(&mut self) {
         self.intake.lose(self.layout.schema.file);

@@ -64,7 +64,12 @@ pub(super) fn read(row: &mut Row<'_>, full_load_amps: f64) -> Option<Starter> {
     for column in TAP..=DRIVE_PF {
         if row.is_filled(column) && !fits.contains(&column) {
             let message = format!("this setting has no effect: the starter is `{word}`");
-            row.error(Code::Conflict, column, message, "clear this cell, or choose the starter it belongs to");
+            row.error(
+                Code::Conflict,
+                column,
+                message,
+                "clear this cell, or choose the starter it belongs to",
+            );
             return None;
         }
     }

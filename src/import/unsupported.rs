@@ -4,16 +4,6 @@ use super::Intake;
 use super::table::has_rows;
 use crate::diagnostic::{Code, FileId};
 
-/// `motors.csv`: motors left out would give wrong currents, so rows in it are an error.
-pub(super) fn motors(intake: &mut Intake, file: FileId) {
-    if is_used(intake, file) {
-        let place = intake.whole_file(file);
-        let message = "this version does not solve motors, and leaving them out would give wrong results";
-        let cure = "take the file out of the folder; enter running motors as loads in loads.csv";
-        intake.diagnostics.error(Code::NotSupported, place, message, cure);
-    }
-}
-
 /// `profiles.csv`: loads are taken at their full value.
 pub(super) fn profiles(intake: &mut Intake, file: FileId) {
     if is_used(intake, file) {

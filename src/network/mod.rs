@@ -23,9 +23,9 @@ mod validate;
 
 pub use build::{Built, build};
 pub use conductor::{Conductor, Conductors, Connection};
-pub use draft::{MotorRecord, 
-    Across, CapacitorRecord, Construction, Draft, FaultLevel, LineRecord, LoadRecord, LoadSite, Name,
-    NodeRecord, RegulatorControl, RegulatorRecord, SupplyRecord, SwitchRecord, SwitchState,
+pub use draft::{
+    Across, CapacitorRecord, Construction, Draft, FaultLevel, LineRecord, LoadRecord, LoadSite, MotorRecord,
+    Name, NodeRecord, RegulatorControl, RegulatorRecord, SupplyRecord, SwitchRecord, SwitchState,
     TransformerRecord, Unread,
 };
 pub use load::{Capacitor, Load, LoadModel, LoadPlace};

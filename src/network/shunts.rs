@@ -6,8 +6,8 @@ use super::conductor::{Conductors, Connection};
 use super::draft::{LoadSite, SwitchState};
 use super::graph::place;
 use super::load::{Capacitor, Load, LoadPlace};
-use super::motor::Motor;
 use super::model::{NodeId, nominal_phase_volts};
+use super::motor::Motor;
 use crate::diagnostic::{Code, Origin, nearest};
 
 impl Builder<'_> {
@@ -43,7 +43,11 @@ impl Builder<'_> {
             });
         }
         let capacitors = self.capacitors(joined, new_node);
-        if loads.is_empty() && self.draft.motors.is_empty() && !self.diagnostics.has_errors() && !self.draft.unread.may_draw() {
+        if loads.is_empty()
+            && self.draft.motors.is_empty()
+            && !self.diagnostics.has_errors()
+            && !self.draft.unread.may_draw()
+        {
             self.diagnostics.warning(
                 Code::NoLoad,
                 None,

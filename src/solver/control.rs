@@ -5,9 +5,9 @@
 //! drop at the line current), and steps until it lies within half the band of the set point.
 //! Banks nearer the source settle first, as their shorter delay makes them do.
 
+use super::motors::solve_running;
 use super::settings::Settings;
 use super::solution::{Solution, Status};
-use super::solve;
 use crate::math::{Complex64, ZERO};
 use crate::network::{Across, BranchId, BranchKind, Conductor, End, Network, RegulatorUnit, TapMode};
 
@@ -46,9 +46,9 @@ pub struct RegulatedUnit {
 /// ended. Where a solve does not converge the loop stops there.
 pub fn solve_regulated(network: &mut Network, settings: &Settings) -> (Solution, Vec<RegulatedUnit>) {
     let mut units = automatic_units(network);
-    let mut solution = solve(network, settings);
+    let mut solution = solve_running(network, settings);
     while solution.status == Status::Converged && step(network, &solution, &mut units) {
-        solution = solve(network, settings);
+        solution = solve_running(network, settings);
     }
     let ended = units
         .iter()

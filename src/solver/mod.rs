@@ -11,6 +11,7 @@ mod control;
 mod follow;
 mod injection;
 mod lanes;
+mod motors;
 mod ports;
 mod recover;
 mod residual;
@@ -22,23 +23,35 @@ mod windings;
 mod workspace;
 
 pub use control::{RegulatedUnit, TapState, solve_regulated};
+pub use motors::solve_running;
 pub use residual::{Residual, load_current, residual};
 pub use settings::Settings;
 pub use solution::{Path, Solution, Status};
 pub use sweep::Iterations;
 pub use workspace::Workspace;
 
-use crate::network::{Network, NodeId};
+use crate::math::Complex64;
+use crate::network::{Motor, MotorState, Network, NodeId};
 
 /// Solves the network from a flat start.
 ///
 /// Never fails: look at [`Solution::status`] before using a number of it.
 pub fn solve(network: &Network, settings: &Settings) -> Solution {
-    if !network.ties.is_empty() {
-        let opened = network.opened();
-        return solved(network, Workspace::meshed(network, &opened), settings);
+    // A motor's admittance differs for the two rotations, so that currents do not go up it as they
+    // come down: it is no part of the elimination.
+    let running = || network.motors.iter().filter(|m| m.state == MotorState::Running);
+    let motors: Vec<NodeId> = running().map(|m| m.node).collect();
+    if network.ties.is_empty() && motors.is_empty() {
+        return solved(network, Workspace::new(network), settings);
     }
-    solved(network, Workspace::new(network), settings)
+    let opened = network.opened();
+    let workspace = Workspace::with_machines(network, &opened, &motors).map(|mut workspace| {
+        let admittance =
+            |m: &Motor| m.machine.circuit.phase_matrix(m.slip) * Complex64::from(f64::from(m.count));
+        workspace.set_machines(running().map(admittance));
+        workspace
+    });
+    solved(network, workspace, settings)
 }
 
 fn solved(network: &Network, workspace: Result<Workspace, NodeId>, settings: &Settings) -> Solution {

@@ -150,14 +150,6 @@ impl Ports {
             self.amps -= &self.mismatch;
         }
     }
-
-    /// Position of each machine.
-    pub fn machine_positions(&self) -> impl Iterator<Item = usize> + '_ {
-        self.ports.iter().filter_map(|port| match *port {
-            Port::Machine { position, slot: 0, .. } => Some(position),
-            _ => None,
-        })
-    }
 }
 
 /// Voltages of the three phases to earth.

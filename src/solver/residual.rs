@@ -3,7 +3,9 @@
 
 use super::coils;
 use crate::math::{Complex64, PhaseVector, ZERO};
-use crate::network::{Branch, BranchKind, Conductor, Connection, LoadModel, MotorState, Network, Node, NodeId};
+use crate::network::{
+    Branch, BranchKind, Conductor, Connection, LoadModel, MotorState, Network, Node, NodeId,
+};
 use crate::solver::Solution;
 
 /// Largest mismatches of a solution.

@@ -70,6 +70,7 @@ pub fn flow_csv(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
             ]
         },
     )?;
+    motors(report, folder)?;
     electrodes(report, folder)?;
     findings(report, folder)?;
     totals(report, folder)
@@ -132,6 +133,51 @@ fn elements(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
     })
 }
 
+fn motors(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
+    let columns = [
+        "motor",
+        "node",
+        "count",
+        "slip_percent",
+        "rpm",
+        "amps_a",
+        "amps_b",
+        "amps_c",
+        "kw",
+        "kvar",
+        "shaft_kw",
+        "loss_kw",
+        "negative_rotor_loss_percent",
+        "voltage_unbalance_percent",
+        "current_unbalance_percent",
+        "derating",
+        "loading_percent",
+        "derated_load_percent",
+    ];
+    list(folder, "motors_running.csv", &columns, &report.motors, |r| {
+        vec![
+            Field::Text(&r.motor),
+            Field::Text(&r.node),
+            Field::Whole(i64::from(r.count)),
+            Field::Number(r.slip_percent),
+            Field::Number(r.rpm),
+            Field::Number(r.amps_a),
+            Field::Number(r.amps_b),
+            Field::Number(r.amps_c),
+            Field::Number(r.kw),
+            Field::Number(r.kvar),
+            Field::Number(r.shaft_kw),
+            Field::Number(r.loss_kw),
+            Field::Number(r.negative_rotor_loss_percent),
+            Field::Number(r.voltage_unbalance_percent),
+            Field::Number(r.current_unbalance_percent),
+            r.derating.into(),
+            Field::Number(r.loading_percent),
+            r.derated_load_percent.into(),
+        ]
+    })
+}
+
 fn electrodes(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
     let columns = ["node", "transformer", "r_ohm", "x_ohm", "amps", "volts"];
     list(folder, "electrodes.csv", &columns, &report.electrodes, |r| {
@@ -180,6 +226,9 @@ fn totals(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
         ("neutral_loss_kw", Field::Number(t.neutral_loss_kw)),
         ("transformer_loss_kw", Field::Number(t.transformer_loss_kw)),
         ("earth_loss_kw", Field::Number(t.earth_loss_kw)),
+        ("motor_kw", Field::Number(t.motor_kw)),
+        ("motor_kvar", Field::Number(t.motor_kvar)),
+        ("motor_loss_kw", Field::Number(t.motor_loss_kw)),
         ("capacitor_kvar", Field::Number(t.capacitor_kvar)),
     ];
     folder.write("totals.csv", |out| {

@@ -45,8 +45,48 @@ pub fn flow_text(
     nodes(&mut text, network, solution, report, length);
     branches(&mut text, network, solution, report, length);
     regulators(&mut text, report);
+    motors(&mut text, report);
     electrodes(&mut text, report, length);
     text
+}
+
+/// Running motors.
+fn motors(text: &mut String, report: &FlowReport) {
+    if report.motors.is_empty() {
+        return;
+    }
+    let mut table = Table::new(&[
+        Column::text("motor"),
+        Column::number("slip", "%", 2),
+        Column::number("a", "A", 1),
+        Column::number("b", "A", 1),
+        Column::number("c", "A", 1),
+        Column::number("of full load", "%", 1),
+        Column::number("in", "kW", 2),
+        Column::number("loss", "kW", 2),
+        Column::number("volt unb.", "%", 2),
+        Column::number("derated to", "%", 0),
+    ]);
+    for m in &report.motors {
+        let many = if m.count > 1 { format!("{} x {}", m.count, m.motor) } else { m.motor.to_string() };
+        table.rows.push(vec![
+            Cell::Text(many),
+            Cell::Number(m.slip_percent),
+            Cell::Number(m.amps_a),
+            Cell::Number(m.amps_b),
+            Cell::Number(m.amps_c),
+            Cell::Number(m.loading_percent),
+            Cell::Number(m.kw),
+            Cell::Number(m.loss_kw),
+            Cell::Number(m.voltage_unbalance_percent),
+            m.derating.map(|d| 100.0 * d).into(),
+        ]);
+    }
+    let _ = writeln!(text, "Running motors\n{}", table.text());
+    let _ = writeln!(
+        text,
+        "  Currents of one motor, power of all of a row. Unbalance and derating by NEMA MG 1.\n"
+    );
 }
 
 /// Electrodes, those of the highest voltage first.
@@ -114,6 +154,10 @@ fn totals(text: &mut String, report: &FlowReport) {
     };
     row("source", t.source_kw, Some(t.source_kvar));
     row("loads and capacitors", t.load_kw, Some(t.load_kvar));
+    if !report.motors.is_empty() {
+        row("  of them motors", t.motor_kw, Some(t.motor_kvar));
+        row("    lost in the motors", t.motor_loss_kw, None);
+    }
     row("losses", t.loss_kw, Some(t.loss_kvar));
     row("  phase conductors", t.line_loss_kw, None);
     if report.glance.neutral_volts.is_some() {

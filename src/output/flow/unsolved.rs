@@ -13,6 +13,19 @@ pub fn no_solution_text(network: &Network, solution: &Solution) -> String {
     let (why, look) = match solution.status {
         Status::BeyondLoadability => (beyond(solution), limit),
         Status::Converged => return String::new(),
+        Status::Stalls(motor) => (
+            network.motors.get(motor).map_or(String::new(), |m| {
+                let v = &solution.volts[m.node.index()];
+                let low = (0..3).map(|k| v[k].norm()).fold(f64::INFINITY, f64::min);
+                format!(
+                    "motor {} at node {} cannot carry its load: its lowest phase gets {:.1} % of nominal voltage",
+                    m.name,
+                    network.node(m.node).name,
+                    100.0 * low / network.node(m.node).nominal_phase_volts()
+                )
+            }),
+            "its load_percent and plate, the voltage on the way to it, other motors that draw there",
+        ),
         Status::Singular(node) => (
             format!("the linear part of the network has no solution at node {}", network.node(node).name),
             "a side without any path to earth there, or a capacitor and a reactance that cancel",
@@ -21,7 +34,7 @@ pub fn no_solution_text(network: &Network, solution: &Solution) -> String {
         Status::IterationLimit => (format!("the voltages have not settled after {count} iterations"), limit),
     };
     let mut text = folded("", &format!("error[no-solution]: {why}."));
-    if !matches!(solution.status, Status::Singular(_)) {
+    if !matches!(solution.status, Status::Singular(_) | Status::Stalls(_)) {
         let far = format!(
             "Worst at node {place}: last change {}, current mismatch {}.",
             amount(solution.change_pu, "of nominal"),

@@ -4,7 +4,7 @@ use serde::Serialize;
 
 use super::losses::Totals;
 use super::places::{drop_percent, floating_nodes, judged, set_points};
-use super::{Electrode, ElementLoss, LoadDraw, NodeSummary};
+use super::{Electrode, ElementLoss, LoadDraw, MotorRun, NodeSummary};
 use crate::network::{BranchKind, Network, weak_star_points};
 use crate::solver::{Path, RegulatedUnit, Solution, TapState};
 
@@ -72,6 +72,9 @@ pub enum Rule {
     /// Regulator at the end of its range, hunting, or fed backwards.
     #[serde(rename = "regulator")]
     Regulator,
+    /// Motor beyond what unbalance leaves of its rating, or beyond its full-load current.
+    #[serde(rename = "motor")]
+    Motor,
     /// Voltages that are those after a collapse.
     #[serde(rename = "voltage collapse")]
     Collapse,
@@ -99,6 +102,7 @@ impl Rule {
             Rule::Overload => "overload",
             Rule::BelowFloor => "load below floor",
             Rule::Regulator => "regulator",
+            Rule::Motor => "motor",
             Rule::Collapse => "voltage collapse",
             Rule::NoEarth => "no earth",
             Rule::StarPoint => "weak star point",
@@ -128,6 +132,7 @@ pub struct Finding {
 /// What findings are drawn from.
 pub(super) struct Seen<'a> {
     pub electrodes: &'a [Electrode],
+    pub motors: &'a [MotorRun],
     pub network: &'a Network,
     pub solution: &'a Solution,
     pub elements: &'a [ElementLoss],
@@ -147,6 +152,7 @@ pub(super) fn all(seen: &Seen) -> Vec<Finding> {
     regulators(seen, &mut found);
     unearthed(seen, &mut found);
     star_points(seen, &mut found);
+    motors(seen, &mut found);
     collapse(seen, &mut found);
     balance(seen, &mut found);
     caution(seen, &mut found);
@@ -229,6 +235,34 @@ fn to_earth(what: &str, place: impl Fn() -> String, volts: f64, limit: Option<f6
             Some(warning(Rule::NeutralVoltage, place(), volts, None, text))
         }
         _ => None,
+    }
+}
+
+/// Motors that unbalance or load takes beyond what they are made for.
+fn motors(seen: &Seen, found: &mut Vec<Finding>) {
+    for m in seen.motors {
+        let place = || format!("motor {}", m.motor);
+        let unbalance = m.voltage_unbalance_percent;
+        match (m.derating, m.derated_load_percent) {
+            (None, _) => {
+                let text = format!(
+                    "{unbalance:.2} % voltage unbalance; above 5 % no operation is recommended (NEMA MG 1, figure 14-1)"
+                );
+                found.push(warning(Rule::Motor, place(), unbalance, Some(5.0), text));
+            }
+            (Some(derating), Some(percent)) if percent > 100.0 && derating < 1.0 => {
+                let text = format!(
+                    "{unbalance:.2} % voltage unbalance leaves {:.0} % of rated output (NEMA MG 1, figure 14-1); it gives {percent:.1} % of that",
+                    100.0 * derating
+                );
+                found.push(warning(Rule::Motor, place(), percent, Some(100.0), text));
+            }
+            _ => {}
+        }
+        if m.loading_percent > 100.5 {
+            let text = format!("greatest phase current {:.1} % of full load", m.loading_percent);
+            found.push(warning(Rule::Motor, place(), m.loading_percent, Some(100.0), text));
+        }
     }
 }
 

@@ -2,7 +2,7 @@
 
 use serde::Serialize;
 
-use super::{Electrode, ElementLoss, LoadDraw, element_volts};
+use super::{Electrode, ElementLoss, LoadDraw, MotorRun, element_volts};
 use crate::math::{Complex64, PhaseVector, SLOTS};
 use crate::network::{Branch, BranchKind, Conductor, End, Network, Transformer};
 use crate::solver::Solution;
@@ -15,9 +15,9 @@ pub struct Totals {
     pub source_kw: f64,
     /// Reactive power at the supply node.
     pub source_kvar: f64,
-    /// Active power of loads and capacitors.
+    /// Active power of loads, motors and capacitors.
     pub load_kw: f64,
-    /// Reactive power of loads and capacitors; capacitors count negative.
+    /// Reactive power of loads, motors and capacitors; capacitors count negative.
     pub load_kvar: f64,
     /// All losses.
     pub loss_kw: f64,
@@ -31,6 +31,12 @@ pub struct Totals {
     pub transformer_loss_kw: f64,
     /// Losses in earth electrodes.
     pub earth_loss_kw: f64,
+    /// Active power of running motors, which `load_kw` includes.
+    pub motor_kw: f64,
+    /// Their reactive power, which `load_kvar` includes.
+    pub motor_kvar: f64,
+    /// Losses inside the motors, part of `motor_kw`.
+    pub motor_loss_kw: f64,
     /// Reactive power of capacitors, which `load_kvar` includes.
     pub capacitor_kvar: f64,
 }
@@ -128,6 +134,7 @@ pub(super) fn totals(
     solution: &Solution,
     elements: &[ElementLoss],
     loads: &[LoadDraw],
+    motors: &[MotorRun],
 ) -> Totals {
     let source = power(&solution.volts[network.supply.node.index()], &solution.source_amps) / 1e3;
     let mut totals = Totals { source_kw: source.re, source_kvar: source.im, ..Totals::default() };
@@ -135,6 +142,13 @@ pub(super) fn totals(
         totals.load_kw += load.kw;
         totals.load_kvar += load.kvar;
     }
+    for motor in motors {
+        totals.motor_kw += motor.kw;
+        totals.motor_kvar += motor.kvar;
+        totals.motor_loss_kw += motor.loss_kw;
+    }
+    totals.load_kw += totals.motor_kw;
+    totals.load_kvar += totals.motor_kvar;
     for capacitor in &network.capacitors {
         let siemens =
             capacitor.vars / capacitor.connection.elements().max(1) as f64 / capacitor.rated_volts.powi(2);

@@ -6,6 +6,7 @@
 mod electrodes;
 mod findings;
 mod losses;
+mod motors;
 mod places;
 
 use serde::Serialize;
@@ -17,6 +18,7 @@ use crate::solver::{RegulatedUnit, Solution, Status, TapState, load_current};
 pub use electrodes::Electrode;
 pub use findings::{Finding, FindingSeverity, Rule};
 pub use losses::Totals;
+pub use motors::MotorRun;
 pub use places::{Extreme, Glance, lowest_judged};
 
 /// Voltage of one conductor of a node.
@@ -157,6 +159,8 @@ pub struct FlowReport {
     pub regulators: Vec<RegulatorTap>,
     /// Loads as drawn.
     pub loads: Vec<LoadDraw>,
+    /// Running motors.
+    pub motors: Vec<MotorRun>,
     /// Earth electrodes, of neutrals and of star points.
     pub electrodes: Vec<Electrode>,
     /// Limits exceeded and other remarks, worst first within a rule.
@@ -182,12 +186,14 @@ impl FlowReport {
         let loads = loads(network, solution);
         let electrodes = electrodes::electrodes(network, solution);
         let elements = losses::elements(network, solution, &electrodes);
-        let totals = losses::totals(network, solution, &elements, &loads);
+        let motors = motors::motors(network, solution);
+        let totals = losses::totals(network, solution, &elements, &loads, &motors);
         let nodes_summary = nodes_summary(network, solution);
         let regulators = regulators(network, units);
         let glance = places::glance(network, solution, &elements, &nodes_summary);
         let seen = findings::Seen {
             electrodes: &electrodes,
+            motors: &motors,
             network,
             solution,
             elements: &elements,
@@ -212,6 +218,7 @@ impl FlowReport {
             totals,
             regulators,
             loads,
+            motors,
             electrodes,
             findings,
             glance,
