@@ -22,6 +22,7 @@ pub fn is_installed() -> bool {
 
 /// Voltages of every node, slots a, b, c, n, by the simulator.
 pub fn simulate(network: &Network) -> Vec<[Complex64; 4]> {
+    assert!(network.motors.is_empty(), "motors are not written");
     let mut deck = Deck { text: String::from("network\n"), count: 0, omega: 0.0 };
     deck.omega = 2.0 * std::f64::consts::PI * network.study.frequency_hz;
     deck.supply(network);
