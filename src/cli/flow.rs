@@ -9,7 +9,7 @@ use crate::network::Network;
 use crate::output::{
     Colour, Folder, Length, diagnostics_text, flow_csv, flow_json, flow_text, no_solution_text,
 };
-use crate::solver::{Settings, Solution, solve_regulated};
+use crate::solver::{Settings, Solution, solve_controlled};
 use crate::study::flow::FlowReport;
 use crate::study::loadability::{Loadability, loadability};
 
@@ -30,8 +30,8 @@ pub(super) fn flow(options: &Flow, screen: &mut Screen) -> Outcome {
     };
     screen.doing("solving");
     let settings = Settings::default();
-    let (solution, units) = solve_regulated(&mut network, &settings);
-    let Some(report) = FlowReport::new(&network, &solution, &units, &loaded.input_sha256) else {
+    let (solution, controls) = solve_controlled(&mut network, &settings);
+    let Some(report) = FlowReport::controlled(&network, &solution, &controls, &loaded.input_sha256) else {
         screen.tell(&no_solution_text(&network, &solution));
         return Outcome::NoSolution;
     };

@@ -12,20 +12,24 @@ mod follow;
 mod injection;
 mod lanes;
 mod recover;
+mod relay;
 mod residual;
 mod settings;
 mod solution;
 mod sweep;
+mod switching;
 mod terminals;
 mod ties;
 mod windings;
 mod workspace;
 
-pub use control::{RegulatedUnit, TapState, solve_regulated};
+pub use control::{Controls, RegulatedUnit, TapState, solve_controlled, solve_regulated};
+pub use relay::PowerFlow;
 pub use residual::{Residual, load_current, residual};
 pub use settings::Settings;
 pub use solution::{Path, Solution, Status};
 pub use sweep::Iterations;
+pub use switching::{CapacitorState, SwitchedCapacitor};
 pub use workspace::Workspace;
 
 use crate::network::{Network, NodeId};

@@ -2,11 +2,12 @@
 
 use serde::Serialize;
 
+use super::controls::{why, why_switched};
 use super::losses::Totals;
 use super::places::{drop_percent, floating_nodes, judged, set_points};
 use super::{Electrode, ElementLoss, LoadDraw, NodeSummary};
 use crate::network::{BranchKind, Network};
-use crate::solver::{Path, RegulatedUnit, Solution, TapState};
+use crate::solver::{CapacitorState, Controls, Path, Solution, TapState};
 
 /// Conventional limit of touch voltage in normal dry conditions, volts AC (IEC 60364-4-41; from memory).
 const TOUCH_VOLTAGE_V: f64 = 50.0;
@@ -67,9 +68,12 @@ pub enum Rule {
     /// Constant-power load below the floor voltage.
     #[serde(rename = "load below floor")]
     BelowFloor,
-    /// Regulator at the end of its range, hunting, or fed backwards.
+    /// Regulator outside its band: at a limit, hunting, or fed backwards.
     #[serde(rename = "regulator")]
     Regulator,
+    /// Switched capacitor that hunts.
+    #[serde(rename = "capacitor")]
+    Capacitor,
     /// Voltages that are those after a collapse.
     #[serde(rename = "voltage collapse")]
     Collapse,
@@ -94,6 +98,7 @@ impl Rule {
             Rule::Overload => "overload",
             Rule::BelowFloor => "load below floor",
             Rule::Regulator => "regulator",
+            Rule::Capacitor => "capacitor",
             Rule::Collapse => "voltage collapse",
             Rule::NoEarth => "no earth",
             Rule::Caution => "caution",
@@ -127,7 +132,7 @@ pub(super) struct Seen<'a> {
     pub elements: &'a [ElementLoss],
     pub nodes: &'a [NodeSummary],
     pub loads: &'a [LoadDraw],
-    pub units: &'a [RegulatedUnit],
+    pub controls: &'a Controls,
     pub totals: &'a Totals,
 }
 
@@ -139,6 +144,7 @@ pub(super) fn all(seen: &Seen) -> Vec<Finding> {
     overloads(seen, &mut found);
     below_floor(seen, &mut found);
     regulators(seen, &mut found);
+    capacitors(seen, &mut found);
     unearthed(seen, &mut found);
     collapse(seen, &mut found);
     balance(seen, &mut found);
@@ -267,21 +273,22 @@ fn below_floor(seen: &Seen, found: &mut Vec<Finding>) {
 
 /// Regulators that could not hold their band.
 fn regulators(seen: &Seen, found: &mut Vec<Finding>) {
-    for unit in seen.units {
-        let word = match unit.state {
-            TapState::Settled => continue,
-            TapState::AtLimit => "at the end of its range and still outside its band",
-            TapState::Hunting => "hunts: no tap holds it within its band",
-            TapState::Reversed => "is fed at its regulated side; its tap was held",
-        };
-        let branch = seen.network.branch(unit.branch);
-        let phase = match &branch.kind {
-            BranchKind::Regulator(bank) => bank.units.get(unit.unit).map_or("", |u| u.phase.letter()),
-            _ => "",
-        };
-        let text = format!("{word} ({:.2} V at its relay)", unit.relay_volts);
-        let place = format!("regulator {}, {phase}", branch.name);
-        found.push(warning(Rule::Regulator, place, unit.relay_volts, None, text));
+    for ended in seen.controls.units.iter().filter(|u| u.state != TapState::Settled) {
+        let branch = seen.network.branch(ended.branch);
+        let BranchKind::Regulator(bank) = &branch.kind else { continue };
+        let Some(unit) = bank.units.get(ended.unit) else { continue };
+        let place = format!("regulator {}, {}", unit.name, unit.phase.letter());
+        found.push(warning(Rule::Regulator, place, ended.relay_volts, None, why(unit, ended)));
+    }
+}
+
+/// Capacitors that switch on and off without end.
+fn capacitors(seen: &Seen, found: &mut Vec<Finding>) {
+    for ended in seen.controls.capacitors.iter().filter(|c| c.state == CapacitorState::Hunting) {
+        let Some(bank) = seen.network.capacitor_banks.get(ended.bank) else { continue };
+        let place = format!("capacitor {}", bank.capacitor.name);
+        let text = why_switched(seen.network, bank, Some(ended));
+        found.push(warning(Rule::Capacitor, place, ended.reading, None, text));
     }
 }
 
