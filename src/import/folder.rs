@@ -109,6 +109,15 @@ fn read(mut files: Vec<(String, Vec<u8>)>, others: &[String], diagnostics: Diagn
     files.sort();
     let mut intake = Intake { diagnostics, ..Intake::default() };
     let known = sort_out(files, others, &mut intake.diagnostics);
+    if !known.iter().any(|(i, ..)| KNOWN.get(*i) == Some(&"source.csv")) {
+        intake.unread.supply = true;
+    }
+    // A file of a name that is nearly right was told; what it holds is missed in vain.
+    let near: Vec<&str> =
+        intake.diagnostics.items().iter().filter_map(|d| nearest(&d.place.as_ref()?.file, KNOWN)).collect();
+    for name in near.into_iter().filter(|n| !known.iter().any(|(i, ..)| KNOWN.get(*i) == Some(n))) {
+        intake.lose(name);
+    }
     let input_sha256 = hash(&known);
     let (draft, described, catalog) = fill(&mut intake, known);
     let Intake { mut diagnostics, nodes, .. } = intake;
@@ -224,6 +233,7 @@ fn fill(
                 let (message, cure) = fault.explain();
                 intake.sources.add(SourceFile { name: name.clone(), ..SourceFile::default() });
                 intake.diagnostics.error(Code::BadEncoding, Some(place_of_file(&name)), message, cure);
+                intake.lose(KNOWN.get(index).copied().unwrap_or_default());
             }
         }
     }
@@ -248,6 +258,7 @@ fn fill(
     with(intake, motors, unsupported::motors);
     with(intake, profiles, unsupported::profiles);
     draft.sources = std::mem::take(&mut intake.sources);
+    draft.unread = std::mem::take(&mut intake.unread);
     (draft, computed.described, computed.catalog)
 }
 

@@ -41,7 +41,10 @@ const MODELS: [(&str, LoadModel); 3] =
 pub(super) fn read(intake: &mut Intake, file: FileId) -> Vec<LoadRecord> {
     let mut records = Vec::new();
     let mut unique = Unique::new("load");
-    read_table(intake, file, &LOADS, |row| records.extend(read_row(row, &mut unique)));
+    read_table(intake, file, &LOADS, |row| match read_row(row, &mut unique) {
+        Some(record) => records.push(record),
+        None => row.lose(),
+    });
     records
 }
 

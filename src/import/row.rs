@@ -88,6 +88,39 @@ impl<'r> Row<'r> {
         self.intake.diagnostics.error(code, place, message, cure);
     }
 
+    /// Text of a cell as it stands, without a report.
+    pub(crate) fn peek(&self, column: usize) -> Option<&'r str> {
+        self.filled(column).next().map(|c| c.text)
+    }
+
+    /// Notes a branch that could not be read, by its ends where they are known.
+    pub(crate) fn lose_branch(&mut self, from: usize, to: usize) {
+        for end in [from, to] {
+            match self.peek(end) {
+                Some(name) => _ = self.intake.unread.nodes.insert(Name::from(name)),
+                None => self.intake.unread.branches = true,
+            }
+        }
+    }
+
+    /// Notes a row that could not be read.
+    pub(crate) fn lose(&mut self) {
+        self.intake.lose(self.layout.schema.file);
+    }
+
+    /// Reports a filled cell that can be read but hardly meant so.
+    pub(crate) fn warning(
+        &mut self,
+        code: Code,
+        column: usize,
+        message: impl Into<String>,
+        cure: impl Into<String>,
+    ) {
+        let cell = self.filled(column).next();
+        let place = self.intake.sources.place(self.origin, cell.map(|c| c.header.name), cell.map(|c| c.text));
+        self.intake.diagnostics.warning(code, place, message, cure);
+    }
+
     /// Reports a fault of the row as a whole.
     pub(crate) fn row_error(&mut self, code: Code, message: impl Into<String>, cure: impl Into<String>) {
         let place = self.intake.sources.place(self.origin, None, None);
@@ -196,7 +229,7 @@ impl<'r> Row<'r> {
         let value = match self.parse(cell.text, percent) {
             Ok(value) => value,
             Err(fault) => {
-                let (code, message, cure) = explain(&fault, cell.text, spec, header);
+                let (code, message, cure) = explain(&fault, cell.text, spec, header, self.layout.marks());
                 self.error(code, column, message, cure);
                 return Number::Faulty;
             }

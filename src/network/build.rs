@@ -72,6 +72,9 @@ impl Builder<'_> {
     /// Index of the supply node: always 0, where there is a supply.
     fn supply_node(&mut self) -> Option<usize> {
         let Some((first, others)) = self.draft.supplies.split_first() else {
+            if self.draft.unread.supply {
+                return None;
+            }
             self.diagnostics.error(
                 Code::NoSource,
                 None,
@@ -98,6 +101,9 @@ impl Builder<'_> {
             return false;
         }
         let name = &graph.names[root];
+        if self.draft.unread.joins(name) {
+            return false;
+        }
         let others = graph.names.iter().filter(|n| *n != name).map(|n| &**n);
         let cure = match nearest(name, others) {
             Some(near) => format!("did you mean {near:?}?"),
@@ -123,12 +129,24 @@ impl Builder<'_> {
     }
 
     pub(super) fn unknown_node(&mut self, graph: &Graph, node: &str, origin: Option<Origin>, who: &str) {
+        if self.draft.unread.joins(node) {
+            return;
+        }
         let cure = match nearest(node, graph.names.iter().map(|n| &**n)) {
+            _ if self.draft.lines.iter().any(|l| &*l.line == node) => self.line_for_node(node, who),
             Some(near) => format!("did you mean {near:?}?"),
             None => "join it with a line, switch or transformer, or take the row out".to_string(),
         };
         let message = format!("{who} node {node:?}, but no line, switch or transformer connects it");
         self.diagnostics.error(Code::UnknownNode, place(self.draft, origin, "node", node), message, cure);
+    }
+
+    /// The cure where a line stands in the place of a node.
+    fn line_for_node(&self, name: &str, who: &str) -> String {
+        match who.starts_with("load ") {
+            true => format!("{name} is a line: put it in column `line`"),
+            false => format!("{name} is a line: name the node at one of its ends"),
+        }
     }
 
     fn check_electrodes(&mut self, graph: &Graph, tree: &Tree, carried: &Carried) {

@@ -422,9 +422,9 @@ impl Walk<'_> {
         let phase_volts = nominal_phase_volts(self.carried.conductors[feed.parent], nominal);
         let cure = if fits(far.nominal_volts()) {
             "from and to, or kv_from and kv_to, look exchanged".to_string()
-        } else if fits(near.nominal_volts() * SQRT_3) {
+        } else if is_near(near.nominal_volts() * SQRT_3, nominal) {
             "give the line-to-line voltage (phase voltage times 1.732)".to_string()
-        } else if fits(near.nominal_volts() / SQRT_3) {
+        } else if near.phase_to_neutral && is_near(near.nominal_volts() / SQRT_3, nominal) {
             "give the voltage of the winding itself (line-to-line over 1.732)".to_string()
         } else {
             format!("check {}, and to which node that side is joined", near.volts_column)
@@ -471,6 +471,11 @@ fn lag(records: &[&TransformerRecord], upstream: End) -> Option<u8> {
         VectorGroup::CentreTap { .. } => return None,
     };
     Some(if upstream == End::From { clock } else { (12 - clock) % 12 })
+}
+
+/// Near enough to be the same rated voltage: 11 and 6.6 kV are no phase voltage of each other.
+fn is_near(volts: f64, nominal: f64) -> bool {
+    (volts / nominal - 1.0).abs() <= 0.025
 }
 
 /// One side of a transformer record, or of a bank of single-phase units.

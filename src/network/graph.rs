@@ -325,6 +325,9 @@ pub(super) fn report_unfed(draft: &Draft, graph: &Graph, tree: &Tree, diagnostic
         }
     }
     for (p, nodes) in members.iter().enumerate() {
+        if nodes.iter().any(|&n| draft.unread.joins(&graph.names[n])) {
+            continue; // a branch that was told as faulty may feed it
+        }
         if nodes.len() == 1 && graph.at(nodes[0]).all(|b| is_switch(graph, b)) && watts[p] == 0.0 {
             continue; // nothing but a switch end: told as an isolated switch
         }
@@ -467,6 +470,7 @@ pub(super) fn report_isolated_switches(
         let lonely: Vec<usize> = [branch.from, branch.to]
             .into_iter()
             .filter(|&n| graph.at(n).count() == 1 && !used.contains(&n))
+            .filter(|&n| !draft.unread.joins(&graph.names[n]) && !draft.unread.loads)
             .collect();
         if let Some(&node) = lonely.first() {
             let column = if branch.from == node { "from" } else { "to" };

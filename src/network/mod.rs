@@ -24,7 +24,7 @@ pub use conductor::{Conductor, Conductors, Connection};
 pub use draft::{
     Across, BankMode, CapacitorControl, CapacitorRecord, Construction, Draft, FaultLevel, LineRecord,
     LoadRecord, LoadSite, Name, NodeRecord, RegulatorControl, RegulatorRecord, ReverseFlow, Sense,
-    SupplyRecord, SwitchRecord, SwitchState, TransformerRecord,
+    SupplyRecord, SwitchRecord, SwitchState, TransformerRecord, Unread,
 };
 pub use load::{Capacitor, CapacitorBank, CapacitorSwitch, Load, LoadModel, LoadPlace};
 pub use model::{

@@ -11,6 +11,7 @@ mod control;
 mod follow;
 mod injection;
 mod lanes;
+mod ports;
 mod recover;
 mod relay;
 mod residual;
@@ -19,7 +20,6 @@ mod solution;
 mod sweep;
 mod switching;
 mod terminals;
-mod ties;
 mod windings;
 mod workspace;
 

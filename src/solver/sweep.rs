@@ -68,23 +68,23 @@ impl Workspace<'_> {
         self.passes(Passes::Settle);
     }
 
-    /// Makes the passes; gives the largest change, per unit. With rings, passes over the opened
-    /// network find the mismatch at the openings first, and those that count follow with it mended.
+    /// Makes the passes; gives the largest change, per unit. With rings or machines, passes over the opened
+    /// network find the mismatch at their ports first, and those that count follow with it mended.
     fn passes(&mut self, which: Passes) -> f64 {
-        let Some(mut ties) = self.ties.take() else { return self.tree_passes(which) };
+        let Some(mut ports) = self.ports.take() else { return self.tree_passes(which) };
         if which == Passes::Down {
             self.state.amps.fill(Slots::ZERO);
         }
-        ties.own.copy_from_slice(&self.state.amps);
-        ties.before.copy_from_slice(&self.state.volts);
-        ties.draw(&mut self.state.amps);
+        ports.own.copy_from_slice(&self.state.amps);
+        ports.before.copy_from_slice(&self.state.volts);
+        ports.draw(&mut self.state.amps);
         self.tree_passes(Passes::Settle);
-        ties.correct(&self.state.volts);
-        self.state.amps.copy_from_slice(&ties.own);
-        ties.draw(&mut self.state.amps);
-        self.state.volts.copy_from_slice(&ties.before);
+        ports.correct(&self.state.volts);
+        self.state.amps.copy_from_slice(&ports.own);
+        ports.draw(&mut self.state.amps);
+        self.state.volts.copy_from_slice(&ports.before);
         let change = self.tree_passes(if which == Passes::Down { Passes::UpAndDown } else { which });
-        self.ties = Some(ties);
+        self.ports = Some(ports);
         change
     }
 

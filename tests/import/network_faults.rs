@@ -116,6 +116,8 @@ const CASES: &[(&str, Files)] = &[
     // Names.
     ("load at a missing node", &[loads!("house,AA,,an,5,1", "shop,nowhere,,an,5,1")]),
     ("load along a missing line", &[loads!("house,,L2,an,5,1")]),
+    ("load at a line", &[loads!("house,L1,,an,5,1")]),
+    ("node row of a line", &[("nodes.csv", "node,x,y\nL1,1,2\n")]),
     ("capacitor at a missing node", &[("capacitors.csv", "capacitor,node,phases,kvar\nC1,B,abc,10\n")]),
     ("node row of a missing node", &[("nodes.csv", "node,x,y\nB,1,2\n")]),
     ("unknown construction", &[lines!("L1,S,A,abcn,100,cabel,", "L2,A,B,abcn,100,overhead,")]),
@@ -173,6 +175,24 @@ const CASES: &[(&str, Files)] = &[
     (
         "transformer for another voltage",
         &[transformers!("T1,A,B,,100,11,0.4,Dyn11,1,4,,"), loads!("house,B,,an,5,1")],
+    ),
+    (
+        "transformer for a higher voltage class",
+        &[
+            ("source.csv", "node,kv\nS,6.6\n"),
+            lines!("L1,S,A,abc,100,three,"),
+            transformers!("T1,A,B,,100,11,0.4,Dyn11,1,4,,"),
+            loads!("house,B,,an,5,1"),
+        ],
+    ),
+    (
+        "transformer by its phase voltage",
+        &[
+            ("source.csv", "node,kv\nS,11\n"),
+            lines!("L1,S,A,abc,100,three,"),
+            transformers!("T1,A,B,,100,6.35,0.4,Dyn11,1,4,,"),
+            loads!("house,B,,an,5,1"),
+        ],
     ),
     (
         "transformer the wrong way round",
@@ -252,6 +272,49 @@ const CASES: &[(&str, Files)] = &[
     (
         "bank in both directions",
         &[regulators!("R1,A,B,a,n,1,,", "R2,B,A,b,n,,2,"), loads!("house,B,,an,5,1")],
+    ),
+    (
+        "closed delta with a pair twice",
+        &[
+            ("regulators.csv", "regulator,from,to,phases,across,tap_a,tap_b\nR1,A,B,a,b,1,\nR2,A,B,b,a,,1\n"),
+            loads!("house,B,,an,5,1"),
+        ],
+    ),
+    // Controls of capacitors.
+    (
+        "capacitor switched by a line that is not there",
+        &[(
+            "capacitors.csv",
+            "capacitor,node,phases,kvar,control,on_kvar,off_kvar,sense_line\nC1,A,abc,10,kvar,20,5,L9\nC2,A,abc,10,kvar,20,5,l1\n",
+        )],
+    ),
+    (
+        "capacitor switched by an open line",
+        &[
+            lines!("L1,S,A,abcn,100,cable,", "L2,A,B,abcn,100,cable,open"),
+            (
+                "capacitors.csv",
+                "capacitor,node,phases,kvar,control,on_a,off_a,sense_line\nC1,A,abc,10,current,20,5,L2\n",
+            ),
+        ],
+    ),
+    (
+        "capacitor switched by a phase that is not carried",
+        &[
+            lines!("L1,S,A,an,100,service,"),
+            (
+                "capacitors.csv",
+                "capacitor,node,phases,kvar,control,on_a,off_a,on_v,off_v,sense_line,sense_phase\n\
+                 C1,A,an,1,current,20,5,,,L1,b\nC2,A,an,1,voltage,,,220,240,,c\n",
+            ),
+        ],
+    ),
+    (
+        "capacitor thresholds on another base",
+        &[(
+            "capacitors.csv",
+            "capacitor,node,phases,kvar,control,on_v,off_v,pt_ratio\nC1,A,an,1,voltage,118,124,20\n",
+        )],
     ),
     // Nothing to do.
     ("no load", &[loads!()]),

@@ -129,6 +129,8 @@ fn totals(text: &mut String, report: &FlowReport) {
     row("  phase conductors", t.line_loss_kw, None);
     if report.glance.neutral_volts.is_some() {
         row("  neutral conductors", t.neutral_loss_kw, None);
+    }
+    if report.glance.neutral_volts.is_some() || !report.electrodes.is_empty() {
         row("  earth electrodes", t.earth_loss_kw, None);
     }
     row("  transformers", t.transformer_loss_kw, None);

@@ -17,6 +17,8 @@ const CAUTION: &str =
     "Ratings and touch voltages: the local code and a licensed engineer decide, not this table.";
 /// Source power may differ from loads and losses by this share.
 const BALANCE_SHARE: f64 = 1e-6;
+/// And by this much, kilovolt-amperes: rounding, where nothing is drawn to take a share of.
+const BALANCE_FLOOR_KVA: f64 = 1e-7;
 
 /// How much a finding matters.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
@@ -318,7 +320,7 @@ fn balance(seen: &Seen, found: &mut Vec<Finding>) {
     let t = seen.totals;
     let off = (t.source_kw - t.load_kw - t.loss_kw).hypot(t.source_kvar - t.load_kvar - t.loss_kvar);
     let size = t.source_kw.hypot(t.source_kvar).max(t.load_kw.hypot(t.load_kvar));
-    let limit = BALANCE_SHARE * size;
+    let limit = (BALANCE_SHARE * size).max(BALANCE_FLOOR_KVA);
     if off.is_finite() && off <= limit {
         return;
     }

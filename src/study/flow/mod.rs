@@ -39,7 +39,7 @@ pub struct NodeVoltage {
 /// Current of one conductor at both ends of an element.
 #[derive(Debug, Clone, PartialEq, Serialize)]
 pub struct ElementCurrent {
-    /// Line, switch, regulator or transformer; for an electrode the node it stands at.
+    /// Line, switch, regulator or transformer; for an electrode the node it stands at, or the transformer it earths.
     pub element: Name,
     /// `line`, `switch`, `regulator`, `transformer` or `electrode`.
     pub kind: &'static str,
@@ -182,12 +182,12 @@ impl FlowReport {
             return None;
         }
         let loads = loads(network, solution);
-        let elements = losses::elements(network, solution);
+        let electrodes = electrodes::electrodes(network, solution);
+        let elements = losses::elements(network, solution, &electrodes);
         let totals = losses::totals(network, solution, &elements, &loads);
         let nodes_summary = nodes_summary(network, solution);
         let regulators = controls::regulators(network, &controls.units);
         let glance = places::glance(network, solution, &elements, &nodes_summary);
-        let electrodes = electrodes::electrodes(network, solution);
         let seen = findings::Seen {
             electrodes: &electrodes,
             network,
