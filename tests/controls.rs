@@ -13,9 +13,9 @@ type Files<'a> = Vec<(&'a str, String)>;
 
 /// A 12.47 kV source, 120 V at the relay with a ratio of 60 (phase to earth).
 const KV: f64 = 12.470_765_814_495_916;
-/// Lines of no matter: a micro-ohm.
+/// `short` is used a metre long: a tenth of a milliohm.
 const MATRICES: &str = "construction,row,column,r_ohm_per_km,x_ohm_per_km\n\
-    short,a,a,1e-5,1e-5\nshort,a,b,0,0\nshort,a,c,0,0\nshort,b,b,1e-5,1e-5\nshort,b,c,0,0\nshort,c,c,1e-5,1e-5\n\
+    short,a,a,0.1,0\nshort,a,b,0,0\nshort,a,c,0,0\nshort,b,b,0.1,0\nshort,b,c,0,0\nshort,c,c,0.1,0\n\
     one,a,a,0.4,0.6\n";
 
 fn network(files: &Files) -> Network {
@@ -339,7 +339,7 @@ fn current_control_measures_one_phase() {
     assert!((read - amps(15.0)).abs() < 0.01, "{read}");
 }
 
-/// A dead band narrower than the capacitor: 15 kvar without it, -5 with it.
+/// A dead band narrower than the capacitor: 8 kvar without it, -2 with it.
 #[test]
 fn a_capacitor_at_odds_with_itself_is_told_to_hunt() {
     let mut network = compensated(8.0, "open", "kvar,6,4,,,L,");
