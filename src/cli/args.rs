@@ -68,7 +68,7 @@ pub(super) struct Flow {
     /// Folder to write the results to (made where it is not there); needed for csv
     #[arg(long, value_name = "DIR")]
     pub out: Option<PathBuf>,
-    /// End with status 1 where a limit of study.csv is exceeded
+    /// End with status 1 where a limit of study.csv is exceeded, or a control hunts
     #[arg(long)]
     pub strict: bool,
     /// Show every node, branch and finding instead of the worst

@@ -46,7 +46,11 @@ pub(super) fn flow(options: &Flow, screen: &mut Screen) -> Outcome {
         let text = loadability_text(&found);
         if options.format == FlowFormat::Text { screen.print(&text) } else { screen.tell(&text) }
     }
-    if options.strict && report.exceeds_a_limit() { Outcome::LimitExceeded } else { Outcome::Done }
+    if options.strict && (report.exceeds_a_limit() || !report.controls_settled) {
+        Outcome::LimitExceeded
+    } else {
+        Outcome::Done
+    }
 }
 
 fn deliver(

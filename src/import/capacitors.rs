@@ -40,13 +40,13 @@ static CAPACITORS: Schema = Schema {
         Column::number("kv", KILO, "kV", "the rated voltage").range(Range::UpTo(1000.0)),
         Column::text("state", "the state"),
         Column::text("control", "what switches the capacitor"),
-        Column::number("on_v", 1.0, "V", "the voltage to switch on below").range(Range::Positive),
-        Column::number("off_v", 1.0, "V", "the voltage to switch off above").range(Range::Positive),
+        Column::number("on_v", 1.0, "V", "the switch-on voltage").range(Range::Positive),
+        Column::number("off_v", 1.0, "V", "the switch-off voltage").range(Range::Positive),
         Column::number("pt_ratio", 1.0, "", "the ratio of the potential transformer").range(Range::Positive),
-        Column::number("on_kvar", KILO, "kvar", "the reactive power to switch on above"),
-        Column::number("off_kvar", KILO, "kvar", "the reactive power to switch off below"),
-        Column::number("on_a", 1.0, "A", "the current to switch on above").range(Range::Positive),
-        Column::number("off_a", 1.0, "A", "the current to switch off below").range(Range::NotNegative),
+        Column::number("on_kvar", KILO, "kvar", "the switch-on reactive power"),
+        Column::number("off_kvar", KILO, "kvar", "the switch-off reactive power"),
+        Column::number("on_a", 1.0, "A", "the switch-on current").range(Range::Positive),
+        Column::number("off_a", 1.0, "A", "the switch-off current").range(Range::NotNegative),
         Column::text("sense_line", "the line where the control measures"),
         Column::text("sense_phase", "the phase that the control measures"),
         Column::number("delay_s", 1.0, "s", "the delay of the control").range(Range::NotNegative),
@@ -96,12 +96,12 @@ enum Word {
     Profile,
 }
 
-const WORDS: [(&str, Word); 5] = [
-    ("fixed", Word::Fixed),
-    ("voltage", Word::Voltage),
-    ("kvar", Word::Kvar),
-    ("current", Word::Current),
-    ("profile", Word::Profile),
+const WORDS: [(&str, Option<Word>); 5] = [
+    ("fixed", Some(Word::Fixed)),
+    ("voltage", Some(Word::Voltage)),
+    ("kvar", Some(Word::Kvar)),
+    ("current", Some(Word::Current)),
+    ("profile", Some(Word::Profile)),
 ];
 
 /// Columns that a control uses; the first two are its thresholds, on and off.
@@ -117,10 +117,15 @@ fn columns(word: Word) -> &'static [usize] {
 
 /// The control, or `None` after a report.
 fn control(row: &mut Row<'_>, connection: Option<Connection>) -> Option<CapacitorControl> {
-    let word = row.word(CONTROL, &WORDS, Word::Fixed);
+    let word = row.word(CONTROL, &WORDS, None);
+    // A slip was reported; what was meant is not known.
+    if word.is_none() && row.is_filled(CONTROL) {
+        return None;
+    }
+    let word = word.unwrap_or(Word::Fixed);
     let unused = (ON_V..=DELAY).filter(|c| row.is_filled(*c) && !columns(word).contains(c));
     for column in unused.collect::<Vec<_>>() {
-        let name = WORDS.iter().find(|(_, w)| *w == word).map_or("fixed", |(name, _)| name);
+        let name = WORDS.iter().find(|(_, w)| *w == Some(word)).map_or("fixed", |(name, _)| name);
         let message = format!(
             "{} is given, but a capacitor with the control `{name}` does not use it",
             CAPACITORS.column(column).what

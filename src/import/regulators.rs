@@ -183,7 +183,13 @@ enum ModeWord {
 
 /// `each`, or `gang` with the phase it measures; in a gang all taps are the same.
 fn mode(row: &mut Row<'_>, phases: Option<Conductors>, taps: &[Option<i32>; 3]) -> BankMode {
-    let word = row.word(MODE, &[("each", ModeWord::Each), ("gang", ModeWord::Gang)], ModeWord::Each);
+    let words = [("each", Some(ModeWord::Each)), ("gang", Some(ModeWord::Gang))];
+    let word = row.word(MODE, &words, None);
+    // A slip was reported; what was meant is not known.
+    if word.is_none() && row.is_filled(MODE) {
+        return BankMode::Each;
+    }
+    let word = word.unwrap_or(ModeWord::Each);
     if word == ModeWord::Each {
         if row.is_filled(GANG_PHASE) {
             let message = "a phase to measure is given, but the phases do not move as a gang";
@@ -242,13 +248,18 @@ enum ReverseWord {
 
 fn reverse(row: &mut Row<'_>) -> ReverseFlow {
     let words = [
-        ("hold", ReverseWord::Hold),
-        ("neutral", ReverseWord::Neutral),
-        ("reverse", ReverseWord::Regulate),
-        ("ignore", ReverseWord::Ignore),
+        ("hold", Some(ReverseWord::Hold)),
+        ("neutral", Some(ReverseWord::Neutral)),
+        ("reverse", Some(ReverseWord::Regulate)),
+        ("ignore", Some(ReverseWord::Ignore)),
     ];
-    let word = row.word(REVERSE, &words, ReverseWord::Hold);
+    let word = row.word(REVERSE, &words, None);
     let set_volts = row.optional_number(REVERSE_SET);
+    // A slip was reported; what was meant is not known.
+    if word.is_none() && row.is_filled(REVERSE) {
+        return ReverseFlow::Hold;
+    }
+    let word = word.unwrap_or(ReverseWord::Hold);
     if word != ReverseWord::Regulate && set_volts.is_some() {
         let message = "a set voltage for reverse flow is given, but the control does not regulate then";
         row.error(Code::Conflict, REVERSE_SET, message, "write `reverse` in `reverse`, or clear this cell");

@@ -166,7 +166,7 @@ impl Builder<'_> {
                 "capacitor {} measures phase {wanted} of {what}, which carries only {carried}",
                 record.capacitor
             ),
-            format!("name in `sense_phase` a phase of {carried}"),
+            format!("name one of the phases {} in `sense_phase`", carried.phases()),
         );
     }
 }
