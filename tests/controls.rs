@@ -270,7 +270,7 @@ fn cascade_meets_every_band_as_near_as_any_tap_does() {
     let report = FlowReport::controlled(&hunting, &solution, &controls, "").expect("converged");
     assert!(!report.controls_settled);
     let page = flow_text(&hunting, &solution, &report, Length::Short, Colour::Plain);
-    assert!(page.contains("NOT SETTLED: regulator V1, a"), "{page}");
+    assert!(page.contains("NOT SETTLED, hunting: regulator V1, a"), "{page}");
 }
 
 /// A load of `kvar` and a capacitor of 10 kvar at the end of a line of no impedance to speak of.
@@ -350,7 +350,7 @@ fn a_capacitor_at_odds_with_itself_is_told_to_hunt() {
     assert!(!report.controls_settled && report.capacitors[0].hunting);
     assert!(report.findings.iter().any(|f| f.place == "capacitor C" && f.text.starts_with("hunts")));
     let page = flow_text(&network, &solution, &report, Length::Short, Colour::Plain);
-    assert!(page.contains("NOT SETTLED: capacitor C"), "{page}");
+    assert!(page.contains("NOT SETTLED, hunting: capacitor C"), "{page}");
 }
 
 /// Line, regulator, line, capacitor: the regulator's delay is the shorter, so it goes first.
@@ -396,4 +396,29 @@ fn capacitor_and_regulator_that_work_against_each_other_are_named() {
     assert!(
         report.findings.iter().any(|f| f.place == "capacitor K" && f.text.starts_with("hunts against V"))
     );
+}
+
+/// Two capacitors of 10 kvar that would both switch at 20 kvar: after the first, 10 kvar lie in the
+/// dead band of the other.
+#[test]
+fn the_shorter_delay_switches_first() {
+    for (delays, closed) in [([30, 60], "K1"), ([60, 30], "K2"), ([30, 30], "K1")] {
+        let rows = format!(
+            "capacitor,node,phases,kvar,state,control,on_kvar,off_kvar,sense_line,delay_s\n\
+             K1,A,abcn,10,open,kvar,15,2,L,{}\nK2,A,abcn,10,open,kvar,15,2,L,{}\n",
+            delays[0], delays[1]
+        );
+        let mut network = network(&vec![
+            ("source.csv", "node,kv\nS,0.4\n".to_string()),
+            ("lines.csv", "line,from,to,phases,length_m,construction\nL,S,A,abc,1,short\n".to_string()),
+            ("loads.csv", "load,node,phases,kw,kvar\nD,A,abcn,0,20\n".to_string()),
+            ("capacitors.csv", rows),
+        ]);
+        let (solution, controls) = controlled(&mut network);
+        assert!(controls.capacitors.iter().all(|c| c.state == CapacitorState::Settled));
+        let in_service: Vec<&str> = network.capacitors.iter().map(|c| &*c.name).collect();
+        assert_eq!(in_service, [closed], "{delays:?}");
+        let report = FlowReport::controlled(&network, &solution, &controls, "").expect("converged");
+        assert_eq!(report.capacitors.len(), 2, "open ones are told too");
+    }
 }

@@ -102,7 +102,7 @@ fn head(text: &mut String, report: &FlowReport) {
         let names: Vec<String> =
             regulators.chain(hunts.map(|c| format!("capacitor {}", c.capacitor))).collect();
         let warning = format!(
-            "NOT SETTLED: {} hunt. The numbers are of one state among several it passes through.",
+            "NOT SETTLED, hunting: {}. The numbers are of one state among several passed through without end.",
             names.join("; ")
         );
         text.push_str(&folded("", &warning));
