@@ -100,7 +100,7 @@ impl Sources {
         // What is found is shown as it was typed: `L2 N` where the network says `bn`.
         let typed = index.and_then(|i| cell_of(row_text, file.columns.len(), i));
         let found = match (found, typed) {
-            (Some(found), Some(typed)) if !found.is_empty() && !typed.contains(found) => Some(typed),
+            (Some(found), Some(typed)) if found.is_empty() || !typed.contains(found) => Some(typed),
             (found, _) => found.map(str::to_owned),
         };
         Some(Place {

@@ -55,7 +55,28 @@ pub fn read_folder(folder: &Path) -> Reading {
             };
         }
     };
+    let none = files.is_empty() && diagnostics.items().is_empty();
+    let within = if none { networks_within(folder) } else { Vec::new() };
+    if !within.is_empty() {
+        let message =
+            format!("the folder `{}` holds no CSV file, only folders of networks", folder.display());
+        let cure = format!("name one of them: {}", within.join(", "));
+        diagnostics.error(Code::MissingFile, None, message, cure);
+    }
     read(files, &others, diagnostics)
+}
+
+/// Folders within a folder that hold a `source.csv`, by name, the first few.
+fn networks_within(folder: &Path) -> Vec<String> {
+    let Ok(entries) = fs::read_dir(folder) else { return Vec::new() };
+    let mut found: Vec<String> = entries
+        .filter_map(Result::ok)
+        .filter(|e| e.path().join("source.csv").is_file())
+        .map(|e| e.path().display().to_string())
+        .collect();
+    found.sort_unstable();
+    found.truncate(10);
+    found
 }
 
 /// Reads files given as name and bytes, as [`read_folder`] does those of a folder.
@@ -156,7 +177,9 @@ fn sort_out(
     let unread = |d: &crate::diagnostic::Diagnostic| {
         d.place.as_ref().is_some_and(|p| nearest(&p.file, KNOWN) == Some("source.csv"))
     };
+    let told = diagnostics.items().iter().any(|d| d.code == Code::MissingFile);
     if !known.iter().any(|(i, ..)| KNOWN.get(*i) == Some(&"source.csv"))
+        && !told
         && !diagnostics.items().iter().any(unread)
     {
         let (message, cure) = if none {

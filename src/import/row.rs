@@ -3,6 +3,7 @@
 
 use super::Intake;
 use super::header::Layout;
+use super::names::warn_of_mangled;
 use super::number::{self, Marks, NumberFault, PercentSign, is_spreadsheet_error};
 use super::phases;
 use super::records::Cells;
@@ -178,13 +179,18 @@ impl<'r> Row<'r> {
 
     /// Name of the row's own element.
     pub(crate) fn own_name(&mut self, column: usize) -> Option<Name> {
-        self.text(column).map(Name::from)
+        let text = self.text(column)?;
+        warn_of_mangled(self, column, text);
+        Some(Name::from(text))
     }
 
     /// Name of a node, kept once for the whole network.
     pub(crate) fn node(&mut self, column: usize) -> Option<Name> {
         let text = self.text(column)?;
         let header = self.header_name(column).unwrap_or_default();
+        if !self.intake.nodes.knows(text) {
+            warn_of_mangled(self, column, text);
+        }
         Some(self.intake.nodes.name(text, self.origin, header))
     }
 

@@ -1,19 +1,24 @@
 //! Equivalent circuit out of ratings: bounded least squares.
 //!
-//! Eight unknowns (stator resistance and leakage, magnetising reactance, resistances of two cages, leakage of
-//! the inner one, fixed losses, full-load slip) meet eight ratings: shaft power at that slip, slip, power
-//! factor, efficiency, locked-rotor current, torque and power factor, breakdown torque. Each is weighted by how
+//! Nine unknowns (stator resistance and leakage, magnetising reactance, resistances of two cages, leakage of
+//! the inner one, fixed losses, full-load slip, leakage left at standstill by saturation) meet eight ratings:
+//! shaft power at that slip, slip, power factor, efficiency, locked-rotor current, torque and power factor,
+//! breakdown torque; the ninth wish is little saturation. Each is weighted by how
 //! well it is known: what stands on the nameplate firmly, what was filled in from tables loosely.
 
 use nalgebra::{SMatrix, SVector};
 use serde::Serialize;
 
 use super::circuit::{Cage, Circuit, MechanicalLoss};
+use super::full_load::{balanced, check, shaft_w};
 use super::nameplate::{Origin, Rated, Ratings};
-use crate::math::{Complex64, polar};
 use crate::units::SQRT_3;
 
-const SIZE: usize = 8;
+const SIZE: usize = 9;
+/// Place of breakdown torque among the ratings.
+const BREAKDOWN: usize = 7;
+/// Slips at which torque is looked at for its maximum.
+const SLIPS: usize = 48;
 type Vector = SVector<f64, SIZE>;
 
 /// Part of the rotor's leakage that both cages share, as a part of the stator's leakage.
@@ -23,15 +28,18 @@ const CORE_SHARE: f64 = 0.5;
 
 /// Weight of a breakdown torque above that of a table: 20 % more counts as one tolerance.
 const EXCESS_WEIGHT: f64 = 5.0;
+/// Tolerance of leakage left at standstill, logarithmic: it saturates only as far as the ratings ask for.
+const SATURATION: f64 = 0.5;
 /// Sum of squared weighted errors at which no further start is tried.
-const GOOD_ENOUGH: f64 = 0.02;
+const GOOD_ENOUGH: f64 = 0.05;
 /// Most rounds of descent from one start.
 const ROUNDS: u32 = 8;
 
 /// Bounds of the unknowns in per unit of rated volts over full-load amperes, in the order of [`circuit_of`].
-/// The sixth is outer over inner resistance, the seventh a part of rated power, the eighth of rated slip.
-const LOW: [f64; SIZE] = [0.002, 0.01, 0.8, 0.002, 0.001, 1.0, 0.002, 0.4];
-const HIGH: [f64; SIZE] = [0.25, 0.30, 20.0, 0.4, 2.0, 300.0, 0.12, 2.5];
+/// The sixth is outer over inner resistance, the seventh a part of rated power, the eighth of rated slip, the
+/// ninth of running leakage.
+const LOW: [f64; SIZE] = [0.002, 0.01, 0.8, 0.002, 0.001, 1.0, 0.002, 0.4, 0.35];
+const HIGH: [f64; SIZE] = [0.25, 0.30, 20.0, 0.4, 2.0, 300.0, 0.12, 2.5, 1.0];
 
 /// A rating, and what the fitted circuit does.
 #[derive(Debug, Clone, PartialEq, Serialize)]
@@ -166,64 +174,10 @@ enum Trust {
     Plate,
 }
 
-/// What a circuit does against the ratings at rated voltage; `None` if it cannot carry rated power.
-pub fn check(circuit: &Circuit, ratings: &Ratings) -> Option<Vec<FitItem>> {
-    let volts = balanced(ratings.volts);
-    let slip = full_load_slip(circuit, ratings.volts, ratings.shaft_w.value)?;
-    let full = circuit.operation(slip, &volts);
-    let locked = circuit.operation(1.0, &volts);
-    let torque = ratings.torque_nm();
-    let item = |quantity, rated: &Rated, obtained| FitItem {
-        quantity,
-        wanted: rated.value,
-        obtained,
-        firm: !rated.is_filled(),
-    };
-    Some(vec![
-        item("slip", &ratings.slip, slip),
-        item("efficiency", &ratings.efficiency, ratings.shaft_w.value / full.input_w),
-        item("pf", &ratings.pf, full.pf()?),
-        item("amps", &ratings.amps, full.amps[0].norm()),
-        item("locked_rotor_amps", &ratings.locked_rotor_amps, locked.amps[0].norm()),
-        item("locked_rotor_torque", &ratings.locked_rotor_torque, locked.torque_nm / torque),
-        item("locked_rotor_pf", &ratings.locked_rotor_pf, locked.pf()?),
-        item(
-            "breakdown_torque",
-            &ratings.breakdown_torque,
-            circuit.breakdown(ratings.volts).torque_nm / torque,
-        ),
-    ])
-}
-
-/// Phase voltages of a balanced line-to-line voltage, a at zero.
-pub fn balanced(volts: f64) -> [Complex64; 3] {
-    let third = 2.0 * std::f64::consts::PI / 3.0;
-    [0.0, -third, third].map(|angle| polar(volts / SQRT_3, angle))
-}
-
-/// Shaft power at a slip under rated balanced voltage, watts.
-fn shaft_w(circuit: &Circuit, slip: f64, volts: f64) -> f64 {
-    let speed = circuit.speed_rad_s(slip);
-    (circuit.balanced_torque_nm(slip, volts) - circuit.mechanical.torque_nm(speed)) * speed
-}
-
-/// The slip nearest to synchronous speed at which the shaft gives rated power.
-pub(super) fn full_load_slip(circuit: &Circuit, volts: f64, wanted_w: f64) -> Option<f64> {
-    let enough = |slip: f64| shaft_w(circuit, slip, volts) >= wanted_w;
-    let mut high = (1..=400).map(|i| f64::from(i) * 0.001).find(|&s| enough(s))?;
-    let mut low = high - 0.001;
-    for _ in 0..60 {
-        let middle = 0.5 * (low + high);
-        if enough(middle) { high = middle } else { low = middle }
-    }
-    Some(0.5 * (low + high))
-}
-
 /// A smooth stand-in for the greatest torque, newton metres: a high power mean over slips. The true maximum
 /// jumps between the humps of two cages, where a descent by slopes would stick.
-fn smooth_peak(circuit: &Circuit, volts: f64) -> f64 {
-    let torques: [f64; 64] =
-        std::array::from_fn(|i| circuit.balanced_torque_nm(10f64.powf(-2.5 * i as f64 / 63.0), volts));
+fn smooth_peak(circuit: &Circuit, volts: f64, slips: &[f64; SLIPS]) -> f64 {
+    let torques = slips.map(|slip| circuit.balanced_torque_nm(slip, volts));
     let most = torques.iter().copied().fold(f64::MIN_POSITIVE, f64::max);
     let mean: f64 = torques.iter().map(|t| (t / most).max(0.0).powi(40)).sum();
     most * mean.powf(1.0 / 40.0)
@@ -235,6 +189,8 @@ struct Problem<'a> {
     base_ohm: f64,
     /// One over the tolerance of each rating.
     weights: [f64; SIZE],
+    /// Slips of [`smooth_peak`], from 0.3 % to standstill.
+    slips: [f64; SLIPS],
 }
 
 impl<'a> Problem<'a> {
@@ -257,8 +213,11 @@ impl<'a> Problem<'a> {
             weight(&ratings.locked_rotor_torque, 0.005, 0.01, table),
             weight(&ratings.locked_rotor_pf, 0.03, 0.03, 0.20),
             weight(&ratings.breakdown_torque, 0.005, 0.01, table),
+            1.0 / SATURATION,
         ];
-        Problem { ratings, base_ohm: ratings.volts / SQRT_3 / ratings.amps.value, weights }
+        let base_ohm = ratings.volts / SQRT_3 / ratings.amps.value;
+        let slips = std::array::from_fn(|i| 10f64.powf(-2.5 * i as f64 / (SLIPS - 1) as f64));
+        Problem { ratings, base_ohm, weights, slips }
     }
 
     /// The best unknowns from all starts, and the steps taken; none where nothing finite was found.
@@ -280,7 +239,7 @@ impl<'a> Problem<'a> {
 
     /// The circuit of unknowns, which are logarithms.
     fn circuit_of(&self, unknowns: &Vector) -> Circuit {
-        let [r1, x1, xm, inner_r, inner_x, ratio, fixed, _] = (*unknowns).map(f64::exp).into();
+        let [r1, x1, xm, inner_r, inner_x, ratio, fixed, _, saturated] = (*unknowns).map(f64::exp).into();
         let z = self.base_ohm;
         let fixed_w = fixed * self.ratings.shaft_w.value;
         Circuit {
@@ -289,6 +248,7 @@ impl<'a> Problem<'a> {
             xm_ohm: xm * z,
             core_siemens: CORE_SHARE * fixed_w / (self.ratings.volts * self.ratings.volts),
             rotor_x_ohm: SHARED_LEAKAGE * x1 * z,
+            standstill_leakage: saturated.min(1.0),
             inner: Cage { r_ohm: inner_r * z, x_ohm: inner_x * z },
             outer: Some(Cage { r_ohm: ratio * inner_r * z, x_ohm: 0.0 }),
             mechanical: MechanicalLoss {
@@ -305,7 +265,7 @@ impl<'a> Problem<'a> {
     fn errors(&self, unknowns: &Vector, shift: f64) -> Vector {
         let r = self.ratings;
         let circuit = self.circuit_of(unknowns);
-        let slip_error = unknowns[SIZE - 1];
+        let slip_error = unknowns[7];
         let slip = r.slip.value * slip_error.exp();
         let volts = balanced(r.volts);
         let full = circuit.operation(slip, &volts);
@@ -315,10 +275,11 @@ impl<'a> Problem<'a> {
         // Logarithm that stays defined where a trial goes astray.
         let log = |a: f64, b: f64| (a / b).max(1e-6).ln();
         let efficiency = (shaft / full.input_w).clamp(-1.0, 0.9999);
-        let peak = log(smooth_peak(&circuit, r.volts) / torque, r.breakdown_torque.value) - shift;
+        let peak =
+            log(smooth_peak(&circuit, r.volts, &self.slips) / torque, r.breakdown_torque.value) - shift;
         // A table's breakdown torque is the least that a motor must have.
         let excess = r.breakdown_torque.is_filled() && peak > 0.0;
-        let peak = if excess { peak * EXCESS_WEIGHT / self.weights[SIZE - 1] } else { peak };
+        let peak = if excess { peak * EXCESS_WEIGHT / self.weights[BREAKDOWN] } else { peak };
         let raw = [
             log(shaft, r.shaft_w.value),
             slip_error,
@@ -328,6 +289,7 @@ impl<'a> Problem<'a> {
             log(locked.torque_nm / torque, r.locked_rotor_torque.value),
             log(locked.pf().unwrap_or(0.0), r.locked_rotor_pf.value),
             peak,
+            unknowns[8],
         ];
         Vector::from_fn(|i, _| raw[i] * self.weights[i])
     }
@@ -346,13 +308,14 @@ impl<'a> Problem<'a> {
         for (ratio, inner_x) in [(4.0, 0.1), (10.0, 0.1), (3.0, 0.3), (30.0, 0.2), (10.0, 0.5), (1.5, 0.05)] {
             let values = [
                 0.25 * z,
-                0.5 * z,
+                0.6 * z,
                 2.5,
                 0.9 * r.slip.value,
                 inner_x,
                 ratio,
                 0.25 * (1.0 - r.efficiency.value),
                 1.0,
+                0.8,
             ];
             let start = Vector::from(values.map(f64::ln));
             starts.push(start.zip_zip_map(&low, &high, |v, l, h| v.clamp(l, h)));
@@ -383,7 +346,9 @@ impl<'a> Problem<'a> {
     /// Logarithm of the smooth over the true maximum of torque.
     fn shift(&self, unknowns: &Vector) -> f64 {
         let circuit = self.circuit_of(unknowns);
-        (smooth_peak(&circuit, self.ratings.volts) / circuit.breakdown(self.ratings.volts).torque_nm).ln()
+        (smooth_peak(&circuit, self.ratings.volts, &self.slips)
+            / circuit.breakdown(self.ratings.volts).torque_nm)
+            .ln()
     }
 
     /// Damped Gauss-Newton (Levenberg-Marquardt) held within bounds: cost, unknowns, steps.

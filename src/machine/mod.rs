@@ -24,6 +24,7 @@
 
 mod circuit;
 mod fit;
+mod full_load;
 mod load;
 mod nameplate;
 mod ode;
@@ -31,12 +32,14 @@ mod progress;
 mod resolve;
 mod running;
 mod runup;
+mod single_phase;
 mod starter;
 
 pub use circuit::{
     Cage, Circuit, Matrix3, MechanicalLoss, Operation, Peak, Phases, SequencePart, sequence_matrix,
 };
-pub use fit::{Fit, FitFault, FitItem, REFUSED_ABOVE_PERCENT, balanced, check, fit};
+pub use fit::{Fit, FitFault, FitItem, REFUSED_ABOVE_PERCENT, fit};
+pub use full_load::{balanced, check};
 pub use load::{DrivenLoad, Shape};
 pub use nameplate::{Design, Nameplate, NameplateFault, Origin, Rated, Ratings};
 pub use ode::{Advance, Ode, OdeFault, StepControl, Stop};
@@ -45,4 +48,5 @@ pub use running::{CannotRun, Motor, Running, Unbalance, run, running_slip, unbal
 pub use runup::{
     Energies, Finish, Instant, Outcome, RunUp, RunUpFault, RunUpSettings, StiffBus, Terminals, run_up,
 };
+pub use single_phase::{SinglePhaseMotor, SinglePhasePlate};
 pub use starter::{ChangeOver, Coupling, Seen, Stage, Starter};

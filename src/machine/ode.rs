@@ -128,6 +128,8 @@ impl Ode {
 
     /// One accepted step, no further than `until_s`, no further than the first stop.
     ///
+    /// The rate may jump at `until_s`: it is asked for just before it. Call [`Ode::restart`] after reaching it.
+    ///
     /// # Errors
     /// The rate cannot be computed, or the step became too short.
     pub fn advance<E>(
@@ -141,13 +143,13 @@ impl Ode {
             let left = until_s - self.time_s;
             // A sliver before the end is taken along.
             let step = if wanted > left || left - wanted < self.control.shortest_s { left } else { wanted };
-            let trial = self.trial(step, rate)?;
+            let trial = self.trial(step, until_s, rate)?;
             if trial.error <= 1.0 {
                 let growth = (0.9 * trial.error.max(1e-10).powf(-0.2)).clamp(0.2, 5.0);
                 // A step cut short by the end says nothing against the longer one.
                 let grown = if step < wanted { wanted.max(step * growth) } else { step * growth };
                 self.next_s = grown.clamp(self.control.shortest_s, self.control.longest_s);
-                return self.accept(step, trial, stops, rate);
+                return self.accept((step, until_s), trial, stops, rate);
             }
             let shrink =
                 if trial.error.is_finite() { (0.9 * trial.error.powf(-0.2)).clamp(0.1, 0.9) } else { 0.1 };
@@ -158,9 +160,11 @@ impl Ode {
         }
     }
 
+    /// A step, with no rate asked for at or beyond `until_s`: what jumps there belongs to the next step.
     fn trial<E>(
         &mut self,
         step: f64,
+        until_s: f64,
         rate: &mut impl FnMut(f64, &[f64], &mut [f64]) -> Result<(), E>,
     ) -> Result<Trial, OdeFault<E>> {
         let size = self.state.len();
@@ -173,7 +177,8 @@ impl Ode {
             }
             let mut slope = vec![0.0; size];
             self.evaluations += 1;
-            rate(self.time_s + node * step, &state, &mut slope).map_err(OdeFault::Rate)?;
+            let time_s = (self.time_s + node * step).min(until_s.next_down());
+            rate(time_s, &state, &mut slope).map_err(OdeFault::Rate)?;
             slopes.push(slope);
         }
         let mut sum = 0.0;
@@ -191,7 +196,7 @@ impl Ode {
     /// Takes a good step, cut at the first stop that it passes.
     fn accept<E>(
         &mut self,
-        step: f64,
+        (step, until_s): (f64, f64),
         trial: Trial,
         stops: &[Stop<'_>],
         rate: &mut impl FnMut(f64, &[f64], &mut [f64]) -> Result<(), E>,
@@ -202,7 +207,7 @@ impl Ode {
             let before = stop(self.time_s, &self.state);
             let after = stop(self.time_s + reach.0, &reach.1.state);
             if before < 0.0 && after >= 0.0 {
-                let (at, there) = self.root(*stop, (0.0, before), (reach.0, after), rate)?;
+                let (at, there) = self.root(*stop, until_s, (0.0, before), (reach.0, after), rate)?;
                 found = Some((at, there, index));
             }
         }
@@ -221,6 +226,7 @@ impl Ode {
     fn root<E>(
         &mut self,
         stop: Stop<'_>,
+        until_s: f64,
         mut low: (f64, f64),
         mut high: (f64, f64),
         rate: &mut impl FnMut(f64, &[f64], &mut [f64]) -> Result<(), E>,
@@ -233,7 +239,7 @@ impl Ode {
             }
             let middle = high.0 - high.1 * (high.0 - low.0) / (high.1 - low.1);
             let middle = if middle > low.0 && middle < high.0 { middle } else { 0.5 * (low.0 + high.0) };
-            let trial = self.trial(middle, rate)?;
+            let trial = self.trial(middle, until_s, rate)?;
             let value = stop(self.time_s + middle, &trial.state);
             if value >= 0.0 {
                 high = (middle, value);
@@ -249,7 +255,7 @@ impl Ode {
                 last_side = -1;
             }
         }
-        let trial = self.trial(high.0, rate)?;
+        let trial = self.trial(high.0, until_s, rate)?;
         Ok((high.0, trial))
     }
 }
@@ -281,7 +287,7 @@ mod tests {
     fn order_of_the_pair() {
         let error = |step: f64| {
             let mut ode = Ode::new(0.3, vec![0.3f64.sin(), 0.3f64.cos()], control(), &mut swing).unwrap();
-            let trial = ode.trial(step, &mut swing).unwrap();
+            let trial = ode.trial(step, 9.0, &mut swing).unwrap();
             (trial.state[0] - (0.3 + step).sin()).hypot(trial.state[1] - (0.3 + step).cos())
         };
         let ratio = error(0.4) / error(0.2);
@@ -304,6 +310,20 @@ mod tests {
             (hits[0].1 - 0.5f64.asin()).abs() < 1e-8 && (hits[1].1 - 0.9f64.asin()).abs() < 1e-8,
             "{hits:?}"
         );
+    }
+
+    /// A rate that jumps at the end of a step does not reach into the step.
+    #[test]
+    fn a_jump_at_the_end_is_kept_out() {
+        let mut jump = |t: f64, _: &[f64], dy: &mut [f64]| -> Result<(), ()> {
+            dy[0] = if t < 1.0 { 1.0 } else { 1e6 };
+            Ok(())
+        };
+        let mut ode = Ode::new(0.0, vec![0.0], control(), &mut jump).unwrap();
+        while ode.time_s() < 1.0 {
+            ode.advance(1.0, &[], &mut jump).unwrap();
+        }
+        assert!((ode.state()[0] - 1.0).abs() < 1e-12 && ode.evaluations() < 200);
     }
 
     #[test]

@@ -3,7 +3,7 @@
 use serde::Serialize;
 
 use super::circuit::{Circuit, Operation, Phases};
-use super::fit::{balanced, full_load_slip};
+use super::full_load::{balanced, full_load_slip};
 use super::load::DrivenLoad;
 use super::nameplate::Ratings;
 use crate::catalog::motors;
@@ -105,6 +105,9 @@ pub struct Unbalance {
     /// Part of rated output that NEMA MG 1 Figure 14-1 leaves; none above 5 %, where no operation is
     /// recommended.
     pub derating: Option<f64>,
+    /// Additional temperature rise by the rule of thumb of twice the square of the percent unbalance, percent
+    /// (NEMA MG 1, from memory).
+    pub extra_rise_percent: f64,
 }
 
 /// A motor running steadily.
@@ -147,6 +150,7 @@ pub fn unbalance(volts: &Phases) -> Option<Unbalance> {
         nema_percent,
         factor_percent,
         derating: motors::unbalance_derating(nema_percent).map(|row| row.value),
+        extra_rise_percent: 2.0 * nema_percent * nema_percent,
     })
 }
 

@@ -7,7 +7,7 @@
 use serde::Serialize;
 
 use super::circuit::{Matrix3, Operation, Phases, phases, sequence_matrix};
-use super::fit::balanced;
+use super::full_load::balanced;
 use super::running::Motor;
 use crate::math::{Complex64, ZERO, sequence_components};
 

@@ -7,6 +7,7 @@ use super::earth::{Given, SideEarth, Standing, sides};
 use super::graph::{Graph, RawFeed, RawTie, Tree, grow, place, report_isolated_switches, report_unfed};
 use super::load::CapacitorBank;
 use super::model::{BranchId, Feed, Network, Node, NodeId, SOLID_EARTH_OHM, Stay, StayPlace, Tie};
+use super::plausible;
 use super::supply::{Supply, circulant, held_volts, sequence_impedance};
 use super::validate;
 use crate::diagnostic::{Code, Diagnostics, Origin, nearest};
@@ -28,6 +29,10 @@ pub struct Built {
 pub fn build(draft: &Draft) -> Built {
     let mut diagnostics = Diagnostics::new();
     let network = Builder { draft, diagnostics: &mut diagnostics }.run();
+    if let Some(network) = &network {
+        plausible::sizes(draft, network, &mut diagnostics);
+        plausible::star_points(draft, network, &mut diagnostics);
+    }
     let network = if diagnostics.has_errors() { None } else { network };
     Built { network, diagnostics }
 }
@@ -202,6 +207,7 @@ impl Builder<'_> {
         });
         let stays = stays.collect();
         let (loads, capacitor_banks) = self.shunts(joined, &new_node, &parts);
+        let motors = self.motors(joined, &new_node);
         let study = self.draft.study.clone();
         let Branches { branches, constructions, .. } = parts;
         Some(Network {
@@ -213,6 +219,7 @@ impl Builder<'_> {
             loads,
             capacitors: CapacitorBank::in_service(&capacitor_banks),
             capacitor_banks,
+            motors,
             feeds,
             order,
             ties: ties?,

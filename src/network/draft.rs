@@ -10,9 +10,11 @@ use std::sync::Arc;
 
 use super::conductor::{Conductors, Connection};
 use super::load::LoadModel;
+use super::motor::MotorState;
 use super::study::Study;
 use super::transformer::VectorGroup;
 use crate::diagnostic::{Origin, Sources};
+use crate::machine::{FitItem, Motor as Machine, Starter};
 use crate::math::{Complex64, PhaseMatrix};
 
 /// A name from the user's files, trimmed; cheap to clone.
@@ -43,6 +45,8 @@ pub struct Draft {
     pub loads: Vec<LoadRecord>,
     /// Capacitors.
     pub capacitors: Vec<CapacitorRecord>,
+    /// Motors.
+    pub motors: Vec<MotorRecord>,
     /// What was given and could not be read.
     pub unread: Unread,
 }
@@ -386,6 +390,33 @@ pub struct Sense {
     pub line: Name,
     /// Phases: their reactive powers are added up, of their currents the greatest counts.
     pub phases: Conductors,
+}
+
+/// One row of `motors.csv`, its circuit found.
+#[derive(Debug, Clone)]
+pub struct MotorRecord {
+    /// Name of the motor.
+    pub motor: Name,
+    /// Node.
+    pub node: Name,
+    /// Equal motors side by side.
+    pub count: u32,
+    /// The machine and its load.
+    pub machine: Machine,
+    /// How it is started.
+    pub starter: Starter,
+    /// Whether it runs.
+    pub state: MotorState,
+    /// Starts an hour that are planned.
+    pub starts_per_hour: Option<f64>,
+    /// Longest time at standstill under full voltage, seconds.
+    pub locked_rotor_limit_s: Option<f64>,
+    /// What tables filled in: quantity, value, source.
+    pub filled: Vec<(&'static str, f64, String)>,
+    /// How well the circuit meets the ratings.
+    pub fit: Vec<FitItem>,
+    /// Where it was written.
+    pub origin: Option<Origin>,
 }
 
 /// One row of `capacitors.csv`.

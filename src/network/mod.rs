@@ -11,9 +11,12 @@ mod earth;
 mod graph;
 mod load;
 mod model;
+mod motor;
+mod plausible;
 mod regulator;
 mod ring;
 mod shunts;
+mod star_point;
 mod study;
 mod supply;
 mod transformer;
@@ -23,7 +26,7 @@ pub use build::{Built, build};
 pub use conductor::{Conductor, Conductors, Connection};
 pub use draft::{
     Across, BankMode, CapacitorControl, CapacitorRecord, Construction, Draft, FaultLevel, LineRecord,
-    LoadRecord, LoadSite, Name, NodeRecord, RegulatorControl, RegulatorRecord, ReverseFlow, Sense,
+    LoadRecord, LoadSite, MotorRecord, Name, NodeRecord, RegulatorControl, RegulatorRecord, ReverseFlow, Sense,
     SupplyRecord, SwitchRecord, SwitchState, TransformerRecord, Unread,
 };
 pub use load::{Capacitor, CapacitorBank, CapacitorSwitch, Load, LoadModel, LoadPlace};
@@ -31,7 +34,9 @@ pub use model::{
     Branch, BranchId, BranchKind, ConstructionId, End, Feed, Line, Network, Node, NodeId, SOLID_EARTH_OHM,
     Stay, StayPlace, Tie,
 };
+pub use motor::{Motor, MotorState};
 pub use regulator::{Regulator, RegulatorUnit, TapMode};
+pub use star_point::{WeakStarPoint, weak_star_points};
 pub use study::Study;
 pub use supply::Supply;
 pub use transformer::{BOND_OHM, NeutralPoint, Transformer, VectorGroup, Winding};

@@ -8,6 +8,7 @@
 use super::conductor::{Conductor, Conductors, Connection};
 use super::draft::{Construction, Name, SwitchState};
 use super::load::{Capacitor, CapacitorBank, Load, LoadPlace};
+use super::motor::Motor;
 use super::regulator::Regulator;
 use super::study::Study;
 use super::supply::Supply;
@@ -227,6 +228,8 @@ pub struct Network {
     pub capacitors: Vec<Capacitor>,
     /// Every capacitor with what switches it.
     pub capacitor_banks: Vec<CapacitorBank>,
+    /// Motors.
+    pub motors: Vec<Motor>,
     /// How each node is fed; `None` only for the supply node.
     pub feeds: Vec<Option<Feed>>,
     /// Nodes from the supply outwards, breadth first: a parent stands before its children.

@@ -88,6 +88,16 @@ const CELLS: &[(&str, Files)] = &[
             "transformer,from,to,kva,kv_from,kv_to,group,r_percent,x_percent\nT,A,B,63,11,0.4,Dy11n,1,4\n",
         )],
     ),
+    (
+        "names that a spreadsheet has changed",
+        &[
+            (
+                "lines.csv",
+                "line,from,to,phases,length_m,construction\n4-Mar,S,A,abcn,100,cable\nL2,A,1.00E+05,abcn,100,cable\n",
+            ),
+            ("loads.csv", "load,node,phases,kw,pf\nhouse,1.00E+05,an,2,1\n"),
+        ],
+    ),
     // Words, names and conductors.
     (
         "state misspelt",

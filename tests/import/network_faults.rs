@@ -263,6 +263,45 @@ const CASES: &[(&str, Files)] = &[
             loads!("house,C,,an,5,1"),
         ],
     ),
+    (
+        "single-phase load behind a star point earthed through an impedance",
+        &[
+            ("source.csv", "node,kv\nS,33\n"),
+            lines!("L1,S,A,abc,100,three,", "L2,B,C,abc,100,three,"),
+            transformers!("T1,A,B,,5000,33,11,Dyn11,1,7,,63"),
+            loads!("farm,C,,an,50,1", "mill,C,,abc,50,1"),
+        ],
+    ),
+    // Sizes far from any in use.
+    (
+        "load in watts behind a transformer",
+        &[
+            ("source.csv", "node,kv\nS,11\n"),
+            lines!("L1,S,A,abc,100,three,", "L2,B,C,abcn,100,cable,"),
+            transformers!("T1,A,B,,63,11,0.4,Dyn11,1,4,,"),
+            ("nodes.csv", "node,earth_ohm\nB,3\n"),
+            loads!("house,C,,an,9000,1", "shop,C,,an,5,1"),
+        ],
+    ),
+    ("load of thousands of amperes", &[loads!("house,A,,abcn,9000,1")]),
+    ("line of 120 km at 400 V", &[lines!("L1,S,A,abcn,120000,cable,")]),
+    (
+        "rating in MVA",
+        &[
+            ("source.csv", "node,kv\nS,11\n"),
+            lines!("L1,S,A,abc,100,three,", "L2,B,C,abcn,100,cable,"),
+            transformers!("T1,A,B,,0.063,11,0.4,Dyn11,0.01,0.04,,"),
+            ("nodes.csv", "node,earth_ohm\nB,3\n"),
+            loads!("house,C,,an,0.01,1"),
+        ],
+    ),
+    (
+        "steps per unit",
+        &[
+            ("regulators.csv", "regulator,from,to,phases,tap_a,step_percent\nR1,A,B,a,1,0.00625\n"),
+            loads!("house,B,,an,5,1"),
+        ],
+    ),
     // Regulators.
     (
         "phase regulated twice",

@@ -23,6 +23,8 @@ const SPLIT_NOTE: &str = "Behind a centre tap, columns a and b hold s1 and s2.";
 
 /// Rows of a long table that are shown.
 const WORST: usize = 20;
+/// A table of no more rows than this is shown whole: cutting it would hide a row or two only.
+const WHOLE: usize = 24;
 /// Rows of the table of electrodes.
 const WORST_ELECTRODES: usize = 10;
 
@@ -55,7 +57,7 @@ fn electrodes(text: &mut String, report: &FlowReport, length: Length) {
     }
     order.sort_by(|a, b| b.volts.total_cmp(&a.volts));
     let all = order.len();
-    if length == Length::Short && all > WORST_ELECTRODES {
+    if length == Length::Short && all > WORST_ELECTRODES + 4 {
         order.truncate(WORST_ELECTRODES);
     }
     let heading = match order.len() == all {
@@ -166,7 +168,7 @@ fn glance(text: &mut String, network: &Network, report: &FlowReport) {
     row("lowest voltage", &g.lowest_pu, 4, "pu", pu(study.voltage_low_percent), "no phases");
     row("highest voltage", &g.highest_pu, 4, "pu", pu(study.voltage_high_percent), "no phases");
     let drop = format!("{} %", study.drop_limit_percent);
-    row("largest drop since last set", &g.drop_percent, 2, "%", drop, "no lines");
+    row("largest voltage drop", &g.drop_percent, 2, "%", drop, "no lines");
     let unbalance = format!("{} %", study.unbalance_limit_percent);
     row("largest unbalance factor", &g.unbalance_percent, 2, "%", unbalance, "no three-phase node");
     row("highest neutral current", &g.neutral_amps, 2, "A", String::new(), "no line carries a neutral");
@@ -176,7 +178,7 @@ fn glance(text: &mut String, network: &Network, report: &FlowReport) {
     let _ = writeln!(text, "{}", table.text());
     let _ = writeln!(
         text,
-        "  Voltages are phase to neutral where the neutral is carried, else to earth. The drop is counted\n  from the last source, transformer or regulator.\n"
+        "  Voltages are phase to neutral where the neutral is carried, else to earth. The drop is counted\n  from the source, transformer or regulator that last set the voltage.\n"
     );
     if network.nodes.iter().any(|n| !n.reference_on.phases().is_empty()) {
         let _ = writeln!(
@@ -188,7 +190,7 @@ fn glance(text: &mut String, network: &Network, report: &FlowReport) {
 
 fn nodes(text: &mut String, network: &Network, solution: &Solution, report: &FlowReport, length: Length) {
     let mut order = network.order.clone();
-    let (shown, heading) = if length == Length::Short && order.len() > WORST {
+    let (shown, heading) = if length == Length::Short && order.len() > WHOLE {
         let lowest = lowest_judged(network, solution);
         order.sort_by(|a, b| lowest[a.index()].total_cmp(&lowest[b.index()]));
         (WORST, format!("Nodes: the {WORST} lowest of {} (--all for all)", network.nodes.len()))
@@ -239,10 +241,16 @@ fn branches(text: &mut String, network: &Network, solution: &Solution, report: &
         return;
     }
     let mut order: Vec<usize> = (0..network.branches.len()).collect();
-    let (shown, heading) = if length == Length::Short && order.len() > WORST {
+    let (shown, heading) = if length == Length::Short && order.len() > WHOLE {
         let key = |b: usize| (report.elements[b].rating_percent.unwrap_or(0.0), report.elements[b].loss_kw);
         order.sort_by(|&a, &b| key(b).0.total_cmp(&key(a).0).then(key(b).1.total_cmp(&key(a).1)));
-        (WORST, format!("Branches: the {WORST} most loaded of {} (--all for all)", network.branches.len()))
+        (
+            WORST,
+            format!(
+                "Branches: the {WORST} most loaded of {} (--all for all), currents at the from end",
+                network.branches.len()
+            ),
+        )
     } else {
         (order.len(), "Branches, currents at the from end".to_string())
     };

@@ -6,7 +6,7 @@ use super::controls::{why, why_switched};
 use super::losses::Totals;
 use super::places::{drop_percent, floating_nodes, judged, set_points};
 use super::{Electrode, ElementLoss, LoadDraw, NodeSummary};
-use crate::network::{BranchKind, Network};
+use crate::network::{BranchKind, Network, weak_star_points};
 use crate::solver::{CapacitorState, Controls, Path, Solution, TapState};
 
 /// Conventional limit of touch voltage in normal dry conditions, volts AC (IEC 60364-4-41; from memory).
@@ -82,6 +82,9 @@ pub enum Rule {
     /// A side that nothing but a stated reference holds to earth.
     #[serde(rename = "no earth")]
     NoEarth,
+    /// A star point earthed through a large impedance that single-phase loads return through.
+    #[serde(rename = "weak star point")]
+    StarPoint,
     /// What the numbers cannot decide: the local code and a licensed engineer do.
     #[serde(rename = "caution")]
     Caution,
@@ -103,6 +106,7 @@ impl Rule {
             Rule::Capacitor => "capacitor",
             Rule::Collapse => "voltage collapse",
             Rule::NoEarth => "no earth",
+            Rule::StarPoint => "weak star point",
             Rule::Caution => "caution",
         }
     }
@@ -148,6 +152,7 @@ pub(super) fn all(seen: &Seen) -> Vec<Finding> {
     regulators(seen, &mut found);
     capacitors(seen, &mut found);
     unearthed(seen, &mut found);
+    star_points(seen, &mut found);
     collapse(seen, &mut found);
     balance(seen, &mut found);
     caution(seen, &mut found);
@@ -315,6 +320,29 @@ fn unearthed(seen: &Seen, found: &mut Vec<Finding>) {
     }
 }
 
+/// Star points that single-phase loads to earth shift; the value is the ohms.
+fn star_points(seen: &Seen, found: &mut Vec<Finding>) {
+    for weak in weak_star_points(seen.network) {
+        let name = &seen.network.branch(weak.branch).name;
+        let volts = seen
+            .electrodes
+            .iter()
+            .find(|e| e.transformer.as_ref() == Some(name))
+            .map_or(f64::NAN, |e| e.volts);
+        let shifted =
+            if volts.is_finite() { format!(", now {volts:.1} V from earth") } else { String::new() };
+        let text = format!(
+            "star point earthed through {:.1} ohm{shifted}, with {} single-phase load{} behind it that return{} through earth ({}): check the earthing, or carry n to them",
+            weak.ohm,
+            weak.loads,
+            if weak.loads == 1 { "" } else { "s" },
+            if weak.loads == 1 { "s" } else { "" },
+            weak.first,
+        );
+        found.push(warning(Rule::StarPoint, format!("transformer {name}"), weak.ohm, None, text));
+    }
+}
+
 /// Source power against loads and losses; what is not a number counts as a difference.
 fn balance(seen: &Seen, found: &mut Vec<Finding>) {
     let t = seen.totals;
@@ -336,7 +364,7 @@ fn balance(seen: &Seen, found: &mut Vec<Finding>) {
 
 /// The caution, once, where an overload or a neutral's voltage is in question; its value is their number.
 fn caution(seen: &Seen, found: &mut Vec<Finding>) {
-    let risky = |f: &&Finding| matches!(f.rule, Rule::Overload | Rule::NeutralVoltage);
+    let risky = |f: &&Finding| matches!(f.rule, Rule::Overload | Rule::NeutralVoltage | Rule::StarPoint);
     let questions = found.iter().filter(risky).count();
     let limited =
         seen.network.study.neutral_limit_v.is_some() && seen.nodes.iter().any(|n| n.neutral_volts.is_some());
