@@ -26,8 +26,8 @@ pub use build::{Built, build};
 pub use conductor::{Conductor, Conductors, Connection};
 pub use draft::{
     Across, BankMode, CapacitorControl, CapacitorRecord, Construction, Draft, FaultLevel, LineRecord,
-    LoadRecord, LoadSite, MotorRecord, Name, NodeRecord, RegulatorControl, RegulatorRecord, ReverseFlow, Sense,
-    SupplyRecord, SwitchRecord, SwitchState, TransformerRecord, Unread,
+    LoadRecord, LoadSite, MotorRecord, Name, NodeRecord, RegulatorControl, RegulatorRecord, ReverseFlow,
+    Sense, SupplyRecord, SwitchRecord, SwitchState, TransformerRecord, Unread,
 };
 pub use load::{Capacitor, CapacitorBank, CapacitorSwitch, Load, LoadModel, LoadPlace};
 pub use model::{

@@ -43,7 +43,11 @@ impl Builder<'_> {
             });
         }
         let capacitors = self.capacitors(joined, new_node, parts);
-        if loads.is_empty() && self.draft.motors.is_empty() && !self.diagnostics.has_errors() && !self.draft.unread.may_draw() {
+        if loads.is_empty()
+            && self.draft.motors.is_empty()
+            && !self.diagnostics.has_errors()
+            && !self.draft.unread.may_draw()
+        {
             self.diagnostics.warning(
                 Code::NoLoad,
                 None,
