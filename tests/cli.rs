@@ -100,7 +100,7 @@ fn json_has_the_fields_of_the_format_and_adds_up() {
     );
     assert_eq!(fields("elements"), ["element", "kind", "loss_kvar", "loss_kw", "rating_percent"]);
     assert_eq!(fields("source"), ["amps", "conductor", "degrees", "kvar", "kw"]);
-    assert_eq!(fields("regulators"), ["at_limit", "automatic", "phase", "regulator", "tap"]);
+    assert_eq!(fields("regulators"), ["at_limit", "automatic", "phase", "regulator", "state", "tap", "why"]);
     assert_eq!(fields("findings"), ["limit", "rule", "severity", "text", "value", "where"]);
     let total = |name: &str| report["totals"][name].as_f64().expect("a number");
     assert!((total("source_kw") - total("load_kw") - total("loss_kw")).abs() < 1e-6);
@@ -253,6 +253,7 @@ fn results_can_be_written_again_and_leave_nothing_else() {
         .collect();
     names.sort_unstable();
     let expected = [
+        "capacitor_states.csv",
         "currents.csv",
         "electrodes.csv",
         "elements.csv",

@@ -128,6 +128,7 @@ fn thirteen_node_feeder_with_automatic_taps_lands_on_the_published_ones() {
         ct_amps: Some(700.0),
         r_volts: 3.0,
         x_volts: 9.0,
+        ..RegulatorControl::default()
     };
     let mut network = build(&draft).network.expect("settings are complete");
     let (solution, units) = solve_regulated(&mut network, &Settings::default());

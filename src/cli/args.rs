@@ -23,7 +23,7 @@ pub(super) enum Command {
     /// Solve a network: voltage at every node, current in every conductor, losses, limits exceeded.
     #[command(after_help = "Examples:\n  fourwire flow networks/brindle-quarry\n  \
         fourwire flow networks/brindle-quarry --format csv --out results\n\n\
-        Exit status: 0 solved, 1 solved but a limit is exceeded and --strict was given,\n\
+        Exit status: 0 solved, 1 solved, --strict, a limit is exceeded or a control hunts,\n\
         2 the input or the command line is wrong, 3 no solution.")]
     Flow(Flow),
     /// Impedance from wires and geometry, the table of wires, and drop and loss of one circuit.
@@ -68,7 +68,7 @@ pub(super) struct Flow {
     /// Folder to write the results to (made where it is not there); needed for csv
     #[arg(long, value_name = "DIR")]
     pub out: Option<PathBuf>,
-    /// End with status 1 where a limit of study.csv is exceeded
+    /// End with status 1 where a limit of study.csv is exceeded, or a control hunts
     #[arg(long)]
     pub strict: bool,
     /// Show every node, branch and finding instead of the worst

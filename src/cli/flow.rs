@@ -10,7 +10,7 @@ use crate::output::{
     Colour, Folder, Length, diagnostics_text, flow_csv, flow_json, flow_text, loadability_text,
     no_solution_text,
 };
-use crate::solver::{Settings, Solution, solve_regulated};
+use crate::solver::{Settings, Solution, solve_controlled};
 use crate::study::flow::FlowReport;
 use crate::study::loadability::loadability_with;
 
@@ -31,8 +31,8 @@ pub(super) fn flow(options: &Flow, screen: &mut Screen) -> Outcome {
     };
     screen.doing("solving");
     let settings = Settings::default();
-    let (solution, units) = solve_regulated(&mut network, &settings);
-    let Some(report) = FlowReport::new(&network, &solution, &units, &loaded.input_sha256) else {
+    let (solution, controls) = solve_controlled(&mut network, &settings);
+    let Some(report) = FlowReport::controlled(&network, &solution, &controls, &loaded.input_sha256) else {
         screen.tell(&no_solution_text(&network, &solution));
         if options.loadability {
             let text = look_for_loadability(&network, &settings, screen);
@@ -49,7 +49,11 @@ pub(super) fn flow(options: &Flow, screen: &mut Screen) -> Outcome {
         let text = look_for_loadability(&network, &settings, screen);
         if options.format == FlowFormat::Text { screen.print(&text) } else { screen.tell(&text) }
     }
-    if options.strict && report.exceeds_a_limit() { Outcome::LimitExceeded } else { Outcome::Done }
+    if options.strict && (report.exceeds_a_limit() || !report.controls_settled) {
+        Outcome::LimitExceeded
+    } else {
+        Outcome::Done
+    }
 }
 
 fn deliver(

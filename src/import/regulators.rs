@@ -7,7 +7,9 @@ use super::row::Row;
 use super::schema::{Column, Range, Schema};
 use super::table::read_table;
 use crate::diagnostic::{Code, FileId, Origin};
-use crate::network::{Across, Conductor, Conductors, Name, RegulatorControl, RegulatorRecord};
+use crate::network::{
+    Across, BankMode, Conductor, Conductors, Name, RegulatorControl, RegulatorRecord, ReverseFlow,
+};
 
 const REGULATOR: usize = 0;
 const FROM: usize = 1;
@@ -23,6 +25,11 @@ const PT_RATIO: usize = 12;
 const CT: usize = 13;
 const R: usize = 14;
 const X: usize = 15;
+const LIMIT: usize = 16;
+const MODE: usize = 17;
+const GANG_PHASE: usize = 18;
+const REVERSE: usize = 19;
+const REVERSE_SET: usize = 20;
 
 static REGULATORS: Schema = Schema {
     file: "regulators.csv",
@@ -44,6 +51,11 @@ static REGULATORS: Schema = Schema {
             .range(Range::Positive),
         Column::number("r_v", 1.0, "V", "the compensator resistance"),
         Column::number("x_v", 1.0, "V", "the compensator reactance"),
+        Column::number("limit_v", 1.0, "V", "the highest voltage at the regulator").range(Range::Positive),
+        Column::text("mode", "how the phases of the bank move"),
+        Column::text("gang_phase", "the phase that a gang measures"),
+        Column::text("reverse", "what the control does in reverse flow"),
+        Column::number("reverse_set_v", 1.0, "V", "the set voltage in reverse flow").range(Range::Positive),
     ],
 };
 
@@ -76,6 +88,8 @@ fn read_row(row: &mut Row<'_>, banks: &mut Banks) -> Option<RegulatorRecord> {
     let steps = row.whole_number(STEPS).and_then(|n| u32::try_from(n).ok()).unwrap_or(STEPS_EACH_WAY);
     let taps = taps(row, phases, steps);
     let step_pu = row.number_or(STEP, STEP_PU);
+    let mode = mode(row, phases, &taps);
+    let reverse = reverse(row);
     let control = RegulatorControl {
         set_volts: row.optional_number(SET),
         band_volts: row.optional_number(BAND),
@@ -83,7 +97,11 @@ fn read_row(row: &mut Row<'_>, banks: &mut Banks) -> Option<RegulatorRecord> {
         ct_amps: row.optional_number(CT),
         r_volts: row.number_or(R, 0.0),
         x_volts: row.number_or(X, 0.0),
+        limit_volts: row.optional_number(LIMIT),
+        mode,
+        reverse,
     };
+    check_limit(row, &control);
     Some(RegulatorRecord {
         regulator: regulator?,
         from: from?,
@@ -154,4 +172,121 @@ fn taps(row: &mut Row<'_>, phases: Option<Conductors>, steps: u32) -> [Option<i3
         }
     }
     taps
+}
+
+/// Words of the column `mode`.
+#[derive(Clone, Copy, PartialEq)]
+enum ModeWord {
+    Each,
+    Gang,
+}
+
+/// `each`, or `gang` with the phase it measures; in a gang all taps are the same.
+fn mode(row: &mut Row<'_>, phases: Option<Conductors>, taps: &[Option<i32>; 3]) -> BankMode {
+    let words = [("each", Some(ModeWord::Each)), ("gang", Some(ModeWord::Gang))];
+    let word = row.word(MODE, &words, None);
+    // A slip was reported; what was meant is not known.
+    if word.is_none() && row.is_filled(MODE) {
+        return BankMode::Each;
+    }
+    let word = word.unwrap_or(ModeWord::Each);
+    if word == ModeWord::Each {
+        if row.is_filled(GANG_PHASE) {
+            let message = "a phase to measure is given, but the phases do not move as a gang";
+            row.error(Code::Conflict, GANG_PHASE, message, "write `gang` in `mode`, or clear this cell");
+        }
+        return BankMode::Each;
+    }
+    let Some(phases) = phases else { return BankMode::Each };
+    if phases.count() < 2 {
+        let message = format!("a gang needs several phases, but the row regulates only `{phases}`");
+        let cure = "write all phases of the gang in one row, or `each` in `mode`";
+        row.error(Code::Conflict, MODE, message, cure);
+        return BankMode::Each;
+    }
+    let mut given = phases.iter().map(|c| taps.get(c.slot()).copied().flatten());
+    let first = given.next().flatten();
+    if given.any(|tap| tap != first) {
+        let message = "the phases of a gang stand on one tap, but their taps differ";
+        let cure = "write the same tap for every phase, or leave all of them blank";
+        row.error(Code::Conflict, MODE, message, cure);
+    }
+    gang_phase(row, phases).map_or(BankMode::Each, BankMode::Gang)
+}
+
+fn gang_phase(row: &mut Row<'_>, phases: Conductors) -> Option<Conductor> {
+    if !row.is_filled(GANG_PHASE) {
+        let message = "the phase that the gang measures is missing";
+        row.error(
+            Code::MissingValue,
+            GANG_PHASE,
+            message,
+            format!("write one phase of `{phases}` in `gang_phase`"),
+        );
+        return None;
+    }
+    let set = row.conductors(GANG_PHASE)?;
+    let mut all = set.iter();
+    match (all.next(), all.next()) {
+        (Some(one), None) if phases.has(one) => Some(one),
+        _ => {
+            let message = format!("a gang measures one of its phases `{phases}`, but `{set}` is given");
+            row.error(Code::BadPhases, GANG_PHASE, message, format!("write one phase of `{phases}`"));
+            None
+        }
+    }
+}
+
+/// Words of the column `reverse`.
+#[derive(Clone, Copy, PartialEq)]
+enum ReverseWord {
+    Hold,
+    Neutral,
+    Regulate,
+    Ignore,
+}
+
+fn reverse(row: &mut Row<'_>) -> ReverseFlow {
+    let words = [
+        ("hold", Some(ReverseWord::Hold)),
+        ("neutral", Some(ReverseWord::Neutral)),
+        ("reverse", Some(ReverseWord::Regulate)),
+        ("ignore", Some(ReverseWord::Ignore)),
+    ];
+    let word = row.word(REVERSE, &words, None);
+    let set_volts = row.optional_number(REVERSE_SET);
+    // A slip was reported; what was meant is not known.
+    if word.is_none() && row.is_filled(REVERSE) {
+        return ReverseFlow::Hold;
+    }
+    let word = word.unwrap_or(ReverseWord::Hold);
+    if word != ReverseWord::Regulate && set_volts.is_some() {
+        let message = "a set voltage for reverse flow is given, but the control does not regulate then";
+        row.error(Code::Conflict, REVERSE_SET, message, "write `reverse` in `reverse`, or clear this cell");
+    }
+    match (word, set_volts) {
+        (ReverseWord::Hold, _) => ReverseFlow::Hold,
+        (ReverseWord::Neutral, _) => ReverseFlow::Neutral,
+        (ReverseWord::Ignore, _) => ReverseFlow::Ignore,
+        (ReverseWord::Regulate, Some(set_volts)) => ReverseFlow::Regulate { set_volts },
+        (ReverseWord::Regulate, None) => {
+            if !row.is_filled(REVERSE_SET) {
+                let message = "the control regulates in reverse flow, but its set voltage then is missing";
+                let cure = "write the voltage at the relay in `reverse_set_v`, or `hold` in `reverse`";
+                row.error(Code::MissingValue, REVERSE_SET, message, cure);
+            }
+            ReverseFlow::Hold
+        }
+    }
+}
+
+/// A limit within the band would keep the regulator from ever settling there.
+fn check_limit(row: &mut Row<'_>, control: &RegulatorControl) {
+    let Some(limit) = control.limit_volts else { return };
+    let top = control.set_volts.unwrap_or(0.0) + control.band_volts.unwrap_or(0.0) / 2.0;
+    if control.set_volts.is_some() && limit < top {
+        let message = format!("the limit must not lie below the top of the band, {top} V");
+        let cure = "raise the limit above `set_v` and half of `band_v`, or lower `set_v`";
+        row.error(Code::Conflict, LIMIT, message, cure);
+    }
 }

@@ -4,7 +4,9 @@ use std::collections::HashMap;
 
 use super::build::{Builder, Joined};
 use super::conductor::{Conductor, Conductors};
-use super::draft::{Across, Construction, LineRecord, Name, RegulatorRecord, SwitchState, TransformerRecord};
+use super::draft::{
+    Across, BankMode, Construction, LineRecord, Name, RegulatorRecord, SwitchState, TransformerRecord,
+};
 use super::graph::{RawKind, place};
 use super::model::{Branch, BranchId, BranchKind, ConstructionId, Line, NodeId};
 use super::regulator::{Regulator, RegulatorUnit, TapMode};
@@ -164,9 +166,26 @@ impl Builder<'_> {
                     );
                     continue;
                 }
+                if let Across::Phase(other) = record.across
+                    && units.iter().any(|u| u.phase == other && u.across == Across::Phase(phase))
+                {
+                    self.diagnostics.error(
+                        Code::RegulatorBank,
+                        place(self.draft, record.origin, "across", other.letter()),
+                        format!(
+                            "the voltage across {phase} and {other} is regulated twice between nodes {} and {}",
+                            record.from, record.to
+                        ),
+                        "in a closed delta regulate a across b, b across c and c across a",
+                    );
+                    continue;
+                }
                 let (tap, mode) = match record.taps[phase.slot()] {
                     Some(tap) => (tap, TapMode::Held),
-                    None if self.has_settings(record, phase) => (0, TapMode::Automatic),
+                    None if self.has_settings(record, phase) => match record.control.mode {
+                        BankMode::Gang(measured) if measured != phase => (0, TapMode::Follows(measured)),
+                        _ => (0, TapMode::Automatic),
+                    },
                     None => continue,
                 };
                 units.push(RegulatorUnit {

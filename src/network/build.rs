@@ -5,6 +5,7 @@ use super::carry::{Carried, carry};
 use super::draft::Draft;
 use super::earth::{Given, SideEarth, Standing, sides};
 use super::graph::{Graph, RawFeed, RawTie, Tree, grow, place, report_isolated_switches, report_unfed};
+use super::load::CapacitorBank;
 use super::model::{BranchId, Feed, Network, Node, NodeId, SOLID_EARTH_OHM, Stay, StayPlace, Tie};
 use super::plausible;
 use super::supply::{Supply, circulant, held_volts, sequence_impedance};
@@ -205,7 +206,7 @@ impl Builder<'_> {
             Some(Stay { place, siemens: earth.reference_siemens, on: earth.on })
         });
         let stays = stays.collect();
-        let (loads, capacitors) = self.shunts(joined, &new_node, &parts);
+        let (loads, capacitor_banks) = self.shunts(joined, &new_node, &parts);
         let motors = self.motors(joined, &new_node);
         let study = self.draft.study.clone();
         let Branches { branches, constructions, .. } = parts;
@@ -216,7 +217,8 @@ impl Builder<'_> {
             branches,
             constructions,
             loads,
-            capacitors,
+            capacitors: CapacitorBank::in_service(&capacitor_banks),
+            capacitor_banks,
             motors,
             feeds,
             order,

@@ -241,6 +241,33 @@ pub enum Across {
     Phase(super::conductor::Conductor),
 }
 
+/// How the phases of one row move.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
+pub enum BankMode {
+    /// Each by its own control.
+    #[default]
+    Each,
+    /// All by the control of this phase.
+    Gang(super::conductor::Conductor),
+}
+
+/// What a control does while power flows from the regulated side to the source side.
+#[derive(Debug, Clone, Copy, PartialEq, Default)]
+pub enum ReverseFlow {
+    /// It stays where it is.
+    #[default]
+    Hold,
+    /// It goes to neutral.
+    Neutral,
+    /// It regulates the source side, without compensation.
+    Regulate {
+        /// Voltage held at the relay then, volts.
+        set_volts: f64,
+    },
+    /// It goes on as if power flowed forward.
+    Ignore,
+}
+
 /// Line-drop compensation and set point of an automatic regulator, as on its panel.
 #[derive(Debug, Clone, Copy, PartialEq, Default)]
 pub struct RegulatorControl {
@@ -256,6 +283,12 @@ pub struct RegulatorControl {
     pub r_volts: f64,
     /// Compensator reactance setting, volts at rated current.
     pub x_volts: f64,
+    /// Highest voltage at the regulator's own terminals, for the first customer, volts at the relay.
+    pub limit_volts: Option<f64>,
+    /// How the phases of the row move.
+    pub mode: BankMode,
+    /// What the control does when power flows backwards.
+    pub reverse: ReverseFlow,
 }
 
 /// One row of `regulators.csv`.
@@ -313,6 +346,52 @@ pub struct LoadRecord {
     pub origin: Option<Origin>,
 }
 
+/// What switches a capacitor.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub enum CapacitorControl {
+    /// Nothing: it stays as written.
+    #[default]
+    Fixed,
+    /// Voltage at its node: on below `on_volts`, off above `off_volts`, both at the relay.
+    Voltage {
+        /// Switches on below this, volts at the relay.
+        on_volts: f64,
+        /// Switches off above this, volts at the relay.
+        off_volts: f64,
+        /// Ratio of the potential transformer; 1 for none.
+        pt_ratio: f64,
+        /// One phase (to the neutral, or to earth without one) or two (across).
+        across: Connection,
+    },
+    /// Reactive power into a line at its source end: on above `on_vars`, off below `off_vars`.
+    Kvar {
+        /// Switches on above this, vars.
+        on_vars: f64,
+        /// Switches off below this, vars.
+        off_vars: f64,
+        /// Where it is measured.
+        sense: Sense,
+    },
+    /// Current in a line at its source end: on above `on_amps`, off below `off_amps`.
+    Current {
+        /// Switches on above this, amperes.
+        on_amps: f64,
+        /// Switches off below this, amperes.
+        off_amps: f64,
+        /// Where it is measured.
+        sense: Sense,
+    },
+}
+
+/// Where a capacitor's control measures.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Sense {
+    /// Line.
+    pub line: Name,
+    /// Phases: their reactive powers are added up, of their currents the greatest counts.
+    pub phases: Conductors,
+}
+
 /// One row of `motors.csv`, its circuit found.
 #[derive(Debug, Clone)]
 pub struct MotorRecord {
@@ -353,8 +432,12 @@ pub struct CapacitorRecord {
     pub vars: f64,
     /// Rated voltage across each unit, volts; `None`: the node's nominal.
     pub rated_volts: Option<f64>,
-    /// Closed or open.
+    /// Closed or open; of a switched one the state it is found in.
     pub state: SwitchState,
+    /// What switches it.
+    pub control: CapacitorControl,
+    /// Delay of the control, seconds: of several that would switch the shortest goes first.
+    pub delay_s: f64,
     /// Where it was written.
     pub origin: Option<Origin>,
 }

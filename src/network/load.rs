@@ -1,7 +1,7 @@
 //! Loads and how they change with voltage; capacitors.
 
-use super::conductor::Connection;
-use super::draft::Name;
+use super::conductor::{Conductors, Connection};
+use super::draft::{Name, SwitchState};
 use super::model::{BranchId, NodeId};
 
 /// How the power of a load changes with the voltage across it.
@@ -79,4 +79,64 @@ pub struct Capacitor {
     pub vars: f64,
     /// Rated voltage across each unit, volts.
     pub rated_volts: f64,
+}
+
+/// What switches a capacitor of the network.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub enum CapacitorSwitch {
+    /// Nothing.
+    Fixed,
+    /// Voltage at its node, see [`super::CapacitorControl::Voltage`].
+    Voltage {
+        /// Switches on below this, volts at the relay.
+        on_volts: f64,
+        /// Switches off above this, volts at the relay.
+        off_volts: f64,
+        /// Ratio of the potential transformer.
+        pt_ratio: f64,
+        /// Between which conductors it measures: one pair.
+        across: Connection,
+    },
+    /// Reactive power into a line at its source end.
+    Kvar {
+        /// Switches on above this, vars.
+        on_vars: f64,
+        /// Switches off below this, vars.
+        off_vars: f64,
+        /// Line.
+        line: BranchId,
+        /// Phases added up.
+        phases: Conductors,
+    },
+    /// Current in a line at its source end.
+    Current {
+        /// Switches on above this, amperes.
+        on_amps: f64,
+        /// Switches off below this, amperes.
+        off_amps: f64,
+        /// Line.
+        line: BranchId,
+        /// Phases of which the greatest current counts.
+        phases: Conductors,
+    },
+}
+
+/// A capacitor of the network, in service or not.
+#[derive(Debug, Clone)]
+pub struct CapacitorBank {
+    /// What it is.
+    pub capacitor: Capacitor,
+    /// Closed: in service.
+    pub state: SwitchState,
+    /// What switches it.
+    pub switch: CapacitorSwitch,
+    /// Delay of its control, seconds.
+    pub delay_s: f64,
+}
+
+impl CapacitorBank {
+    /// The capacitors of the closed banks.
+    pub(super) fn in_service(banks: &[CapacitorBank]) -> Vec<Capacitor> {
+        banks.iter().filter(|b| b.state == SwitchState::Closed).map(|b| b.capacitor.clone()).collect()
+    }
 }

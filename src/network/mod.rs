@@ -3,6 +3,7 @@
 
 mod branches;
 mod build;
+mod capacitors;
 mod carry;
 mod conductor;
 mod draft;
@@ -24,11 +25,11 @@ mod validate;
 pub use build::{Built, build};
 pub use conductor::{Conductor, Conductors, Connection};
 pub use draft::{
-    Across, CapacitorRecord, Construction, Draft, FaultLevel, LineRecord, LoadRecord, LoadSite, MotorRecord,
-    Name, NodeRecord, RegulatorControl, RegulatorRecord, SupplyRecord, SwitchRecord, SwitchState,
-    TransformerRecord, Unread,
+    Across, BankMode, CapacitorControl, CapacitorRecord, Construction, Draft, FaultLevel, LineRecord,
+    LoadRecord, LoadSite, MotorRecord, Name, NodeRecord, RegulatorControl, RegulatorRecord, ReverseFlow,
+    Sense, SupplyRecord, SwitchRecord, SwitchState, TransformerRecord, Unread,
 };
-pub use load::{Capacitor, Load, LoadModel, LoadPlace};
+pub use load::{Capacitor, CapacitorBank, CapacitorSwitch, Load, LoadModel, LoadPlace};
 pub use model::{
     Branch, BranchId, BranchKind, ConstructionId, End, Feed, Line, Network, Node, NodeId, SOLID_EARTH_OHM,
     Stay, StayPlace, Tie,

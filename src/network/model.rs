@@ -6,8 +6,8 @@
 //! conductors both its nodes have; impedances are positive; names are unique a kind.
 
 use super::conductor::{Conductor, Conductors, Connection};
-use super::draft::{Construction, Name};
-use super::load::{Capacitor, Load, LoadPlace};
+use super::draft::{Construction, Name, SwitchState};
+use super::load::{Capacitor, CapacitorBank, Load, LoadPlace};
 use super::motor::Motor;
 use super::regulator::Regulator;
 use super::study::Study;
@@ -224,8 +224,10 @@ pub struct Network {
     pub constructions: Vec<Construction>,
     /// Loads.
     pub loads: Vec<Load>,
-    /// Capacitors in service.
+    /// Capacitors in service: the closed ones of `capacitor_banks`.
     pub capacitors: Vec<Capacitor>,
+    /// Every capacitor with what switches it.
+    pub capacitor_banks: Vec<CapacitorBank>,
     /// Motors.
     pub motors: Vec<Motor>,
     /// How each node is fed; `None` only for the supply node.
@@ -301,6 +303,14 @@ impl Network {
             (node.reference_siemens, node.reference_on) = (stay.siemens, stay.on);
         }
         opened
+    }
+
+    /// Closes or opens a capacitor bank; one that is not there changes nothing.
+    pub fn switch_capacitor(&mut self, bank: usize, state: SwitchState) {
+        if let Some(bank) = self.capacitor_banks.get_mut(bank) {
+            bank.state = state;
+        }
+        self.capacitors = CapacitorBank::in_service(&self.capacitor_banks);
     }
 
     /// Nodes where a load draws, each with its share of the load.

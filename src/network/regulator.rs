@@ -11,6 +11,8 @@ pub enum TapMode {
     Held,
     /// The unit's control, from its settings.
     Automatic,
+    /// The control of this phase's unit: it stands on the same tap.
+    Follows(Conductor),
 }
 
 /// One regulated phase of a bank.
@@ -53,6 +55,8 @@ impl Regulator {
     ///
     /// A unit on phase k against conductor m gives `V_to,k - V_to,m = ratio (V_from,k - V_from,m)`,
     /// and m goes straight through; against earth the terms in m vanish (`neutral_carried` false).
+    /// In a closed delta no phase goes straight through: each series winding, fed by the voltage
+    /// across k and m on the source side, adds `(ratio - 1)(V_from,k - V_from,m)` to phase k.
     pub fn ratio_matrix(&self, neutral_carried: bool) -> PhaseMatrix {
         let mut matrix = PhaseMatrix::identity();
         for unit in &self.units {

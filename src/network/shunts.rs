@@ -1,12 +1,12 @@
-//! Loads and capacitors of the network from the records of the draft, each checked against its node.
+//! Loads of the network from the records of the draft, each checked against its node.
 
 use super::branches::Branches;
 use super::build::{Builder, Joined};
 use super::conductor::{Conductors, Connection};
-use super::draft::{LoadSite, SwitchState};
+use super::draft::LoadSite;
 use super::graph::place;
-use super::load::{Capacitor, Load, LoadPlace};
-use super::model::{NodeId, nominal_phase_volts};
+use super::load::{CapacitorBank, Load, LoadPlace};
+use super::model::NodeId;
 use super::motor::Motor;
 use crate::diagnostic::{Code, Origin, nearest};
 
@@ -16,7 +16,7 @@ impl Builder<'_> {
         joined: &Joined,
         new_node: &[Option<NodeId>],
         parts: &Branches,
-    ) -> (Vec<Load>, Vec<Capacitor>) {
+    ) -> (Vec<Load>, Vec<CapacitorBank>) {
         let mut loads = Vec::with_capacity(self.draft.loads.len());
         for record in &self.draft.loads {
             let origin = record.origin;
@@ -42,7 +42,7 @@ impl Builder<'_> {
                 model: record.model,
             });
         }
-        let capacitors = self.capacitors(joined, new_node);
+        let capacitors = self.capacitors(joined, new_node, parts);
         if loads.is_empty()
             && self.draft.motors.is_empty()
             && !self.diagnostics.has_errors()
@@ -56,45 +56,6 @@ impl Builder<'_> {
             );
         }
         (loads, capacitors)
-    }
-
-    fn capacitors(&mut self, joined: &Joined, new_node: &[Option<NodeId>]) -> Vec<Capacitor> {
-        let mut capacitors = Vec::new();
-        for record in &self.draft.capacitors {
-            let who = format!("capacitor {} is at", record.capacitor);
-            let Some(node) = self.shunt_node(joined, &record.node, &who, record.connection, record.origin)
-            else {
-                continue;
-            };
-            let (Some(id), SwitchState::Closed) = (new_node[node], record.state) else { continue };
-            let line_to_line = joined.carried.nominal_volts[node];
-            let nominal = match record.connection {
-                Connection::Star(_) => nominal_phase_volts(joined.carried.conductors[node], line_to_line),
-                Connection::Delta(_) => line_to_line,
-            };
-            let rated_volts = record.rated_volts.unwrap_or(nominal);
-            if !(0.75..=1.4).contains(&(rated_volts / nominal)) {
-                self.diagnostics.error(
-                    Code::VoltageMismatch,
-                    place(self.draft, record.origin, "kv", &(rated_volts / 1e3).to_string()),
-                    format!(
-                        "capacitor {} is rated {} kV across each unit, which is joined at {:.4} kV",
-                        record.capacitor,
-                        rated_volts / 1e3,
-                        nominal / 1e3
-                    ),
-                    "give the voltage across one unit: phase-to-neutral for a star, line-to-line for a delta",
-                );
-            }
-            capacitors.push(Capacitor {
-                name: record.capacitor.clone(),
-                node: id,
-                connection: record.connection,
-                vars: record.vars,
-                rated_volts,
-            });
-        }
-        capacitors
     }
 
     /// Motors, each at a node with all three phases and near its rated voltage.
@@ -138,7 +99,7 @@ impl Builder<'_> {
     }
 
     /// The graph node of a load or capacitor, its conductors checked; `None` where it cannot be placed.
-    fn shunt_node(
+    pub(super) fn shunt_node(
         &mut self,
         joined: &Joined,
         name: &str,

@@ -14,20 +14,24 @@ mod lanes;
 mod motors;
 mod ports;
 mod recover;
+mod relay;
 mod residual;
 mod settings;
 mod solution;
 mod sweep;
+mod switching;
 mod terminals;
 mod windings;
 mod workspace;
 
-pub use control::{RegulatedUnit, TapState, solve_regulated};
+pub use control::{Controls, RegulatedUnit, TapState, solve_controlled, solve_regulated};
 pub use motors::solve_running;
+pub use relay::PowerFlow;
 pub use residual::{Residual, load_current, residual};
 pub use settings::Settings;
 pub use solution::{Path, Solution, Status};
 pub use sweep::Iterations;
+pub use switching::{CapacitorState, SwitchedCapacitor};
 pub use workspace::Workspace;
 
 use crate::math::Complex64;

@@ -276,7 +276,30 @@ const CELLS: &[(&str, Files)] = &[
             "regulator,from,to,phases,across,tap_a\nR1,S,A,a,a,1\nR2,S,B,a,bc,1\nR3,S,C,a,x,1\nR1,S,D,a,b,1\n",
         )],
     ),
+    (
+        "regulator controls that do not fit together",
+        &[(
+            "regulators.csv",
+            "regulator,from,to,phases,set_v,band_v,pt_ratio,limit_v,mode,gang_phase,reverse,reverse_set_v,tap_a\n\
+         R1,S,A,abc,120,2,20,120.5,,,,,\nR2,S,B,abc,120,2,20,,gang,,,,\nR3,S,C,abc,120,2,20,,,a,,,\n\
+         R4,S,D,ab,120,2,20,,gang,c,,,\nR5,S,E,a,120,2,20,,gang,a,,,\nR6,S,F,abc,120,2,20,,gang,a,,,3\n\
+         R7,S,G,abc,120,2,20,,,,reverse,,\nR8,S,H,abc,120,2,20,,,,hold,119,\nR9,S,I,abc,120,2,20,,,,revers,118,\n\
+         R10,S,J,abc,120,2,20,0,bank,,,,\n",
+        )],
+    ),
     // Capacitors.
+    (
+        "capacitor controls that do not fit together",
+        &[(
+            "capacitors.csv",
+            "capacitor,node,phases,kvar,control,on_v,off_v,pt_ratio,on_kvar,off_kvar,on_a,off_a,sense_line,sense_phase,delay_s\n\
+         C1,A,an,10,,118,,,,,,,,,\nC2,A,an,10,voltage,118,118,,,,,,,,\nC3,A,an,10,voltage,124,118,,,,,,,,\n\
+         C4,A,abcn,10,voltage,118,124,,,,,,,,\nC5,A,an,10,voltage,118,,,,,,,,,\nC6,A,abc,10,kvar,,,,5,5,,,L1,,\n\
+         C7,A,abc,10,kvar,,,,10,,,,,,\nC8,A,abc,10,current,,,2,,,20,40,L1,,\nC9,A,an,10,current,,,,,,40,20,,a,30\n\
+         C10,A,an,10,profile,,,,,,,,,,\nC11,A,an,10,volts,,,,,,,,,,\nC12,A,an,10,fixed,,,,,,,,,,10\n\
+         C13,A,abcn,10,voltage,118,124,,,,,,,abn,\nC14,A,an,10,voltage,118,124,-2,,,,,L1,,-1\n",
+        )],
+    ),
     (
         "capacitor faults",
         &[(

@@ -312,6 +312,49 @@ const CASES: &[(&str, Files)] = &[
         "bank in both directions",
         &[regulators!("R1,A,B,a,n,1,,", "R2,B,A,b,n,,2,"), loads!("house,B,,an,5,1")],
     ),
+    (
+        "closed delta with a pair twice",
+        &[
+            ("regulators.csv", "regulator,from,to,phases,across,tap_a,tap_b\nR1,A,B,a,b,1,\nR2,A,B,b,a,,1\n"),
+            loads!("house,B,,an,5,1"),
+        ],
+    ),
+    // Controls of capacitors.
+    (
+        "capacitor switched by a line that is not there",
+        &[(
+            "capacitors.csv",
+            "capacitor,node,phases,kvar,control,on_kvar,off_kvar,sense_line\nC1,A,abc,10,kvar,20,5,L9\nC2,A,abc,10,kvar,20,5,l1\n",
+        )],
+    ),
+    (
+        "capacitor switched by an open line",
+        &[
+            lines!("L1,S,A,abcn,100,cable,", "L2,A,B,abcn,100,cable,open"),
+            (
+                "capacitors.csv",
+                "capacitor,node,phases,kvar,control,on_a,off_a,sense_line\nC1,A,abc,10,current,20,5,L2\n",
+            ),
+        ],
+    ),
+    (
+        "capacitor switched by a phase that is not carried",
+        &[
+            lines!("L1,S,A,an,100,service,"),
+            (
+                "capacitors.csv",
+                "capacitor,node,phases,kvar,control,on_a,off_a,on_v,off_v,sense_line,sense_phase\n\
+                 C1,A,an,1,current,20,5,,,L1,b\nC2,A,an,1,voltage,,,220,240,,c\n",
+            ),
+        ],
+    ),
+    (
+        "capacitor thresholds on another base",
+        &[(
+            "capacitors.csv",
+            "capacitor,node,phases,kvar,control,on_v,off_v,pt_ratio\nC1,A,an,1,voltage,118,124,20\n",
+        )],
+    ),
     // Nothing to do.
     ("no load", &[loads!()]),
     ("nothing but a source", &[("lines.csv", "line,from,to,phases,length_m,construction\n"), loads!()]),

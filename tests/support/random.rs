@@ -5,9 +5,9 @@
 
 use fourwire::math::{Complex64, PhaseMatrix};
 use fourwire::network::{
-    Across, CapacitorRecord, Conductor, Conductors, Connection, Construction, Draft, FaultLevel, LineRecord,
-    LoadModel, LoadRecord, LoadSite, NodeRecord, RegulatorControl, RegulatorRecord, SupplyRecord,
-    SwitchRecord, SwitchState, TransformerRecord, VectorGroup, Winding,
+    Across, CapacitorControl, CapacitorRecord, Conductor, Conductors, Connection, Construction, Draft,
+    FaultLevel, LineRecord, LoadModel, LoadRecord, LoadSite, NodeRecord, RegulatorControl, RegulatorRecord,
+    SupplyRecord, SwitchRecord, SwitchState, TransformerRecord, VectorGroup, Winding,
 };
 use rand::rngs::StdRng;
 use rand::{RngExt, SeedableRng};
@@ -594,6 +594,8 @@ impl Grower {
             vars,
             rated_volts: None,
             state: SwitchState::Closed,
+            control: CapacitorControl::Fixed,
+            delay_s: 0.0,
             origin: None,
         });
     }

@@ -42,7 +42,7 @@ pub fn flow_csv(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
     list(
         folder,
         "regulators.csv",
-        &["regulator", "phase", "tap", "automatic", "at_limit"],
+        &["regulator", "phase", "tap", "automatic", "at_limit", "state", "why"],
         &report.regulators,
         |r| {
             vec![
@@ -51,9 +51,12 @@ pub fn flow_csv(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
                 Field::Whole(i64::from(r.tap)),
                 Field::Flag(r.automatic),
                 Field::Flag(r.at_limit),
+                Field::Text(r.state),
+                Field::Text(&r.why),
             ]
         },
     )?;
+    capacitors(report, folder)?;
     list(
         folder,
         "loads.csv",
@@ -178,6 +181,21 @@ fn motors(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
     })
 }
 
+/// Not `capacitors.csv`: a folder with a file of that name is taken for a network.
+fn capacitors(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
+    let columns = ["capacitor", "node", "state", "control", "hunting", "why"];
+    list(folder, "capacitor_states.csv", &columns, &report.capacitors, |r| {
+        vec![
+            Field::Text(&r.capacitor),
+            Field::Text(&r.node),
+            Field::Text(r.state),
+            Field::Text(r.control),
+            Field::Flag(r.hunting),
+            Field::Text(&r.why),
+        ]
+    })
+}
+
 fn electrodes(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
     let columns = ["node", "transformer", "r_ohm", "x_ohm", "amps", "volts"];
     list(folder, "electrodes.csv", &columns, &report.electrodes, |r| {
@@ -214,6 +232,7 @@ fn totals(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
         ("network", Field::Text(&report.network)),
         ("input_sha256", Field::Text(&report.input_sha256)),
         ("converged", Field::Flag(report.converged)),
+        ("controls_settled", Field::Flag(report.controls_settled)),
         ("iterations", Field::Number(report.iterations as f64)),
         ("mismatch_a", Field::Number(report.mismatch_a)),
         ("source_kw", Field::Number(t.source_kw)),

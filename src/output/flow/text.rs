@@ -1,6 +1,5 @@
 //! The terminal page of `flow`: the answer at a glance, findings, then tables.
 
-use std::collections::HashMap;
 use std::fmt::Write as _;
 
 use super::findings::findings;
@@ -8,7 +7,7 @@ use crate::math::{SLOTS, degrees};
 use crate::network::{BranchKind, Conductor, Network, NodeId};
 use crate::output::table::{Cell, Colour, Column, Table, folded, number, printable};
 use crate::solver::Solution;
-use crate::study::flow::{Electrode, Extreme, FlowReport, lowest_judged};
+use crate::study::flow::{Electrode, Extreme, FlowReport, RegulatorTap, lowest_judged};
 
 /// How much of the tables is shown.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -46,6 +45,7 @@ pub fn flow_text(
     branches(&mut text, network, solution, report, length);
     regulators(&mut text, report);
     motors(&mut text, report);
+    capacitors(&mut text, report);
     electrodes(&mut text, report, length);
     text
 }
@@ -137,6 +137,19 @@ fn head(text: &mut String, report: &FlowReport) {
         if report.iterations == 1 { "" } else { "s" },
         report.mismatch_a
     );
+    if !report.controls_settled {
+        let hunts = report.regulators.iter().filter(|r| r.state == "hunting");
+        let regulators = hunts.map(|r| format!("regulator {}, {}", r.regulator, r.phase));
+        let hunts = report.capacitors.iter().filter(|c| c.hunting);
+        let names: Vec<String> =
+            regulators.chain(hunts.map(|c| format!("capacitor {}", c.capacitor))).collect();
+        let warning = format!(
+            "NOT SETTLED, hunting: {}. The numbers are of one state among several passed through without end.",
+            names.join("; ")
+        );
+        text.push_str(&folded("", &warning));
+        text.push('\n');
+    }
 }
 
 fn totals(text: &mut String, report: &FlowReport) {
@@ -320,23 +333,53 @@ fn regulators(text: &mut String, report: &FlowReport) {
     if report.regulators.is_empty() {
         return;
     }
-    let mut taps: HashMap<&str, String> = HashMap::new();
-    let mut names: Vec<&str> = Vec::new();
-    for r in &report.regulators {
-        let entry = taps.entry(&r.regulator).or_insert_with(|| {
-            names.push(&r.regulator);
-            String::new()
-        });
-        let how = match (r.automatic, r.at_limit) {
-            (false, _) => "held",
-            (true, false) => "automatic",
-            (true, true) => "automatic, at its limit",
-        };
-        let _ = write!(entry, "  {} {:+} ({how})", r.phase, r.tap);
-    }
     let _ = writeln!(text, "Regulator taps");
-    for name in names {
-        text.push_str(&folded("  ", &format!("{}:{}", printable(name), taps[name])));
+    let mut last: Option<&RegulatorTap> = None;
+    let mut line = String::new();
+    for r in &report.regulators {
+        if r.state == "held" {
+            // Held taps of one regulator on one line.
+            match last.filter(|l| l.regulator == r.regulator && l.state == "held") {
+                Some(_) => {}
+                None => {
+                    flush(text, &mut line);
+                    let _ = write!(line, "{}:", printable(&r.regulator));
+                }
+            }
+            let _ = write!(line, "  {} {:+} (held)", r.phase, r.tap);
+        } else {
+            flush(text, &mut line);
+            let name = printable(&r.regulator);
+            let _ = write!(line, "{name}, {}: {:+}, {}; {}", r.phase, r.tap, r.state, r.why);
+        }
+        last = Some(r);
+    }
+    flush(text, &mut line);
+    text.push('\n');
+}
+
+/// Capacitors with a control, and those that are open.
+fn capacitors(text: &mut String, report: &FlowReport) {
+    let told = || report.capacitors.iter().filter(|c| c.control != "fixed" || c.state == "open");
+    if told().next().is_none() {
+        return;
+    }
+    let fixed = report.capacitors.len() - told().count();
+    let _ = writeln!(
+        text,
+        "Capacitors{}",
+        if fixed > 0 { format!(", besides {fixed} closed and fixed") } else { String::new() }
+    );
+    for c in told() {
+        let line = format!("{} at {}: {} ({} control); {}", c.capacitor, c.node, c.state, c.control, c.why);
+        text.push_str(&folded("  ", &line));
     }
     text.push('\n');
+}
+
+fn flush(text: &mut String, line: &mut String) {
+    if !line.is_empty() {
+        text.push_str(&folded("  ", line));
+        line.clear();
+    }
 }

@@ -2,11 +2,12 @@
 
 use serde::Serialize;
 
+use super::controls::{why, why_switched};
 use super::losses::Totals;
 use super::places::{drop_percent, floating_nodes, judged, set_points};
 use super::{Electrode, ElementLoss, LoadDraw, MotorRun, NodeSummary};
 use crate::network::{BranchKind, Network, weak_star_points};
-use crate::solver::{Path, RegulatedUnit, Solution, TapState};
+use crate::solver::{CapacitorState, Controls, Path, Solution, TapState};
 
 /// Conventional limit of touch voltage in normal dry conditions, volts AC (IEC 60364-4-41; from memory).
 const TOUCH_VOLTAGE_V: f64 = 50.0;
@@ -69,12 +70,15 @@ pub enum Rule {
     /// Constant-power load below the floor voltage.
     #[serde(rename = "load below floor")]
     BelowFloor,
-    /// Regulator at the end of its range, hunting, or fed backwards.
+    /// Regulator outside its band: at a limit, hunting, or fed backwards.
     #[serde(rename = "regulator")]
     Regulator,
     /// Motor beyond what unbalance leaves of its rating, or beyond its full-load current.
     #[serde(rename = "motor")]
     Motor,
+    /// Switched capacitor that hunts.
+    #[serde(rename = "capacitor")]
+    Capacitor,
     /// Voltages that are those after a collapse.
     #[serde(rename = "voltage collapse")]
     Collapse,
@@ -103,6 +107,7 @@ impl Rule {
             Rule::BelowFloor => "load below floor",
             Rule::Regulator => "regulator",
             Rule::Motor => "motor",
+            Rule::Capacitor => "capacitor",
             Rule::Collapse => "voltage collapse",
             Rule::NoEarth => "no earth",
             Rule::StarPoint => "weak star point",
@@ -138,7 +143,7 @@ pub(super) struct Seen<'a> {
     pub elements: &'a [ElementLoss],
     pub nodes: &'a [NodeSummary],
     pub loads: &'a [LoadDraw],
-    pub units: &'a [RegulatedUnit],
+    pub controls: &'a Controls,
     pub totals: &'a Totals,
 }
 
@@ -150,6 +155,7 @@ pub(super) fn all(seen: &Seen) -> Vec<Finding> {
     overloads(seen, &mut found);
     below_floor(seen, &mut found);
     regulators(seen, &mut found);
+    capacitors(seen, &mut found);
     unearthed(seen, &mut found);
     star_points(seen, &mut found);
     motors(seen, &mut found);
@@ -308,21 +314,22 @@ fn below_floor(seen: &Seen, found: &mut Vec<Finding>) {
 
 /// Regulators that could not hold their band.
 fn regulators(seen: &Seen, found: &mut Vec<Finding>) {
-    for unit in seen.units {
-        let word = match unit.state {
-            TapState::Settled => continue,
-            TapState::AtLimit => "at the end of its range and still outside its band",
-            TapState::Hunting => "hunts: no tap holds it within its band",
-            TapState::Reversed => "is fed at its regulated side; its tap was held",
-        };
-        let branch = seen.network.branch(unit.branch);
-        let phase = match &branch.kind {
-            BranchKind::Regulator(bank) => bank.units.get(unit.unit).map_or("", |u| u.phase.letter()),
-            _ => "",
-        };
-        let text = format!("{word} ({:.2} V at its relay)", unit.relay_volts);
-        let place = format!("regulator {}, {phase}", branch.name);
-        found.push(warning(Rule::Regulator, place, unit.relay_volts, None, text));
+    for ended in seen.controls.units.iter().filter(|u| u.state != TapState::Settled) {
+        let branch = seen.network.branch(ended.branch);
+        let BranchKind::Regulator(bank) = &branch.kind else { continue };
+        let Some(unit) = bank.units.get(ended.unit) else { continue };
+        let place = format!("regulator {}, {}", unit.name, unit.phase.letter());
+        found.push(warning(Rule::Regulator, place, ended.relay_volts, None, why(unit, ended)));
+    }
+}
+
+/// Capacitors that switch on and off without end.
+fn capacitors(seen: &Seen, found: &mut Vec<Finding>) {
+    for ended in seen.controls.capacitors.iter().filter(|c| c.state == CapacitorState::Hunting) {
+        let Some(bank) = seen.network.capacitor_banks.get(ended.bank) else { continue };
+        let place = format!("capacitor {}", bank.capacitor.name);
+        let text = why_switched(seen.network, bank, Some(ended));
+        found.push(warning(Rule::Capacitor, place, ended.reading, None, text));
     }
 }
 

@@ -3,6 +3,7 @@
 //! [`FlowReport`] is the result record of `flow`: its fields and their names are those of the
 //! result files. Voltages are to remote earth, currents positive from `from` to `to` at both ends.
 
+mod controls;
 mod electrodes;
 mod findings;
 mod losses;
@@ -12,9 +13,10 @@ mod places;
 use serde::Serialize;
 
 use crate::math::{Complex64, PhaseVector, degrees, unbalance_factor};
-use crate::network::{BranchKind, Conductor, Conductors, LoadPlace, Name, Network, Node, NodeId, TapMode};
-use crate::solver::{RegulatedUnit, Solution, Status, TapState, load_current};
+use crate::network::{Conductor, Conductors, LoadPlace, Name, Network, Node, NodeId};
+use crate::solver::{Controls, RegulatedUnit, Solution, Status, load_current};
 
+pub use controls::{CapacitorStatus, RegulatorTap};
 pub use electrodes::Electrode;
 pub use findings::{Finding, FindingSeverity, Rule};
 pub use losses::Totals;
@@ -96,21 +98,6 @@ pub struct SourceConductor {
     pub degrees: f64,
 }
 
-/// Tap of one regulator phase.
-#[derive(Debug, Clone, PartialEq, Serialize)]
-pub struct RegulatorTap {
-    /// Regulator.
-    pub regulator: Name,
-    /// Phase letter.
-    pub phase: &'static str,
-    /// Tap, steps.
-    pub tap: i32,
-    /// True where the control set it.
-    pub automatic: bool,
-    /// True where it stands at the end of its range.
-    pub at_limit: bool,
-}
-
 /// What one load draws at the solved voltages.
 #[derive(Debug, Clone, PartialEq, Serialize)]
 pub struct LoadDraw {
@@ -155,8 +142,12 @@ pub struct FlowReport {
     pub source: Vec<SourceConductor>,
     /// Totals.
     pub totals: Totals,
+    /// False where a regulator or capacitor hunts: the state shown is one of several it passes through.
+    pub controls_settled: bool,
     /// Regulator taps.
     pub regulators: Vec<RegulatorTap>,
+    /// Capacitors.
+    pub capacitors: Vec<CapacitorStatus>,
     /// Loads as drawn.
     pub loads: Vec<LoadDraw>,
     /// Running motors.
@@ -180,6 +171,17 @@ impl FlowReport {
         units: &[RegulatedUnit],
         input_sha256: &str,
     ) -> Option<FlowReport> {
+        let controls = Controls { units: units.to_vec(), capacitors: Vec::new() };
+        FlowReport::controlled(network, solution, &controls, input_sha256)
+    }
+
+    /// As [`FlowReport::new`], with how the switched capacitors ended too.
+    pub fn controlled(
+        network: &Network,
+        solution: &Solution,
+        controls: &Controls,
+        input_sha256: &str,
+    ) -> Option<FlowReport> {
         if solution.status != Status::Converged {
             return None;
         }
@@ -189,7 +191,7 @@ impl FlowReport {
         let motors = motors::motors(network, solution);
         let totals = losses::totals(network, solution, &elements, &loads, &motors);
         let nodes_summary = nodes_summary(network, solution);
-        let regulators = regulators(network, units);
+        let regulators = controls::regulators(network, &controls.units);
         let glance = places::glance(network, solution, &elements, &nodes_summary);
         let seen = findings::Seen {
             electrodes: &electrodes,
@@ -199,7 +201,7 @@ impl FlowReport {
             elements: &elements,
             nodes: &nodes_summary,
             loads: &loads,
-            units,
+            controls,
             totals: &totals,
         };
         let findings = findings::all(&seen);
@@ -216,7 +218,9 @@ impl FlowReport {
             nodes_summary,
             source: source(network, solution),
             totals,
+            controls_settled: controls::settled(controls),
             regulators,
+            capacitors: controls::capacitors(network, &controls.capacitors),
             loads,
             motors,
             electrodes,
@@ -317,24 +321,6 @@ fn source(network: &Network, solution: &Solution) -> Vec<SourceConductor> {
         }
     };
     network.node(id).conductors.iter().map(row).collect()
-}
-
-fn regulators(network: &Network, units: &[RegulatedUnit]) -> Vec<RegulatorTap> {
-    let mut rows = Vec::new();
-    for (b, branch) in network.branches.iter().enumerate() {
-        let BranchKind::Regulator(bank) = &branch.kind else { continue };
-        for (u, unit) in bank.units.iter().enumerate() {
-            let ended = units.iter().find(|r| r.branch.index() == b && r.unit == u);
-            rows.push(RegulatorTap {
-                regulator: unit.name.clone(),
-                phase: unit.phase.letter(),
-                tap: unit.tap,
-                automatic: unit.mode == TapMode::Automatic,
-                at_limit: ended.is_some_and(|r| r.state == TapState::AtLimit),
-            });
-        }
-    }
-    rows
 }
 
 fn loads(network: &Network, solution: &Solution) -> Vec<LoadDraw> {
