@@ -8,15 +8,15 @@ use sha2::{Digest, Sha256};
 use super::constructions::DescribedConstruction;
 use super::text::decode;
 use super::{
-    Intake, Reading, capacitors, constructions, lines, loads, matrices, nodes, place_of_file, regulators,
-    source, study, switches, transformers, unsupported,
+    Intake, Reading, capacitors, constructions, lines, loads, matrices, meters, nodes, place_of_file,
+    regulators, source, study, switches, transformers, unsupported,
 };
 use crate::catalog::Catalog;
 use crate::diagnostic::{Code, Diagnostics, FileId, SourceFile, nearest};
 use crate::network::Draft;
 
 /// Files of the format, in the order they are read and reported.
-const KNOWN: [&str; 15] = [
+const KNOWN: [&str; 16] = [
     "study.csv",
     "source.csv",
     "nodes.csv",
@@ -32,6 +32,7 @@ const KNOWN: [&str; 15] = [
     "capacitors.csv",
     "motors.csv",
     "profiles.csv",
+    "meters.csv",
 ];
 
 /// Endings of files people save instead of CSV.
@@ -228,7 +229,7 @@ fn fill(
         }
     }
     let [study, source, nodes, conductors, spacings, constructions, matrices, rest @ ..] = ids;
-    let [lines, switches, transformers, regulators, loads, capacitors, motors, profiles] = rest;
+    let [lines, switches, transformers, regulators, loads, capacitors, motors, profiles, meters] = rest;
     let mut draft = Draft {
         study: with(intake, study, study::read),
         supplies: with(intake, source, source::read),
@@ -243,8 +244,9 @@ fn fill(
     draft.switches = with(intake, switches, switches::read);
     draft.transformers = with(intake, transformers, transformers::read);
     draft.regulators = with(intake, regulators, regulators::read);
-    draft.loads = with(intake, loads, loads::read);
+    (draft.loads, draft.shares) = with(intake, loads, loads::read);
     draft.capacitors = with(intake, capacitors, capacitors::read);
+    draft.meters = with(intake, meters, meters::read);
     with(intake, motors, unsupported::motors);
     with(intake, profiles, unsupported::profiles);
     draft.sources = std::mem::take(&mut intake.sources);

@@ -12,6 +12,7 @@ mod header;
 mod lines;
 mod loads;
 mod matrices;
+mod meters;
 mod names;
 mod nodes;
 mod number;

@@ -5,6 +5,7 @@ use super::carry::{Carried, carry};
 use super::draft::Draft;
 use super::earth::{Given, SideEarth, sides};
 use super::graph::{Graph, Tree, grow, place, report_isolated_switches, report_unfed};
+use super::metering::Metered;
 use super::model::{BranchId, Feed, Network, Node, NodeId, SOLID_EARTH_OHM};
 use super::supply::{Supply, circulant, held_volts, sequence_impedance};
 use super::validate;
@@ -171,11 +172,30 @@ impl Builder<'_> {
         let parts = self.branches(joined, &new_node)?;
         let supply = self.supply(new_node[0]?)?;
         let feeds = feeds(tree, &new_node, &parts.new_branch, nodes.len());
-        let order = tree.order.iter().filter_map(|&n| new_node[n]).collect();
+        let order: Vec<NodeId> = tree.order.iter().filter_map(|&n| new_node[n]).collect();
         let (loads, capacitors) = self.shunts(joined, &new_node, &parts);
+        let (loads, meters) = self.meters(Metered {
+            joined,
+            parts: &parts,
+            new_node: &new_node,
+            feeds: &feeds,
+            order: &order,
+            loads,
+        });
         let study = self.draft.study.clone();
         let Branches { branches, constructions, .. } = parts;
-        Some(Network { study, supply, nodes, branches, constructions, loads, capacitors, feeds, order })
+        Some(Network {
+            study,
+            supply,
+            nodes,
+            branches,
+            constructions,
+            loads,
+            capacitors,
+            meters,
+            feeds,
+            order,
+        })
     }
 
     fn supply(&self, node: NodeId) -> Option<Supply> {

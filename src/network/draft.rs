@@ -9,6 +9,7 @@ use std::sync::Arc;
 
 use super::conductor::{Conductors, Connection};
 use super::load::LoadModel;
+use super::meter::{MeterRecord, ShareRecord};
 use super::study::Study;
 use super::transformer::VectorGroup;
 use crate::diagnostic::{Origin, Sources};
@@ -42,6 +43,10 @@ pub struct Draft {
     pub loads: Vec<LoadRecord>,
     /// Capacitors.
     pub capacitors: Vec<CapacitorRecord>,
+    /// Meters: readings that loads with a share are allocated to meet.
+    pub meters: Vec<MeterRecord>,
+    /// Shares of loads, by their names.
+    pub shares: Vec<ShareRecord>,
 }
 
 /// Fault level of the supply, one kind of fault.

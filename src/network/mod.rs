@@ -9,6 +9,8 @@ mod draft;
 mod earth;
 mod graph;
 mod load;
+mod meter;
+mod metering;
 mod model;
 mod regulator;
 mod ring;
@@ -17,6 +19,7 @@ mod study;
 mod supply;
 mod transformer;
 mod validate;
+mod zone;
 
 pub use build::{Built, build};
 pub use conductor::{Conductor, Conductors, Connection};
@@ -26,6 +29,10 @@ pub use draft::{
     TransformerRecord,
 };
 pub use load::{Capacitor, Load, LoadModel, LoadPlace};
+pub use meter::{
+    Channel, Meter, MeterPlace, MeterRecord, MeterSite, ReactiveReading, Reading, Share, ShareBasis,
+    ShareRecord,
+};
 pub use model::{
     Branch, BranchId, BranchKind, ConstructionId, End, Feed, Line, Network, Node, NodeId, SOLID_EARTH_OHM,
 };

@@ -7,6 +7,7 @@
 use super::conductor::{Conductor, Conductors, Connection};
 use super::draft::{Construction, Name};
 use super::load::{Capacitor, Load, LoadPlace};
+use super::meter::Meter;
 use super::regulator::Regulator;
 use super::study::Study;
 use super::supply::Supply;
@@ -188,6 +189,8 @@ pub struct Network {
     pub loads: Vec<Load>,
     /// Capacitors in service.
     pub capacitors: Vec<Capacitor>,
+    /// Meters whose readings loads share; those loads draw nothing until they are allocated.
+    pub meters: Vec<Meter>,
     /// How each node is fed; `None` only for the supply node.
     pub feeds: Vec<Option<Feed>>,
     /// Nodes from the supply outwards, breadth first: a parent stands before its children.

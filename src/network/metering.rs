@@ -1,0 +1,423 @@
+//! Meters of the network from the records of the draft: where each reads, which loads share it.
+
+use std::collections::HashMap;
+
+use super::branches::Branches;
+use super::build::{Builder, Joined};
+use super::conductor::{Conductor, Connection};
+use super::draft::Name;
+use super::graph::place;
+use super::load::{Load, LoadModel, LoadPlace};
+use super::meter::{
+    Channel, Meter, MeterPlace, MeterRecord, MeterSite, ReactiveReading, Reading, Share, ShareBasis,
+    ShareRecord,
+};
+use super::model::{BranchId, End, Feed, NodeId};
+use super::zone::{Zones, phases_at};
+use crate::diagnostic::{Code, Origin, nearest};
+
+/// The parts of the network that meters are joined to.
+pub(super) struct Metered<'a> {
+    pub(super) joined: &'a Joined,
+    pub(super) parts: &'a Branches,
+    pub(super) new_node: &'a [Option<NodeId>],
+    pub(super) feeds: &'a [Option<Feed>],
+    pub(super) order: &'a [NodeId],
+    pub(super) loads: Vec<Load>,
+}
+
+impl Builder<'_> {
+    /// Meters with their loads; under a meter that reads each phase, loads on several phases come
+    /// back as one load a phase.
+    pub(super) fn meters(&mut self, network: Metered<'_>) -> (Vec<Load>, Vec<Meter>) {
+        if self.draft.meters.is_empty() && self.draft.shares.is_empty() {
+            return (network.loads, Vec::new());
+        }
+        let (mut meters, origins) = self.placed(&network);
+        let zones = Zones::new(network.parts, network.feeds, network.order, &mut meters);
+        let shares: HashMap<&str, &ShareRecord> = self.draft.shares.iter().map(|s| (&*s.load, s)).collect();
+        let splits = |load: &Load| {
+            shares.contains_key(&*load.name)
+                && zones.meter_of(load).is_some_and(|m| meters[m].channels.iter().all(|c| c.phase.is_some()))
+        };
+        let pieces = split(&network.loads, splits);
+        for (index, (load, share)) in pieces.iter().enumerate() {
+            let Some(record) = shares.get(&**share) else { continue };
+            match zones.meter_of(load) {
+                Some(meter) => self.join(&network, &zones, &mut meters, meter, record, (index, load)),
+                None => self.unmetered(record),
+            }
+        }
+        for (meter, origins) in origins.iter().enumerate() {
+            self.check_basis(&pieces, &zones, meter, &meters[meter].name, &shares);
+            for (channel, origin) in origins.iter().enumerate() {
+                self.check_channel(&shares, &pieces, &mut meters, (meter, channel), *origin);
+            }
+        }
+        self.check_remainders(&zones, &network, &pieces, &shares, &meters, &origins);
+        (pieces.into_iter().map(|(load, _)| load).collect(), meters)
+    }
+
+    /// Every meter at its place, without loads, and where each of its rows was written.
+    fn placed(&mut self, network: &Metered<'_>) -> (Vec<Meter>, Vec<Vec<Option<Origin>>>) {
+        let mut meters: Vec<Meter> = Vec::new();
+        let mut origins: Vec<Vec<Option<Origin>>> = Vec::new();
+        let mut known: HashMap<&str, Option<usize>> = HashMap::new();
+        let draft = self.draft;
+        for record in &draft.meters {
+            let index = match known.get(&*record.meter) {
+                Some(index) => *index,
+                None => {
+                    let index = self.meter_place(network, record).map(|place| {
+                        let name = record.meter.clone();
+                        meters.push(Meter { name, place, outer: None, channels: Vec::new() });
+                        origins.push(Vec::new());
+                        meters.len() - 1
+                    });
+                    known.insert(&record.meter, index);
+                    if let Some(index) = index {
+                        self.check_place_is_free(&meters, index, record);
+                    }
+                    index
+                }
+            };
+            let (Some(meter), Some(rows)) =
+                (index.and_then(|i| meters.get_mut(i)), index.and_then(|i| origins.get_mut(i)))
+            else {
+                continue;
+            };
+            let (reading, reactive) = (record.reading, record.reactive);
+            meter.channels.push(Channel { phase: record.phase, reading, reactive, shares: Vec::new() });
+            rows.push(record.origin);
+            self.check_phase(network, meter.place, record);
+        }
+        (meters, origins)
+    }
+
+    fn meter_place(&mut self, network: &Metered<'_>, record: &MeterRecord) -> Option<MeterPlace> {
+        let graph = &network.joined.graph;
+        let who = format!("meter {} is at", record.meter);
+        match &record.site {
+            MeterSite::Head => Some(MeterPlace::Head),
+            MeterSite::Node(name) => {
+                let Some(&node) = graph.index.get(name) else {
+                    self.unknown_node(graph, name, record.origin, &who);
+                    return None;
+                };
+                let Some(id) = network.new_node.get(node).copied().flatten() else {
+                    self.unfed_meter(record, "node", name);
+                    return None;
+                };
+                Some(network.feeds.get(id.index()).copied().flatten().map_or(MeterPlace::Head, |feed| {
+                    let end = if feed.upstream == End::From { End::To } else { End::From };
+                    MeterPlace::Branch { branch: feed.branch, end, upstream: feed.upstream }
+                }))
+            }
+            MeterSite::Line(name) => {
+                let Some(&raw) = network.parts.lines.get(name) else {
+                    self.unknown_line(network, record, name);
+                    return None;
+                };
+                let branch = network.parts.new_branch.get(raw).copied().flatten();
+                let feed = branch.and_then(|b| network.feeds.iter().flatten().find(|f| f.branch == b));
+                let Some(feed) = feed else {
+                    self.unfed_meter(record, "line", name);
+                    return None;
+                };
+                Some(MeterPlace::Branch { branch: feed.branch, end: End::From, upstream: feed.upstream })
+            }
+        }
+    }
+
+    fn unknown_line(&mut self, network: &Metered<'_>, record: &MeterRecord, name: &Name) {
+        let known = self.draft.lines.iter().any(|l| l.line == *name);
+        if known {
+            return self.unfed_meter(record, "line", name);
+        }
+        let cure = match nearest(name, network.parts.lines.keys().map(|n| &**n)) {
+            Some(near) => format!("did you mean {near:?}?"),
+            None => "give the name of a line in lines.csv, or a node".to_string(),
+        };
+        let message = format!("meter {} is at line {name:?}, which does not exist", record.meter);
+        self.diagnostics.error(
+            Code::UnknownLine,
+            place(self.draft, record.origin, "line", name),
+            message,
+            cure,
+        );
+    }
+
+    fn unfed_meter(&mut self, record: &MeterRecord, what: &str, name: &Name) {
+        self.diagnostics.error(
+            Code::MeterNotFed,
+            place(self.draft, record.origin, what, name),
+            format!("meter {} is at {what} {name}, which is not fed: it can read nothing", record.meter),
+            "close the switch or line that feeds it, or take the meter out",
+        );
+    }
+
+    fn check_place_is_free(&mut self, meters: &[Meter], index: usize, record: &MeterRecord) {
+        let same = |m: &&Meter| meters.get(index).is_some_and(|own| own.place == m.place);
+        let Some(other) = meters.iter().take(index).find(same) else { return };
+        self.diagnostics.error(
+            Code::Conflict,
+            place(self.draft, record.origin, "meter", &record.meter),
+            format!("meters {} and {} read at the same place", other.name, record.meter),
+            "keep one of them; rows for the phases of one meter share its name",
+        );
+    }
+
+    fn check_phase(&mut self, network: &Metered<'_>, at: MeterPlace, record: &MeterRecord) {
+        let Some(phase) = record.phase else { return };
+        let carried = match at {
+            MeterPlace::Head => network.joined.carried.conductors.first().copied().unwrap_or_default(),
+            MeterPlace::Branch { branch, end, .. } => match network.parts.branches.get(branch.index()) {
+                Some(b) if end == End::From => b.from_conductors,
+                Some(b) => b.to_conductors,
+                None => return,
+            },
+        };
+        if !carried.has(phase) {
+            self.diagnostics.error(
+                Code::PhaseNotCarried,
+                place(self.draft, record.origin, "phases", phase.letter()),
+                format!("meter {} reads phase {phase}, but only {carried} is carried there", record.meter),
+                "name a phase that is carried, or leave phases blank for the total",
+            );
+        }
+    }
+
+    /// Adds a load to the readings of its meter that it takes part in.
+    fn join(
+        &mut self,
+        network: &Metered<'_>,
+        zones: &Zones,
+        meters: &mut [Meter],
+        index: usize,
+        record: &ShareRecord,
+        (load, data): (usize, &Load),
+    ) {
+        let Some(meter) = meters.get_mut(index) else { return };
+        let share = |part: f64| Share { load, part: part * record.amount, ratio: record.ratio };
+        if let [Channel { phase: None, shares, .. }] = &mut meter.channels[..] {
+            shares.push(share(1.0));
+            return;
+        }
+        let phases = phases_at(network.parts, network.feeds, zones, index, data);
+        // A piece of a split load carries its part of the row's share.
+        let pieces = self.draft.loads.iter().find(|l| l.load == record.load);
+        let over = pieces.map_or(1, |l| l.connection.elements()).max(1) as f64;
+        for (phase, part) in phases {
+            match meter.channels.iter_mut().find(|c| c.phase == Some(phase)) {
+                Some(channel) => channel.shares.push(share(part / over)),
+                None => self.diagnostics.error(
+                    Code::NoReading,
+                    place(self.draft, record.origin, "load", &record.load),
+                    format!(
+                        "load {} takes part of its power from phase {phase}, which meter {} does not read",
+                        record.load, meter.name
+                    ),
+                    format!("add a row for phase {phase} of that meter, or give the load its kw"),
+                ),
+            }
+        }
+    }
+
+    fn unmetered(&mut self, record: &ShareRecord) {
+        let cure = if self.draft.meters.is_empty() {
+            "add meters.csv with the demand at the head of the feeder, or give the load its kw"
+        } else {
+            "add a meter between it and the source, or give the load its kw"
+        };
+        self.diagnostics.error(
+            Code::NoReading,
+            place(self.draft, record.origin, record.basis.column(), &record.amount.to_string()),
+            format!("load {} has a share, but no meter is between it and the source", record.load),
+            cure,
+        );
+    }
+
+    /// Amounts of different kinds cannot be added.
+    fn check_basis(
+        &mut self,
+        pieces: &[(Load, Name)],
+        zones: &Zones,
+        meter: usize,
+        name: &Name,
+        shares: &HashMap<&str, &ShareRecord>,
+    ) {
+        let mut first: Option<(ShareBasis, &Name)> = None;
+        for (load, owner) in pieces.iter().filter(|(l, _)| zones.meter_of(l) == Some(meter)) {
+            let Some(record) = shares.get(&**owner) else { continue };
+            let (basis, other) = *first.get_or_insert((record.basis, owner));
+            if basis != record.basis {
+                self.diagnostics.error(
+                    Code::Conflict,
+                    place(self.draft, record.origin, record.basis.column(), &record.amount.to_string()),
+                    format!(
+                        "loads {other} and {} share meter {name} by {} and by {}, which cannot be added",
+                        load.name,
+                        basis.column(),
+                        record.basis.column()
+                    ),
+                    "use one of the columns for all loads under a meter",
+                );
+                return;
+            }
+        }
+    }
+
+    /// A reading needs loads to share it, some of them with more than nothing, and power factors.
+    fn check_channel(
+        &mut self,
+        records: &HashMap<&str, &ShareRecord>,
+        pieces: &[(Load, Name)],
+        meters: &mut [Meter],
+        (meter, channel): (usize, usize),
+        origin: Option<Origin>,
+    ) {
+        let Some(m) = meters.get_mut(meter) else { return };
+        let name = m.name.clone();
+        let Some(c) = m.channels.get_mut(channel) else { return };
+        let what = c.phase.map_or(format!("meter {name}"), |p| format!("phase {p} of meter {name}"));
+        let at = place(self.draft, origin, "meter", &name);
+        let sum: f64 = c.shares.iter().map(|s| s.part).sum();
+        if c.shares.is_empty() {
+            let message = format!("no load shares {what}: nothing can be changed to meet it");
+            let cure = "give loads behind it (and behind no other meter) a share_kva, share_kwh or share_weight, or take the meter out";
+            self.diagnostics.error(Code::NoShare, at, message, cure);
+            return;
+        }
+        if sum <= 0.0 {
+            let message = format!("the shares of all loads behind {what} are zero");
+            self.diagnostics.error(
+                Code::NoShare,
+                at,
+                message,
+                "give at least one of them a share above zero",
+            );
+            return;
+        }
+        c.shares.iter_mut().for_each(|s| s.part /= sum);
+        let open = c.shares.iter().filter(|s| s.ratio.is_none() && s.part > 0.0).count();
+        if c.reactive == ReactiveReading::None {
+            for share in c.shares.iter().filter(|s| s.ratio.is_none()) {
+                let Some((_, owner)) = pieces.get(share.load) else { continue };
+                let origin = records.get(&**owner).and_then(|r| r.origin);
+                self.diagnostics.error(
+                    Code::MissingValue,
+                    place(self.draft, origin, "pf", ""),
+                    format!("neither load {owner} nor {what} has a power factor"),
+                    "fill in the pf of the load, or kvar or pf of the meter",
+                );
+            }
+        } else if open == 0 {
+            self.diagnostics.error(
+                Code::Conflict,
+                at,
+                format!(
+                    "{what} gives its reactive power, but every load behind it has a power factor of its own"
+                ),
+                "clear the pf of at least one load, or kvar and pf of the meter",
+            );
+        }
+    }
+
+    /// What is known to be drawn behind a meter must not exceed what it reads.
+    fn check_remainders(
+        &mut self,
+        zones: &Zones,
+        network: &Metered<'_>,
+        pieces: &[(Load, Name)],
+        shares: &HashMap<&str, &ShareRecord>,
+        meters: &[Meter],
+        origins: &[Vec<Option<Origin>>],
+    ) {
+        for (index, meter) in meters.iter().enumerate() {
+            for (channel, c) in meter.channels.iter().enumerate() {
+                let Reading::Watts(watts) = c.reading else { continue };
+                let fixed: f64 = pieces
+                    .iter()
+                    .filter(|(l, owner)| {
+                        zones.meter_of(l) == Some(index)
+                            && !shares.contains_key(&**owner)
+                            && l.model == LoadModel::Power
+                    })
+                    .map(|(l, _)| {
+                        let Some(phase) = c.phase else { return l.watts };
+                        let parts = phases_at(network.parts, network.feeds, zones, index, l);
+                        parts.iter().filter(|(p, _)| *p == phase).map(|(_, part)| part * l.watts).sum()
+                    })
+                    .sum();
+                let inner: Option<f64> =
+                    meters.iter().filter(|m| m.outer == Some(index)).map(|m| read(m, c.phase)).sum();
+                let known = fixed + inner.unwrap_or(0.0);
+                if known <= watts {
+                    continue;
+                }
+                let origin = origins.get(index).and_then(|o| o.get(channel)).copied().flatten();
+                self.diagnostics.error(
+                    Code::NegativeRemainder,
+                    place(self.draft, origin, "kw", &(watts / 1e3).to_string()),
+                    format!(
+                        "meter {}{} reads {:.3} kW, but known loads ({:.3} kW) and meters ({:.3} kW) behind it already take {:.3} kW more",
+                        meter.name,
+                        c.phase.map_or(String::new(), |p| format!(", phase {p},")),
+                        watts / 1e3,
+                        fixed / 1e3,
+                        inner.unwrap_or(0.0) / 1e3,
+                        (known - watts) / 1e3
+                    ),
+                    "check the readings and that they are of the same time, or the kw of the loads without a share",
+                );
+            }
+        }
+    }
+}
+
+/// Power an inner meter reads of an outer one's channel; `None` where that is not known beforehand.
+fn read(inner: &Meter, phase: Option<Conductor>) -> Option<f64> {
+    let watts = |c: &Channel| match c.reading {
+        Reading::Watts(watts) => Some(watts),
+        Reading::Amps(_) => None,
+    };
+    match phase {
+        None => inner.channels.iter().map(watts).sum(),
+        // Behind a transformer the phases are others.
+        Some(_) => None,
+    }
+}
+
+/// The loads, each with the name of its row; those that `splits` picks as one load an element.
+fn split(loads: &[Load], splits: impl Fn(&Load) -> bool) -> Vec<(Load, Name)> {
+    let mut pieces = Vec::with_capacity(loads.len());
+    for load in loads {
+        let elements = load.connection.elements();
+        if elements < 2 || !splits(load) {
+            pieces.push((load.clone(), load.name.clone()));
+            continue;
+        }
+        for (c, _) in load.connection.pairs() {
+            let one = std::iter::once(c).collect();
+            let (connection, what) = match load.connection {
+                Connection::Star(_) => (Connection::Star(one), c.letter().to_string()),
+                Connection::Delta(_) => {
+                    (Connection::Delta(one), format!("{}-{}", c.letter(), c.next().letter()))
+                }
+            };
+            let name = Name::from(format!("{} ({what})", load.name));
+            let share = 1.0 / elements as f64;
+            let (watts, vars) = (load.watts * share, load.vars * share);
+            pieces.push((Load { name, connection, watts, vars, ..load.clone() }, load.name.clone()));
+        }
+    }
+    pieces
+}
+
+/// The branch and node where a load hangs: what it is behind.
+pub(super) fn hangs(load: &Load) -> (Option<NodeId>, Option<BranchId>) {
+    match load.place {
+        LoadPlace::Node(node) => (Some(node), None),
+        LoadPlace::Line(line) => (None, Some(line)),
+    }
+}
