@@ -6,6 +6,8 @@ mod construction_faults;
 mod dialects;
 #[path = "import/faults.rs"]
 mod faults;
+#[path = "import/meter_faults.rs"]
+mod meter_faults;
 #[path = "import/network_faults.rs"]
 mod network_faults;
 #[path = "import/places.rs"]

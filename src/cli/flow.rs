@@ -7,9 +7,10 @@ use super::check::{load, verdict};
 use super::{Outcome, Screen};
 use crate::network::Network;
 use crate::output::{
-    Colour, Folder, Length, diagnostics_text, flow_csv, flow_json, flow_text, no_solution_text,
+    Colour, Folder, Length, diagnostics_text, flow_csv, flow_json, flow_text, no_solution_text, unmet_text,
 };
-use crate::solver::{Settings, Solution, solve_regulated};
+use crate::solver::{RegulatedUnit, Settings, Solution, solve_regulated};
+use crate::study::allocation::{Allocation, MeterRead, Unmet, allocate};
 use crate::study::flow::FlowReport;
 use crate::study::loadability::{Loadability, loadability};
 
@@ -30,11 +31,18 @@ pub(super) fn flow(options: &Flow, screen: &mut Screen) -> Outcome {
     };
     screen.doing("solving");
     let settings = Settings::default();
-    let (solution, units) = solve_regulated(&mut network, &settings);
+    let (solution, units, meters) = match solved(&mut network, &settings) {
+        Ok(solved) => solved,
+        Err(unmet) => {
+            screen.tell(&unmet_text(&network, &unmet));
+            return Outcome::NoSolution;
+        }
+    };
     let Some(report) = FlowReport::new(&network, &solution, &units, &loaded.input_sha256) else {
         screen.tell(&no_solution_text(&network, &solution));
         return Outcome::NoSolution;
     };
+    let report = report.with_meters(meters);
     screen.doing("writing");
     if let Err(error) = deliver(options, &network, &solution, &report, screen) {
         screen.tell(&format!("error: the results cannot be written: {error}\n"));
@@ -47,6 +55,18 @@ pub(super) fn flow(options: &Flow, screen: &mut Screen) -> Outcome {
         if options.format == FlowFormat::Text { screen.print(&text) } else { screen.tell(&text) }
     }
     if options.strict && report.exceeds_a_limit() { Outcome::LimitExceeded } else { Outcome::Done }
+}
+
+type Solved = (Solution, Vec<RegulatedUnit>, Vec<MeterRead>);
+
+/// The flow; where there are meters, with the loads shared to meet them.
+fn solved(network: &mut Network, settings: &Settings) -> Result<Solved, Unmet> {
+    if network.meters.is_empty() {
+        let (solution, units) = solve_regulated(network, settings);
+        return Ok((solution, units, Vec::new()));
+    }
+    let Allocation { solution, units, meters, .. } = allocate(network, settings)?;
+    Ok((solution, units, meters))
 }
 
 fn deliver(

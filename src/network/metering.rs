@@ -33,7 +33,10 @@ impl Builder<'_> {
         if self.draft.meters.is_empty() && self.draft.shares.is_empty() {
             return (network.loads, Vec::new());
         }
+        // A load or meter that could not be placed was reported; what follows from it is not.
+        let all_loads = !self.diagnostics.has_errors();
         let (mut meters, origins) = self.placed(&network);
+        let all_meters = self.draft.meters.iter().all(|r| meters.iter().any(|m| m.name == r.meter));
         let zones = Zones::new(network.parts, network.feeds, network.order, &mut meters);
         let shares: HashMap<&str, &ShareRecord> = self.draft.shares.iter().map(|s| (&*s.load, s)).collect();
         let splits = |load: &Load| {
@@ -45,12 +48,13 @@ impl Builder<'_> {
             let Some(record) = shares.get(&**share) else { continue };
             match zones.meter_of(load) {
                 Some(meter) => self.join(&network, &zones, &mut meters, meter, record, (index, load)),
-                None => self.unmetered(record),
+                None if all_meters => self.unmetered(record),
+                None => {}
             }
         }
         for (meter, origins) in origins.iter().enumerate() {
             self.check_basis(&pieces, &zones, meter, &meters[meter].name, &shares);
-            for (channel, origin) in origins.iter().enumerate() {
+            for (channel, origin) in origins.iter().enumerate().filter(|_| all_loads) {
                 self.check_channel(&shares, &pieces, &mut meters, (meter, channel), *origin);
             }
         }
@@ -224,7 +228,11 @@ impl Builder<'_> {
     }
 
     fn unmetered(&mut self, record: &ShareRecord) {
-        let cure = if self.draft.meters.is_empty() {
+        let cure = if self.draft.meters.is_empty()
+            && self.draft.sources.files().iter().any(|f| f.name.eq_ignore_ascii_case("meters.csv"))
+        {
+            "add a row to meters.csv for the head of the feeder, with its kw, or give the load its kw"
+        } else if self.draft.meters.is_empty() {
             "add meters.csv with the demand at the head of the feeder, or give the load its kw"
         } else {
             "add a meter between it and the source, or give the load its kw"

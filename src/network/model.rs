@@ -189,7 +189,8 @@ pub struct Network {
     pub loads: Vec<Load>,
     /// Capacitors in service.
     pub capacitors: Vec<Capacitor>,
-    /// Meters whose readings loads share; those loads draw nothing until they are allocated.
+    /// Meters whose readings loads share; those loads draw nothing until they are allocated
+    /// (see `study::allocation`), so a network with meters is not solved as it stands.
     pub meters: Vec<Meter>,
     /// How each node is fed; `None` only for the supply node.
     pub feeds: Vec<Option<Feed>>,

@@ -10,11 +10,13 @@
 //! results. A reading of one phase is that of a meter element between the phase and the neutral
 //! (to earth where there is none).
 
+mod loads;
 mod measure;
 
 use nalgebra::{DMatrix, DVector};
 use serde::Serialize;
 
+pub use loads::{AllocatedLoad, allocated_loads};
 pub use measure::{Measured, measure};
 
 use crate::network::{BranchKind, Channel, Meter, Network, ReactiveReading, Reading, TapMode};

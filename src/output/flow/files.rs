@@ -2,6 +2,7 @@
 
 use std::io::{self, Write};
 
+use crate::output::allocation::meters_csv;
 use crate::output::csv::{Field, write_row};
 use crate::output::files::Folder;
 use crate::study::flow::FlowReport;
@@ -70,6 +71,9 @@ pub fn flow_csv(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
             ]
         },
     )?;
+    if !report.meters.is_empty() {
+        folder.write("meters.csv", |out| meters_csv(&report.meters, out))?;
+    }
     findings(report, folder)?;
     totals(report, folder)
 }

@@ -12,6 +12,7 @@ use serde::Serialize;
 use crate::math::{Complex64, PhaseVector, degrees, unbalance_factor};
 use crate::network::{BranchKind, Conductor, Conductors, LoadPlace, Name, Network, Node, NodeId, TapMode};
 use crate::solver::{RegulatedUnit, Solution, Status, TapState, load_current};
+use crate::study::allocation::MeterRead;
 
 pub use findings::{Finding, FindingSeverity, Rule};
 pub use losses::Totals;
@@ -155,6 +156,9 @@ pub struct FlowReport {
     pub regulators: Vec<RegulatorTap>,
     /// Loads as drawn.
     pub loads: Vec<LoadDraw>,
+    /// Meters that loads were shared to meet; empty where there are none.
+    #[serde(skip_serializing_if = "Vec::is_empty")]
+    pub meters: Vec<MeterRead>,
     /// Limits exceeded and other remarks, worst first within a rule.
     pub findings: Vec<Finding>,
     /// Extremes for the summary; the lists above hold the same numbers.
@@ -206,9 +210,16 @@ impl FlowReport {
             totals,
             regulators,
             loads,
+            meters: Vec::new(),
             findings,
             glance,
         })
+    }
+
+    /// The report with the meters that the loads were shared to meet.
+    #[must_use]
+    pub fn with_meters(self, meters: Vec<MeterRead>) -> FlowReport {
+        FlowReport { meters, ..self }
     }
 
     /// True where a limit of the study is exceeded.
