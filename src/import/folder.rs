@@ -244,9 +244,11 @@ fn fill(
     draft.switches = with(intake, switches, switches::read);
     draft.transformers = with(intake, transformers, transformers::read);
     draft.regulators = with(intake, regulators, regulators::read);
+    let before = intake.diagnostics.counts().0;
     (draft.loads, draft.shares) = with(intake, loads, loads::read);
-    draft.capacitors = with(intake, capacitors, capacitors::read);
     draft.meters = with(intake, meters, meters::read);
+    draft.metering_faulty = intake.diagnostics.counts().0 > before;
+    draft.capacitors = with(intake, capacitors, capacitors::read);
     with(intake, motors, unsupported::motors);
     with(intake, profiles, unsupported::profiles);
     draft.sources = std::mem::take(&mut intake.sources);

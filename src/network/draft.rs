@@ -47,6 +47,9 @@ pub struct Draft {
     pub meters: Vec<MeterRecord>,
     /// Shares of loads, by their names.
     pub shares: Vec<ShareRecord>,
+    /// True where rows of meters or loads had faults that were reported: what lacks because of
+    /// them is then not reported as well.
+    pub metering_faulty: bool,
 }
 
 /// Fault level of the supply, one kind of fault.

@@ -33,10 +33,11 @@ impl Builder<'_> {
         if self.draft.meters.is_empty() && self.draft.shares.is_empty() {
             return (network.loads, Vec::new());
         }
-        // A load or meter that could not be placed was reported; what follows from it is not.
-        let all_loads = !self.diagnostics.has_errors();
+        // A row, load or meter with a fault was reported; what follows from it is not.
+        let before = self.diagnostics.counts().0;
         let (mut meters, origins) = self.placed(&network);
-        let all_meters = self.draft.meters.iter().all(|r| meters.iter().any(|m| m.name == r.meter));
+        let all_meters = self.diagnostics.counts().0 == before && !self.draft.metering_faulty;
+        let all_loads = all_meters && before == 0;
         let zones = Zones::new(network.parts, network.feeds, network.order, &mut meters);
         let shares: HashMap<&str, &ShareRecord> = self.draft.shares.iter().map(|s| (&*s.load, s)).collect();
         let splits = |load: &Load| {
@@ -359,7 +360,9 @@ impl Builder<'_> {
                     .sum();
                 let inner: Option<f64> =
                     meters.iter().filter(|m| m.outer == Some(index)).map(|m| read(m, c.phase)).sum();
-                let known = fixed + inner.unwrap_or(0.0);
+                // A sum of nothing is -0.
+                let (fixed, inner) = (fixed + 0.0, inner.unwrap_or(0.0) + 0.0);
+                let known = fixed + inner;
                 if known <= watts {
                     continue;
                 }
@@ -373,7 +376,7 @@ impl Builder<'_> {
                         c.phase.map_or(String::new(), |p| format!(", phase {p},")),
                         watts / 1e3,
                         fixed / 1e3,
-                        inner.unwrap_or(0.0) / 1e3,
+                        inner / 1e3,
                         (known - watts) / 1e3
                     ),
                     "check the readings and that they are of the same time, or the kw of the loads without a share",

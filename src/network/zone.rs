@@ -163,7 +163,7 @@ fn turned(
             let mut units = t.units().filter_map(|unit| unit.terminals).map(ends);
             let first = units.next();
             // Of a bank of units, the one that the load hangs on.
-            let own = std::iter::chain(first, units).find(|(_, lower)| hour_of(*lower) == Some(hour));
+            let own = first.into_iter().chain(units).find(|(_, lower)| hour_of(*lower) == Some(hour));
             let single = own.or(first).map(|(upper, _)| upper);
             hour = match (t.group, single) {
                 (VectorGroup::Three { clock, .. }, _) if feed.upstream == End::From => {

@@ -229,7 +229,7 @@ pub fn unmet_text(network: &Network, unmet: &Unmet) -> String {
             for m in meters {
                 text.push_str(&folded("", &format!("error[meter-not-met]: {}", off(m))));
             }
-            text.push_str(&folded("  ", "Look at: a reading in the wrong unit, meters that contradict each other, a phase none of whose power the loads behind the meter can change, a power factor that no load can give."));
+            text.push_str(&folded("  ", "Look at: a reading in the wrong unit, meters that contradict each other, a phase none of whose power the loads behind the meter can change, kW and kvar of every phase where all loads are behind delta windings (their phase currents sum to nothing, so six readings cannot be free), a power factor that no load can give."));
             text
         }
         Unmet::TapsMove => folded(
