@@ -45,10 +45,15 @@ impl Builder<'_> {
                 && zones.meter_of(load).is_some_and(|m| meters[m].channels.iter().all(|c| c.phase.is_some()))
         };
         let pieces = split(&network.loads, splits);
+        let mut counts: HashMap<&str, usize> = HashMap::new();
+        pieces.iter().for_each(|(_, owner)| *counts.entry(owner).or_default() += 1);
+        let of_row = |owner: &str| counts.get(owner).copied().unwrap_or(1);
         for (index, (load, share)) in pieces.iter().enumerate() {
             let Some(record) = shares.get(&**share) else { continue };
             match zones.meter_of(load) {
-                Some(meter) => self.join(&network, &zones, &mut meters, meter, record, (index, load)),
+                Some(meter) => {
+                    self.join(&network, &zones, &mut meters, meter, record, (index, load, of_row(share)))
+                }
                 None if all_meters => self.unmetered(record),
                 None => {}
             }
@@ -192,7 +197,8 @@ impl Builder<'_> {
         }
     }
 
-    /// Adds a load to the readings of its meter that it takes part in.
+    /// Adds a load to the readings of its meter that it takes part in; a load split into `pieces`
+    /// has its row's share spread over them.
     fn join(
         &mut self,
         network: &Metered<'_>,
@@ -200,7 +206,7 @@ impl Builder<'_> {
         meters: &mut [Meter],
         index: usize,
         record: &ShareRecord,
-        (load, data): (usize, &Load),
+        (load, data, pieces): (usize, &Load, usize),
     ) {
         let Some(meter) = meters.get_mut(index) else { return };
         let share = |part: f64| Share { load, part: part * record.amount, ratio: record.ratio };
@@ -209,9 +215,7 @@ impl Builder<'_> {
             return;
         }
         let phases = phases_at(network.parts, network.feeds, zones, index, data);
-        // A piece of a split load carries its part of the row's share.
-        let pieces = self.draft.loads.iter().find(|l| l.load == record.load);
-        let over = pieces.map_or(1, |l| l.connection.elements()).max(1) as f64;
+        let over = pieces.max(1) as f64;
         for (phase, part) in phases {
             match meter.channels.iter_mut().find(|c| c.phase == Some(phase)) {
                 Some(channel) => channel.shares.push(share(part / over)),
