@@ -97,15 +97,31 @@ impl Sources {
         let index = column.and_then(|c| file.columns.iter().position(|k| k == c));
         let start = (origin.offset as usize).min(file.text.len());
         let row_text = file.text.get(start..).unwrap_or("").split(['\n', '\r']).next().unwrap_or("");
+        // What is found is shown as it was typed: `L2 N` where the network says `bn`.
+        let typed = index.and_then(|i| cell_of(row_text, file.columns.len(), i));
+        let found = match (found, typed) {
+            (Some(found), Some(typed)) if found.is_empty() || !typed.contains(found) => Some(typed),
+            (found, _) => found.map(str::to_owned),
+        };
         Some(Place {
             file: file.name.clone(),
             row: origin.line,
             column: column.map(str::to_owned),
             cell: index.map(|i| format!("{}{}", sheet_column(i), origin.sheet_row)),
-            found: found.map(str::to_owned),
+            found,
             row_text: Some(row_text.to_owned()),
         })
     }
+}
+
+/// Text of a cell of a row without quotes, by the separator that gives as many cells as the header
+/// has; `None` where none does, or where the cell is blank.
+fn cell_of(row: &str, width: usize, index: usize) -> Option<String> {
+    if row.contains('"') {
+        return None;
+    }
+    let separator = [',', ';', '\t'].into_iter().find(|s| row.split(*s).count() == width)?;
+    row.split(separator).nth(index).map(|c| c.trim().to_owned()).filter(|c| !c.is_empty())
 }
 
 /// Spreadsheet letters of the column with this index: 0 is `A`, 25 is `Z`, 26 is `AA`.
@@ -270,6 +286,8 @@ codes! {
     NegativeRemainder => "negative-remainder",
     /// Nothing draws power.
     NoLoad => "no-load",
+    /// A name that looks as if a spreadsheet had made a date or a rounded number of it.
+    MangledName => "mangled-name",
 }
 
 impl serde::Serialize for Code {

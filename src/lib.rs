@@ -7,6 +7,7 @@
 //! | wires and geometry to matrices | [`catalog`], [`impedance`] | ohms and siemens per metre |
 //! | files to records | [`import`] | [`network::Draft`], with every fault of every cell |
 //! | records to a checked network | [`network`] | [`network::Network`], with every fault of the whole |
+//! | motor nameplate to circuit, running and run-up | [`machine`] | [`machine::Circuit`], [`machine::RunUp`] |
 //! | network to phasors | [`solver`] | [`solver::Solution`], checked by code of its own |
 //! | questions | [`study`] | result records: flow, loadability, line, summary |
 //! | answers shown | [`output`], [`cli`] | text, JSON, CSV |
@@ -43,6 +44,7 @@ pub mod cli;
 pub mod diagnostic;
 pub mod impedance;
 pub mod import;
+pub mod machine;
 pub mod math;
 pub mod network;
 pub mod output;

@@ -1,5 +1,8 @@
 //! The program as it is run: exit status, results in every form, faults told, nothing half written.
 
+#[path = "cli/told.rs"]
+mod told;
+
 use std::fs;
 use std::path::{Path, PathBuf};
 use std::process::{Command, Output, Stdio};
@@ -251,6 +254,7 @@ fn results_can_be_written_again_and_leave_nothing_else() {
     names.sort_unstable();
     let expected = [
         "currents.csv",
+        "electrodes.csv",
         "elements.csv",
         "findings.csv",
         "loads.csv",

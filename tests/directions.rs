@@ -13,6 +13,7 @@ fn allowed() -> HashMap<&'static str, &'static [&'static str]> {
         ("diagnostic", &[]),
         ("catalog", &["math", "units"]),
         ("impedance", &["catalog", "math", "units"]),
+        ("machine", &["math", "units", "catalog", "diagnostic"]),
         ("network", &["math", "units", "diagnostic"]),
         ("import", below_import),
         ("solver", &["math", "units", "network"]),

@@ -6,6 +6,8 @@ mod construction_faults;
 mod dialects;
 #[path = "import/faults.rs"]
 mod faults;
+#[path = "import/knock_on.rs"]
+mod knock_on;
 #[path = "import/meter_faults.rs"]
 mod meter_faults;
 #[path = "import/network_faults.rs"]

@@ -8,6 +8,7 @@ mod ampacity;
 mod cables;
 mod conductor;
 mod lookup;
+pub mod motors;
 mod tables;
 
 pub use ampacity::{CAUTION, IecMethod, iec_rating_amps, nec_rating_amps, short_time_amps};

@@ -35,7 +35,12 @@ pub(super) fn check(options: &Check, screen: &mut Screen) -> Outcome {
     let loaded = load(&options.folder, screen);
     let summary = loaded.network.as_ref().map(summary);
     match options.format {
-        CheckFormat::Lines => screen.print(&diagnostics_lines(&loaded.diagnostics)),
+        CheckFormat::Lines => {
+            screen.print(&diagnostics_lines(&loaded.diagnostics));
+            if loaded.diagnostics.items().is_empty() {
+                screen.tell(&verdict(&loaded.diagnostics));
+            }
+        }
         CheckFormat::Json => {
             let object = serde_json::json!({
                 "fourwire": env!("CARGO_PKG_VERSION"),

@@ -5,14 +5,15 @@ use std::io;
 use super::args::{Flow, FlowFormat};
 use super::check::{load, verdict};
 use super::{Outcome, Screen};
-use crate::network::Network;
+use crate::network::{LoadModel, Network};
 use crate::output::{
-    Colour, Folder, Length, diagnostics_text, flow_csv, flow_json, flow_text, no_solution_text, unmet_text,
+    Colour, Folder, Length, diagnostics_text, flow_csv, flow_json, flow_text, loadability_text,
+    no_solution_text, unmet_text,
 };
 use crate::solver::{RegulatedUnit, Settings, Solution, solve_regulated};
 use crate::study::allocation::{Allocation, MeterRead, Unmet, allocate};
 use crate::study::flow::FlowReport;
-use crate::study::loadability::{Loadability, loadability};
+use crate::study::loadability::loadability_with;
 
 /// Reads, solves and prints or writes the results.
 pub(super) fn flow(options: &Flow, screen: &mut Screen) -> Outcome {
@@ -40,6 +41,10 @@ pub(super) fn flow(options: &Flow, screen: &mut Screen) -> Outcome {
     };
     let Some(report) = FlowReport::new(&network, &solution, &units, &loaded.input_sha256) else {
         screen.tell(&no_solution_text(&network, &solution));
+        if options.loadability {
+            let text = look_for_loadability(&network, &settings, screen);
+            screen.tell(&text);
+        }
         return Outcome::NoSolution;
     };
     let report = report.with_meters(meters);
@@ -49,9 +54,7 @@ pub(super) fn flow(options: &Flow, screen: &mut Screen) -> Outcome {
         return Outcome::WrongInput;
     }
     if options.loadability {
-        screen.doing("looking for the loadability limit");
-        let found = loadability(&network, &settings);
-        let text = loadability_text(&found);
+        let text = look_for_loadability(&network, &settings, screen);
         if options.format == FlowFormat::Text { screen.print(&text) } else { screen.tell(&text) }
     }
     if options.strict && report.exceeds_a_limit() { Outcome::LimitExceeded } else { Outcome::Done }
@@ -98,12 +101,15 @@ fn deliver(
     Ok(())
 }
 
-fn loadability_text(found: &Loadability) -> String {
-    match (found.factor, &found.weakest_node, found.weakest_pu) {
-        (None, ..) => format!("Loadability: loads can grow {} times and more\n", found.solved_factor),
-        (Some(factor), Some(node), Some(pu)) => format!(
-            "Loadability: all loads can grow to {factor:.3} times; then node {node} gives way, at {pu:.3} pu\n"
-        ),
-        (Some(factor), ..) => format!("Loadability: all loads can grow to {factor:.3} times\n"),
+/// Finds how far the loads can grow, with a sign of progress, and puts it in words.
+fn look_for_loadability(network: &Network, settings: &Settings, screen: &mut Screen) -> String {
+    if network.loads.iter().all(|l| l.watts == 0.0 && l.vars == 0.0) {
+        return "Loadability: there are no loads to grow.\n".to_string();
     }
+    let found = loadability_with(network, settings, |at| {
+        screen.advance("looking for the loadability limit", at.solved, at.expected);
+    });
+    let floor = network.study.constant_power_floor_percent;
+    let constant = network.loads.iter().any(|l| l.model == LoadModel::Power);
+    loadability_text(&found, if constant { floor } else { 0.0 })
 }

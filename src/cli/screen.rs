@@ -96,6 +96,21 @@ impl Screen {
         }
     }
 
+    /// Shows how many of the expected steps are done; as [`Screen::doing`], once it has lasted a second.
+    pub fn advance(&mut self, what: &'static str, done: u32, expected: u32) {
+        self.doing(what);
+        let Some(bar) = &self.progress else { return };
+        if bar.length().is_none()
+            && let Ok(style) = ProgressStyle::with_template(
+                "{spinner} {msg} [{bar:24}] solve {pos} of about {len}, {elapsed}",
+            )
+        {
+            bar.set_style(style);
+        }
+        bar.set_length(u64::from(expected));
+        bar.set_position(u64::from(done));
+    }
+
     /// Takes the sign of life off the screen.
     fn quiet(&mut self) {
         if let Some(bar) = self.progress.take() {

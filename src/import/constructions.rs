@@ -44,7 +44,7 @@ pub(super) fn read(
     if let Some(file) = constructions {
         let mut first: HashMap<Name, u32> = HashMap::new();
         read_table(intake, file, &CONSTRUCTIONS, |row| {
-            let Some(one) = read_construction(row, &spacings) else { return };
+            let Some(one) = read_construction(row, &spacings) else { return row.lose() };
             if let Some(line) = first.insert(one.name.clone(), one.origin.line) {
                 let message = format!("construction `{}` stands already in row {line}", one.name);
                 row.error(Code::DuplicateName, CONSTRUCTION, message, "give each its own name");
@@ -192,6 +192,9 @@ fn report(
             RecipeFault::NoSequence => (Code::MissingValue, "kind"),
         };
         let text = fault.to_string();
+        if is_told(intake, one, &fault) {
+            continue;
+        }
         if !told.insert(text.clone()) {
             continue;
         }
@@ -211,6 +214,17 @@ fn report(
         let place = intake.sources.place(one.origin, Some(column), found.as_deref());
         let message = format!("construction `{}` for conductors {conductors}: {text}", one.name);
         intake.diagnostics.error(code, place, message, fault.cure());
+    }
+}
+
+/// True where the wire or spacing it wants was told as faulty in its own file.
+fn is_told(intake: &Intake, one: &Described, fault: &RecipeFault) -> bool {
+    match fault {
+        RecipeFault::Wire(wire) => intake.unread_wires.has(&looked_for(wire)),
+        RecipeFault::NoPlace { .. } => {
+            one.recipe.spacing.as_ref().is_some_and(|s| intake.unread_spacings.has(&s.name))
+        }
+        _ => false,
     }
 }
 
@@ -327,7 +341,7 @@ fn read_construction(row: &mut Row<'_>, spacings: &HashMap<Name, Spacing>) -> Op
 
 fn find_spacing(row: &mut Row<'_>, spacings: &HashMap<Name, Spacing>, name: &Name) -> Option<Spacing> {
     let found = spacings.get(name).cloned();
-    if found.is_none() {
+    if found.is_none() && !row.intake.unread_spacings.has(name) {
         let cure = match nearest(name, spacings.keys().map(|n| &**n)) {
             Some(near) => format!("did you mean `{near}`?"),
             None => "give its positions in spacings.csv".to_owned(),

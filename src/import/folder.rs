@@ -56,7 +56,28 @@ pub fn read_folder(folder: &Path) -> Reading {
             };
         }
     };
+    let none = files.is_empty() && diagnostics.items().is_empty();
+    let within = if none { networks_within(folder) } else { Vec::new() };
+    if !within.is_empty() {
+        let message =
+            format!("the folder `{}` holds no CSV file, only folders of networks", folder.display());
+        let cure = format!("name one of them: {}", within.join(", "));
+        diagnostics.error(Code::MissingFile, None, message, cure);
+    }
     read(files, &others, diagnostics)
+}
+
+/// Folders within a folder that hold a `source.csv`, by name, the first few.
+fn networks_within(folder: &Path) -> Vec<String> {
+    let Ok(entries) = fs::read_dir(folder) else { return Vec::new() };
+    let mut found: Vec<String> = entries
+        .filter_map(Result::ok)
+        .filter(|e| e.path().join("source.csv").is_file())
+        .map(|e| e.path().display().to_string())
+        .collect();
+    found.sort_unstable();
+    found.truncate(10);
+    found
 }
 
 /// Reads files given as name and bytes, as [`read_folder`] does those of a folder.
@@ -110,6 +131,15 @@ fn read(mut files: Vec<(String, Vec<u8>)>, others: &[String], diagnostics: Diagn
     files.sort();
     let mut intake = Intake { diagnostics, ..Intake::default() };
     let known = sort_out(files, others, &mut intake.diagnostics);
+    if !known.iter().any(|(i, ..)| KNOWN.get(*i) == Some(&"source.csv")) {
+        intake.unread.supply = true;
+    }
+    // A file of a name that is nearly right was told; what it holds is missed in vain.
+    let near: Vec<&str> =
+        intake.diagnostics.items().iter().filter_map(|d| nearest(&d.place.as_ref()?.file, KNOWN)).collect();
+    for name in near.into_iter().filter(|n| !known.iter().any(|(i, ..)| KNOWN.get(*i) == Some(n))) {
+        intake.lose(name);
+    }
     let input_sha256 = hash(&known);
     let (draft, described, catalog) = fill(&mut intake, known);
     let Intake { mut diagnostics, nodes, .. } = intake;
@@ -148,7 +178,9 @@ fn sort_out(
     let unread = |d: &crate::diagnostic::Diagnostic| {
         d.place.as_ref().is_some_and(|p| nearest(&p.file, KNOWN) == Some("source.csv"))
     };
+    let told = diagnostics.items().iter().any(|d| d.code == Code::MissingFile);
     if !known.iter().any(|(i, ..)| KNOWN.get(*i) == Some(&"source.csv"))
+        && !told
         && !diagnostics.items().iter().any(unread)
     {
         let (message, cure) = if none {
@@ -225,6 +257,7 @@ fn fill(
                 let (message, cure) = fault.explain();
                 intake.sources.add(SourceFile { name: name.clone(), ..SourceFile::default() });
                 intake.diagnostics.error(Code::BadEncoding, Some(place_of_file(&name)), message, cure);
+                intake.lose(KNOWN.get(index).copied().unwrap_or_default());
             }
         }
     }
@@ -252,6 +285,7 @@ fn fill(
     with(intake, motors, unsupported::motors);
     with(intake, profiles, unsupported::profiles);
     draft.sources = std::mem::take(&mut intake.sources);
+    draft.unread = std::mem::take(&mut intake.unread);
     (draft, computed.described, computed.catalog)
 }
 

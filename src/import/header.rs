@@ -69,13 +69,14 @@ pub(super) fn normal_names<'a>(cells: impl Iterator<Item = &'a str>) -> Vec<Stri
 pub(super) fn lay_out(
     schema: &'static Schema,
     names: &[String],
+    typed: &[&str],
     separator: u8,
     text: Arc<str>,
     origin: Origin,
     sources: &Sources,
     diagnostics: &mut Diagnostics,
 ) -> Option<Layout> {
-    let mut finder = Finder { schema, names, origin, sources, diagnostics, suggested: Vec::new() };
+    let mut finder = Finder { schema, names, typed, origin, sources, diagnostics, suggested: Vec::new() };
     if !finder.is_header() {
         finder.no_header();
         return None;
@@ -92,7 +93,7 @@ pub(super) fn lay_out(
                 list.push((position, header));
             }
         } else if !name.starts_with("note") {
-            finder.unknown(name);
+            finder.unknown(name, position);
         }
     }
     finder.missing(&cells);
@@ -109,9 +110,25 @@ fn near(name: &str, schema: &'static Schema) -> Option<&'static str> {
     if name.chars().count() < 3 { None } else { nearest(name, schema.names()) }
 }
 
+/// `w` and `mw` where the file has `kw`: its name, and what to do with the numbers.
+fn in_kilo(name: &str, schema: &'static Schema) -> Option<(&'static str, &'static str)> {
+    let (unit, how) = match name {
+        "w" | "watt" | "watts" => ("kw", "divide"),
+        "var" | "vars" => ("kvar", "divide"),
+        "va" => ("kva", "divide"),
+        "v" | "volt" | "volts" => ("kv", "divide"),
+        "mw" => ("kw", "multiply"),
+        "mvar" => ("kvar", "multiply"),
+        "mva" => ("kva", "multiply"),
+        _ => return None,
+    };
+    schema.names().find(|known| *known == unit).map(|known| (known, how))
+}
+
 struct Finder<'a> {
     schema: &'static Schema,
     names: &'a [String],
+    typed: &'a [&'a str],
     origin: Origin,
     sources: &'a Sources,
     diagnostics: &'a mut Diagnostics,
@@ -126,7 +143,9 @@ impl Finder<'_> {
 
     /// A header row has at least one name that is known or nearly so.
     fn is_header(&self) -> bool {
-        let known = |n: &str| n.starts_with("note") || find(self.schema, n).is_some();
+        let known = |n: &str| {
+            n.starts_with("note") || find(self.schema, n).is_some() || in_kilo(n, self.schema).is_some()
+        };
         self.names.iter().any(|n| known(n) || near(n, self.schema).is_some())
     }
 
@@ -148,21 +167,28 @@ impl Finder<'_> {
         self.error(Code::DuplicateColumn, Some(name), message, cure);
     }
 
-    fn unknown(&mut self, name: &str) {
+    fn unknown(&mut self, name: &str, position: usize) {
         let file = self.schema.file;
+        let typed = self.typed.get(position).copied().unwrap_or(name);
         let family: Vec<&str> = self.schema.names().filter(|k| is_unit_of(name, k)).collect();
         let (message, cure) = if !family.is_empty() {
             self.suggested.extend(self.schema.names().filter(|k| is_unit_of(name, k)));
-            let message = format!("the column name `{name}` does not say its unit");
+            let message = format!("the column name `{typed}` does not say its unit");
             (message, format!("put the unit into the name: {}", list(family.into_iter())))
+        } else if let Some((kilo, how)) = in_kilo(name, self.schema) {
+            self.suggested.push(kilo);
+            (
+                format!("{file} has no column `{typed}`"),
+                format!("rename it `{kilo}` and {how} its numbers by 1000"),
+            )
         } else if let Some(near) = near(name, self.schema) {
             self.suggested.push(near);
             let cure = format!(
                 "did you mean `{near}`? Rename it, or let its name begin with `note` to have it ignored"
             );
-            (format!("{file} has no column `{name}`"), cure)
+            (format!("{file} has no column `{typed}`"), cure)
         } else {
-            let message = format!("{file} has no column `{name}`");
+            let message = format!("{file} has no column `{typed}`");
             let known = list(self.schema.names());
             (message, format!("let its name begin with `note` to have it ignored; the columns are {known}"))
         };
@@ -172,7 +198,14 @@ impl Finder<'_> {
     fn missing(&mut self, cells: &[Vec<(usize, &'static Header)>]) {
         for (column, found) in self.schema.columns.iter().zip(cells) {
             let misspelt = column.headers().any(|h| self.suggested.contains(&h.name));
-            if column.need == Need::Required && found.is_empty() && !misspelt {
+            let needed = match column.need {
+                Need::Required => true,
+                Need::RequiredWithout(others) => {
+                    others.iter().all(|&other| cells.get(other).is_none_or(Vec::is_empty))
+                }
+                Need::Optional => false,
+            };
+            if needed && found.is_empty() && !misspelt {
                 let message = format!("the column for {} is missing", column.what);
                 let cure = format!("add a column: {}", column.names());
                 self.error(Code::MissingColumn, None, message, cure);
@@ -191,7 +224,7 @@ fn list<'a>(names: impl Iterator<Item = &'a str>) -> String {
     let mut shown: Vec<String> = Vec::new();
     for name in names {
         // A quantity per length has five spellings; three tell the pattern.
-        let skip = ["_per_kft", "_per_ft", "_per_m", "_kft"].iter().any(|tail| name.ends_with(tail));
+        let skip = ["_per_kft", "_per_ft", "_per_m"].iter().any(|tail| name.ends_with(tail));
         if !skip {
             shown.push(format!("`{name}`"));
         }

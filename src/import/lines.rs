@@ -37,7 +37,15 @@ static LINES: Schema = Schema {
 pub(super) fn read(intake: &mut Intake, file: FileId) -> Vec<LineRecord> {
     let mut records = Vec::new();
     let mut unique = Unique::new("line");
-    read_table(intake, file, &LINES, |row| records.extend(read_row(row, &mut unique)));
+    read_table(intake, file, &LINES, |row| match read_row(row, &mut unique) {
+        Some(record) => records.push(record),
+        None => {
+            row.lose_branch(FROM, TO);
+            if let Some(name) = row.peek(LINE) {
+                row.intake.unread.lines.insert(name.into());
+            }
+        }
+    });
     records
 }
 

@@ -18,8 +18,11 @@ const KVAR: usize = 5;
 const PF: usize = 6;
 const MODEL: usize = 7;
 const PROFILE: usize = 8;
+const SHARE_KVA: usize = 9;
+const SHARE_KWH: usize = 10;
+const SHARE_WEIGHT: usize = 11;
 const SHARES: [(usize, ShareBasis); 3] =
-    [(9, ShareBasis::Kva), (10, ShareBasis::Kwh), (11, ShareBasis::Weight)];
+    [(SHARE_KVA, ShareBasis::Kva), (SHARE_KWH, ShareBasis::Kwh), (SHARE_WEIGHT, ShareBasis::Weight)];
 
 static LOADS: Schema = Schema {
     file: "loads.csv",
@@ -28,7 +31,11 @@ static LOADS: Schema = Schema {
         Column::text("node", "the node"),
         Column::text("line", "the line"),
         Column::text("phases", "the connection").required(),
-        Column::number("kw", KILO, "kW", "the active power"),
+        Column::number("kw", KILO, "kW", "the active power").required_without(&[
+            SHARE_KVA,
+            SHARE_KWH,
+            SHARE_WEIGHT,
+        ]),
         Column::number("kvar", KILO, "kvar", "the reactive power"),
         Column::number("pf", 1.0, "", "the power factor").range(Range::Within(-1.0, 1.0)),
         Column::text("model", "the load model"),
@@ -46,7 +53,10 @@ const MODELS: [(&str, LoadModel); 3] =
 pub(super) fn read(intake: &mut Intake, file: FileId) -> (Vec<LoadRecord>, Vec<ShareRecord>) {
     let (mut records, mut shares) = (Vec::new(), Vec::new());
     let mut unique = Unique::new("load");
-    read_table(intake, file, &LOADS, |row| records.extend(read_row(row, &mut unique, &mut shares)));
+    read_table(intake, file, &LOADS, |row| match read_row(row, &mut unique, &mut shares) {
+        Some(record) => records.push(record),
+        None => row.lose(),
+    });
     (records, shares)
 }
 
@@ -87,6 +97,8 @@ fn watts(row: &mut Row<'_>) -> Option<f64> {
     match row.number(KW) {
         Number::Value(watts) => Some(watts),
         Number::Faulty => None,
+        // A header without any of these was reported.
+        Number::Blank if ![KW, SHARE_KVA, SHARE_KWH, SHARE_WEIGHT].iter().any(|&c| row.has_column(c)) => None,
         Number::Blank => {
             let message = "the active power is missing";
             let cure = "fill in `kw`, or a share (`share_kva`, `share_kwh` or `share_weight`) for a load that takes its part of what a meter reads";

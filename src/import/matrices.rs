@@ -40,6 +40,8 @@ struct Matrix {
     conductors: Conductors,
     z_per_m: PhaseMatrix,
     y_per_m: PhaseMatrix,
+    /// False where an element has a fault that was told.
+    sound: bool,
     /// Where each element of the upper triangle was given.
     given: [[Option<Origin>; 4]; 4],
 }
@@ -49,8 +51,10 @@ pub(super) fn read(intake: &mut Intake, file: FileId) -> Vec<Construction> {
     let mut matrices: Vec<Matrix> = Vec::new();
     let mut index: HashMap<Name, usize> = HashMap::new();
     read_table(intake, file, &MATRICES, |row| read_row(row, &mut matrices, &mut index));
-    for matrix in &matrices {
-        report_missing(intake, matrix);
+    for matrix in matrices.iter().filter(|m| m.sound) {
+        if !intake.unread_elements {
+            report_missing(intake, matrix);
+        }
     }
     matrices.into_iter().map(Matrix::finish).collect()
 }
@@ -58,16 +62,18 @@ pub(super) fn read(intake: &mut Intake, file: FileId) -> Vec<Construction> {
 fn read_row(row: &mut Row<'_>, matrices: &mut Vec<Matrix>, index: &mut HashMap<Name, usize>) {
     let name = row.shared_name(CONSTRUCTION);
     let element = single(row, ROW).zip(single(row, COLUMN));
-    let r = row.number_or(R, 0.0);
-    let x = row.number_or(X, 0.0);
+    let (r, x) = (row.optional_number(R), row.optional_number(X));
     let b = row.number_or(B, 0.0);
-    let Some(name) = name else { return };
+    let Some(name) = name else { return row.lose() };
     let at = *index.entry(name.clone()).or_insert_with(|| {
         matrices.push(Matrix::new(name, row.origin));
         matrices.len() - 1
     });
-    if let (Some(matrix), Some((i, j))) = (matrices.get_mut(at), element) {
-        matrix.put(row, i, j, Complex64::new(r, x), Complex64::new(0.0, b));
+    let Some(matrix) = matrices.get_mut(at) else { return };
+    matrix.sound &= r.is_some() && x.is_some() && element.is_some();
+    if let Some((i, j)) = element {
+        let z = Complex64::new(r.unwrap_or(0.0), x.unwrap_or(0.0));
+        matrix.put(row, i, j, z, Complex64::new(0.0, b));
     }
 }
 
@@ -88,7 +94,8 @@ fn single(row: &mut Row<'_>, column: usize) -> Option<Conductor> {
 impl Matrix {
     fn new(name: Name, origin: Origin) -> Matrix {
         let (z_per_m, y_per_m) = (PhaseMatrix::zeros(), PhaseMatrix::zeros());
-        Matrix { name, origin, conductors: Conductors::NONE, z_per_m, y_per_m, given: [[None; 4]; 4] }
+        let given = [[None; 4]; 4];
+        Matrix { name, origin, conductors: Conductors::NONE, z_per_m, y_per_m, sound: true, given }
     }
 
     fn put(&mut self, row: &mut Row<'_>, i: Conductor, j: Conductor, z: Complex64, y: Complex64) {
@@ -129,11 +136,17 @@ impl Matrix {
         missing
     }
 
+    /// One with a fault stands in with a likely impedance, so that it is not told as faulty again.
     fn finish(self) -> Construction {
+        let mut z_per_m = self.z_per_m;
+        if !self.sound || !self.missing().is_empty() {
+            z_per_m = PhaseMatrix::zeros();
+            self.conductors.iter().for_each(|c| z_per_m[(c.slot(), c.slot())] = Complex64::new(3e-4, 3e-4));
+        }
         Construction {
             name: self.name,
             conductors: self.conductors,
-            z_per_m: self.z_per_m,
+            z_per_m,
             y_per_m: self.y_per_m,
             rating_amps: None,
             origin: Some(self.origin),

@@ -31,9 +31,11 @@ mod unsupported;
 mod wires;
 mod words;
 
+use std::collections::HashSet;
+
 use crate::catalog::Catalog;
 use crate::diagnostic::{Diagnostics, FileId, Place, Sources};
-use crate::network::Draft;
+use crate::network::{Draft, Unread};
 
 pub use constructions::DescribedConstruction;
 pub use folder::{read_files, read_folder};
@@ -61,9 +63,57 @@ pub(crate) struct Intake {
     pub(crate) diagnostics: Diagnostics,
     pub(crate) nodes: names::NodeNames,
     pub(crate) shared: names::SharedNames,
+    /// What could not be read, for the network.
+    pub(crate) unread: Unread,
+    /// Wires and spacings that could not be read; rows of either file whose name is lost.
+    pub(crate) unread_wires: UnreadNames,
+    pub(crate) unread_spacings: UnreadNames,
+    /// True where a row of `matrices.csv` was lost.
+    pub(crate) unread_elements: bool,
+}
+
+/// Names whose row could not be read.
+#[derive(Debug, Default)]
+pub(crate) struct UnreadNames {
+    names: HashSet<String>,
+    any: bool,
+}
+
+impl UnreadNames {
+    /// Keeps the name of a row that could not be read, or that there is one without a name.
+    pub(crate) fn add(&mut self, name: Option<&str>) {
+        match name {
+            Some(name) => _ = self.names.insert(name.to_lowercase()),
+            None => self.any = true,
+        }
+    }
+
+    /// True where the name may be that of a row that could not be read.
+    pub(crate) fn has(&self, name: &str) -> bool {
+        self.any || self.names.contains(&name.to_lowercase())
+    }
 }
 
 impl Intake {
+    /// Notes that a row, or a whole file, could not be read and nothing is known of it.
+    pub(crate) fn lose(&mut self, file: &str) {
+        match file {
+            "lines.csv" | "switches.csv" | "transformers.csv" | "regulators.csv" => {
+                self.unread.branches = true;
+            }
+            "loads.csv" => self.unread.loads = true,
+            "source.csv" => self.unread.supply = true,
+            "constructions.csv" => self.unread.constructions = true,
+            "matrices.csv" => {
+                self.unread.constructions = true;
+                self.unread_elements = true;
+            }
+            "conductors.csv" => self.unread_wires.add(None),
+            "spacings.csv" => self.unread_spacings.add(None),
+            _ => {}
+        }
+    }
+
     /// The place of a fault that belongs to a file as a whole.
     pub(crate) fn whole_file(&self, file: FileId) -> Option<Place> {
         self.sources.file(file).map(|f| place_of_file(&f.name))

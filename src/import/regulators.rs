@@ -57,7 +57,10 @@ type Banks = HashMap<Name, (Name, Name, Origin)>;
 pub(super) fn read(intake: &mut Intake, file: FileId) -> Vec<RegulatorRecord> {
     let mut records = Vec::new();
     let mut banks = Banks::new();
-    read_table(intake, file, &REGULATORS, |row| records.extend(read_row(row, &mut banks)));
+    read_table(intake, file, &REGULATORS, |row| match read_row(row, &mut banks) {
+        Some(record) => records.push(record),
+        None => row.lose_branch(FROM, TO),
+    });
     records
 }
 

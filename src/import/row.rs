@@ -3,6 +3,7 @@
 
 use super::Intake;
 use super::header::Layout;
+use super::names::warn_of_mangled;
 use super::number::{self, Marks, NumberFault, PercentSign, is_spreadsheet_error};
 use super::phases;
 use super::records::Cells;
@@ -55,6 +56,11 @@ impl<'r> Row<'r> {
         self.layout.schema.column(column)
     }
 
+    /// True where the header has the column, under any of its names.
+    pub(crate) fn has_column(&self, column: usize) -> bool {
+        self.layout.has(column)
+    }
+
     /// True where the cell holds text, under any of the column's names.
     pub(crate) fn is_filled(&self, column: usize) -> bool {
         self.filled(column).next().is_some()
@@ -86,6 +92,39 @@ impl<'r> Row<'r> {
         let found = cell.map(|c| c.text);
         let place = self.intake.sources.place(self.origin, name, found);
         self.intake.diagnostics.error(code, place, message, cure);
+    }
+
+    /// Text of a cell as it stands, without a report.
+    pub(crate) fn peek(&self, column: usize) -> Option<&'r str> {
+        self.filled(column).next().map(|c| c.text)
+    }
+
+    /// Notes a branch that could not be read, by its ends where they are known.
+    pub(crate) fn lose_branch(&mut self, from: usize, to: usize) {
+        for end in [from, to] {
+            match self.peek(end) {
+                Some(name) => _ = self.intake.unread.nodes.insert(Name::from(name)),
+                None => self.intake.unread.branches = true,
+            }
+        }
+    }
+
+    /// Notes a row that could not be read.
+    pub(crate) fn lose(&mut self) {
+        self.intake.lose(self.layout.schema.file);
+    }
+
+    /// Reports a filled cell that can be read but hardly meant so.
+    pub(crate) fn warning(
+        &mut self,
+        code: Code,
+        column: usize,
+        message: impl Into<String>,
+        cure: impl Into<String>,
+    ) {
+        let cell = self.filled(column).next();
+        let place = self.intake.sources.place(self.origin, cell.map(|c| c.header.name), cell.map(|c| c.text));
+        self.intake.diagnostics.warning(code, place, message, cure);
     }
 
     /// Reports a fault of the row as a whole.
@@ -145,13 +184,18 @@ impl<'r> Row<'r> {
 
     /// Name of the row's own element.
     pub(crate) fn own_name(&mut self, column: usize) -> Option<Name> {
-        self.text(column).map(Name::from)
+        let text = self.text(column)?;
+        warn_of_mangled(self, column, text);
+        Some(Name::from(text))
     }
 
     /// Name of a node, kept once for the whole network.
     pub(crate) fn node(&mut self, column: usize) -> Option<Name> {
         let text = self.text(column)?;
         let header = self.header_name(column).unwrap_or_default();
+        if !self.intake.nodes.knows(text) {
+            warn_of_mangled(self, column, text);
+        }
         Some(self.intake.nodes.name(text, self.origin, header))
     }
 
@@ -196,7 +240,7 @@ impl<'r> Row<'r> {
         let value = match self.parse(cell.text, percent) {
             Ok(value) => value,
             Err(fault) => {
-                let (code, message, cure) = explain(&fault, cell.text, spec, header);
+                let (code, message, cure) = explain(&fault, cell.text, spec, header, self.layout.marks());
                 self.error(code, column, message, cure);
                 return Number::Faulty;
             }

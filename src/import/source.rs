@@ -48,7 +48,10 @@ static SOURCE: Schema = Schema {
 /// Reads the rows of `source.csv`; that there is exactly one is checked with the network.
 pub(super) fn read(intake: &mut Intake, file: FileId) -> Vec<SupplyRecord> {
     let mut records = Vec::new();
-    read_table(intake, file, &SOURCE, |row| records.extend(read_row(row)));
+    read_table(intake, file, &SOURCE, |row| match read_row(row) {
+        Some(record) => records.push(record),
+        None => row.lose(),
+    });
     records
 }
 

@@ -139,7 +139,39 @@ fn read_setting(row: &mut Row<'_>, study: &mut Study, unique: &mut Unique) {
             row.error(Code::OutOfRange, VALUE, "the frequency must be 50 or 60 Hz", "write 50 or 60");
             return;
         }
+        if is_fraction(row, setting.spec.name(), value) {
+            return;
+        }
         (setting.put)(study, value);
+    }
+}
+
+/// Below this a limit or growth in percent is a fraction rather than a percentage.
+const TINY_PERCENT: f64 = 0.2;
+
+/// Reports a percentage given as a fraction: an error where it would switch a limit off without a
+/// word, else a remark.
+fn is_fraction(row: &mut Row<'_>, name: &str, value: f64) -> bool {
+    let hundredfold = (value * 1e10).round() / 1e8;
+    match name {
+        "voltage_low_percent" | "constant_power_floor_percent" if value > 0.0 && value <= 1.0 => {
+            let message = format!("{value} is a fraction; this setting is in percent of nominal");
+            let cure = format!("write {hundredfold}, or 0 to do without it");
+            row.error(Code::SuspectUnit, VALUE, message, cure);
+            true
+        }
+        "drop_limit_percent"
+        | "unbalance_limit_percent"
+        | "start_dip_limit_percent"
+        | "load_growth_percent"
+            if value != 0.0 && value.abs() < TINY_PERCENT =>
+        {
+            let message = format!("{value} is taken as {value} percent, which is very little");
+            let cure = format!("write {hundredfold} if {value} is meant as a fraction");
+            row.warning(Code::SuspectUnit, VALUE, message, cure);
+            false
+        }
+        _ => false,
     }
 }
 

@@ -29,7 +29,12 @@ static SWITCHES: Schema = Schema {
 pub(super) fn read(intake: &mut Intake, file: FileId) -> Vec<SwitchRecord> {
     let mut records = Vec::new();
     let mut unique = Unique::new("switch");
-    read_table(intake, file, &SWITCHES, |row| records.extend(read_row(row, &mut unique)));
+    read_table(intake, file, &SWITCHES, |row| match read_row(row, &mut unique) {
+        Some(record) => records.push(record),
+        None => {
+            row.lose_branch(FROM, TO);
+        }
+    });
     records
 }
 

@@ -24,13 +24,18 @@ pub(crate) fn read_table(
     mut each: impl FnMut(&mut Row<'_>),
 ) -> usize {
     let Some(text) = intake.sources.file(file).map(|f| Arc::clone(&f.text)) else { return 0 };
-    let Some((layout, mut records)) = open(intake, file, schema, &text) else { return 0 };
+    let Some((layout, mut records)) = open(intake, file, schema, &text) else {
+        intake.lose(schema.file);
+        return 0;
+    };
     let mut rows = 0;
     let mut broken = 0;
+    let mut wrong_separator = false;
     while let Some(origin) = records.next(file) {
         // Before the look for comments: an open quote there would swallow the rest unseen.
         if let Some(fault) = records.quote_fault() {
             report_quote(intake, origin, layout.width, fault);
+            intake.lose(schema.file);
             rows += 1;
             broken += 1;
             if broken >= MAX_BROKEN_QUOTES {
@@ -44,8 +49,17 @@ pub(crate) fn read_table(
             continue;
         }
         rows += 1;
+        if let Some(other) = other_separator(&layout, cells) {
+            if !std::mem::replace(&mut wrong_separator, true) {
+                report_separator(intake, origin, &layout, other);
+                intake.lose(schema.file);
+            }
+            continue;
+        }
         if has_fitting_length(intake, origin, &layout, cells) {
             each(&mut Row::new(&layout, cells, origin, intake));
+        } else {
+            intake.lose(schema.file);
         }
     }
     rows
@@ -82,7 +96,7 @@ fn open<'t>(
                 schema
                     .columns
                     .iter()
-                    .filter(|c| c.need == super::schema::Need::Required)
+                    .filter(|c| c.need != super::schema::Need::Optional)
                     .map(|c| format!("`{}`", c.name()))
                     .collect::<Vec<_>>()
                     .join(", ")
@@ -97,13 +111,50 @@ fn open<'t>(
         if records.cells().is_blank_or_comment() {
             continue;
         }
-        let names = normal_names(records.cells().iter());
+        let typed: Vec<&str> = records.cells().iter().map(trim).collect();
+        let names = normal_names(typed.iter().copied());
         intake.sources.set_columns(file, names.clone());
         let (sources, diagnostics) = (&intake.sources, &mut intake.diagnostics);
-        let layout =
-            lay_out(schema, &names, records.separator, Arc::clone(text), origin, sources, diagnostics)?;
+        let layout = lay_out(
+            schema,
+            &names,
+            &typed,
+            records.separator,
+            Arc::clone(text),
+            origin,
+            sources,
+            diagnostics,
+        )?;
         return Some((layout, records));
     }
+}
+
+/// The separator that parts a row into as many cells as the header has, where its own leaves it in one.
+fn other_separator(layout: &Layout, cells: Cells<'_>) -> Option<char> {
+    let row = cells.get(0);
+    if layout.width < 2 || cells.len() > layout.width || row.len() < 2 {
+        return None;
+    }
+    // Decimal commas may have parted a row of semicolons once more.
+    let count = |c: char| cells.iter().map(|cell| cell.matches(c).count()).sum::<usize>();
+    [',', ';', '\t']
+        .into_iter()
+        .filter(|c| u32::from(*c) != u32::from(layout.separator))
+        .find(|c| count(*c) + 1 == layout.width && (cells.len() == 1 || row.contains(*c)))
+}
+
+/// One message for a file whose rows are separated in another way than its header.
+fn report_separator(intake: &mut Intake, origin: Origin, layout: &Layout, other: char) {
+    let word = |c: char| match c {
+        ';' => "semicolons",
+        '\t' => "tabs",
+        _ => "commas",
+    };
+    let (header, rows) = (word(char::from(layout.separator)), word(other));
+    let place = intake.sources.place(origin, None, None);
+    let message = format!("the cells of the header are separated by {header}, those of the rows by {rows}");
+    let cure = format!("separate the header by {rows} too, or save the file again as CSV");
+    intake.diagnostics.error(Code::RowLength, place, message, cure);
 }
 
 fn has_fitting_length(intake: &mut Intake, origin: Origin, layout: &Layout, cells: Cells<'_>) -> bool {

@@ -83,7 +83,12 @@ const GROUPS: [&str; 21] = [
 pub(super) fn read(intake: &mut Intake, file: FileId) -> Vec<TransformerRecord> {
     let mut records = Vec::new();
     let mut unique = Unique::new("transformer");
-    read_table(intake, file, &TRANSFORMERS, |row| records.extend(read_row(row, &mut unique)));
+    read_table(intake, file, &TRANSFORMERS, |row| match read_row(row, &mut unique) {
+        Some(record) => records.push(record),
+        None => {
+            row.lose_branch(FROM, TO);
+        }
+    });
     records
 }
 
@@ -146,6 +151,15 @@ fn group(row: &mut Row<'_>) -> Option<VectorGroup> {
 }
 
 fn group_cure(text: &str) -> String {
+    // `Dy11n`: the clock number before the last letter.
+    let moved: String = text
+        .chars()
+        .filter(|c| !c.is_ascii_digit())
+        .chain(text.chars().filter(char::is_ascii_digit))
+        .collect();
+    if moved != text && VectorGroup::parse(&moved).is_some() {
+        return format!("did you mean `{moved}`?");
+    }
     let lower = text.to_ascii_lowercase();
     let letters = lower.trim_end_matches(|c: char| c.is_ascii_digit());
     let clocks: Vec<String> = (0..12)

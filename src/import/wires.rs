@@ -49,7 +49,11 @@ pub(super) fn read_spacings(intake: &mut Intake, file: FileId) -> HashMap<Name, 
         let name = row.shared_name(PLACE_NAME);
         let position = row.conductors(POSITION);
         let (x, y) = (row.number_or(X, 0.0), row.number_or(Y, 1.0));
-        let (Some(name), Some(position)) = (name, position) else { return };
+        let (Some(name), Some(position)) = (name, position) else {
+            let name = row.peek(PLACE_NAME);
+            row.intake.unread_spacings.add(name);
+            return;
+        };
         let mut letters = position.iter();
         let (Some(conductor), None) = (letters.next(), letters.next()) else {
             row.error(
@@ -58,6 +62,7 @@ pub(super) fn read_spacings(intake: &mut Intake, file: FileId) -> HashMap<Name, 
                 "expected one conductor: a, b, c or n",
                 "give each conductor a row of its own",
             );
+            row.intake.unread_spacings.add(Some(&name));
             return;
         };
         let spacing = spacings
@@ -124,7 +129,13 @@ const MATERIALS: &[(&str, Material)] = &[
 
 pub(super) fn read_conductors(intake: &mut Intake, file: FileId) -> Vec<Conductor> {
     let mut wires = Vec::new();
-    read_table(intake, file, &CONDUCTORS, |row| wires.extend(read_conductor(row)));
+    read_table(intake, file, &CONDUCTORS, |row| match read_conductor(row) {
+        Some(wire) => wires.push(wire),
+        None => {
+            let name = row.peek(WIRE);
+            row.intake.unread_wires.add(name);
+        }
+    });
     wires
 }
 
@@ -138,6 +149,9 @@ fn read_conductor(row: &mut Row<'_>) -> Option<Conductor> {
     let (name, material) = (name?, material?);
     let by_area = || Some(at_temperature(material.resistivity_ohm_m()? / area_m2?, 20.0, at_c, material));
     let Some(ohm_per_m) = r.or_else(by_area) else {
+        if row.is_filled(R) || (row.is_filled(AREA) && area_m2.is_none()) {
+            return None; // that cell was told as faulty
+        }
         let message = format!("neither the resistance nor the cross-section of wire `{name}` is given");
         row.error(Code::MissingDatum, R, message, "fill in `r_ohm_per_km` (with `r_at_c`), or `area_mm2`");
         return None;

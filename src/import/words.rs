@@ -1,6 +1,6 @@
 //! Words for cells that cannot be read.
 
-use super::number::NumberFault;
+use super::number::{Marks, NumberFault};
 use super::schema::{Column, Header, Need, Range};
 use crate::diagnostic::Code;
 
@@ -24,6 +24,7 @@ pub(super) fn explain(
     text: &str,
     spec: &Column,
     header: &Header,
+    marks: Marks,
 ) -> (Code, String, String) {
     let expected = quantity(spec, header);
     let not_number = |cure: String| (Code::BadNumber, format!("expected a number, {expected}"), cure);
@@ -32,7 +33,10 @@ pub(super) fn explain(
         NumberFault::Ambiguous { decimal, thousands } => (
             Code::AmbiguousNumber,
             format!("can be read as {decimal} or as {thousands}; expected {expected}"),
-            format!("write {} or {thousands}, without a mark between thousands", with_more_decimals(decimal)),
+            format!(
+                "write {} or {thousands}, without a mark between thousands",
+                unmistakable(decimal, marks)
+            ),
         ),
         NumberFault::DotAmongCommas => {
             let thousands = text.replace('.', "");
@@ -70,7 +74,7 @@ pub(super) fn explain(
         }
         NumberFault::NotFinite => {
             let cure = match spec.need {
-                Need::Required => "write the value itself",
+                Need::Required | Need::RequiredWithout(_) => "write the value itself",
                 Need::Optional => "write the value itself, or leave the cell blank",
             };
             (Code::BadNumber, format!("expected a finite number, {expected}"), cure.to_owned())
@@ -84,11 +88,16 @@ pub(super) fn explain(
     }
 }
 
-/// `1.234` as `1.2340`: with a fourth decimal it cannot be read as thousands.
-fn with_more_decimals(decimal: &str) -> String {
+/// `1.200` as `1.2`; `1.234` as `1.2340` where a comma could be the decimal mark: with a fourth
+/// decimal it cannot be read as thousands.
+fn unmistakable(decimal: &str, marks: Marks) -> String {
     match decimal.split_once('.') {
-        Some((_, tail)) if tail.len() == 3 => format!("{decimal}0"),
-        _ => decimal.to_owned(),
+        Some((head, tail)) => match tail.trim_end_matches('0') {
+            "" => head.to_owned(),
+            short if short.len() == 3 && marks == Marks::DotOrComma => format!("{decimal}0"),
+            short => format!("{head}.{short}"),
+        },
+        None => decimal.to_owned(),
     }
 }
 
@@ -106,6 +115,9 @@ pub(super) fn out_of_range_cure(value: f64, spec: &Column, unit: &str) -> String
         }
         Range::UpTo(high) if unit.starts_with("kV") && value > high && value / 1000.0 <= high => {
             format!("write {} if {value} V is meant", value / 1000.0)
+        }
+        _ if unit.starts_with('%') && value > 0.0 && spec.range.holds(value * 100.0) => {
+            format!("write {} if {value} is meant as a fraction", (value * 1e10).round() / 1e8)
         }
         _ if unit.is_empty() => "check the value".to_owned(),
         _ => format!("check the value; the column is in {unit}"),

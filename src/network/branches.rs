@@ -31,6 +31,10 @@ impl Builder<'_> {
         let mut chosen = Vec::with_capacity(draft.lines.len());
         for line in &draft.lines {
             let Some(choices) = known.get(&*line.construction) else {
+                if draft.unread.constructions {
+                    chosen.push(None);
+                    continue;
+                }
                 let cure = match nearest(&line.construction, known.keys().copied()) {
                     Some(near) => format!("did you mean {near:?}?"),
                     None => "define it in matrices.csv or constructions.csv".to_string(),

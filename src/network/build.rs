@@ -3,10 +3,11 @@
 use super::branches::Branches;
 use super::carry::{Carried, carry};
 use super::draft::Draft;
-use super::earth::{Given, SideEarth, sides};
-use super::graph::{Graph, Tree, grow, place, report_isolated_switches, report_unfed};
+use super::earth::{Given, SideEarth, Standing, sides};
+use super::graph::{Graph, RawFeed, RawTie, Tree, grow, place, report_isolated_switches, report_unfed};
 use super::metering::Metered;
-use super::model::{BranchId, Feed, Network, Node, NodeId, SOLID_EARTH_OHM};
+use super::model::{BranchId, Feed, Network, Node, NodeId, SOLID_EARTH_OHM, Stay, StayPlace, Tie};
+use super::plausible;
 use super::supply::{Supply, circulant, held_volts, sequence_impedance};
 use super::validate;
 use crate::diagnostic::{Code, Diagnostics, Origin, nearest};
@@ -28,6 +29,10 @@ pub struct Built {
 pub fn build(draft: &Draft) -> Built {
     let mut diagnostics = Diagnostics::new();
     let network = Builder { draft, diagnostics: &mut diagnostics }.run();
+    if let Some(network) = &network {
+        plausible::sizes(draft, network, &mut diagnostics);
+        plausible::star_points(draft, network, &mut diagnostics);
+    }
     let network = if diagnostics.has_errors() { None } else { network };
     Built { network, diagnostics }
 }
@@ -44,6 +49,7 @@ pub(super) struct Joined {
     pub(super) carried: Carried,
     pub(super) given: Given,
     pub(super) sides: Vec<SideEarth>,
+    pub(super) stays: Vec<(usize, SideEarth)>,
 }
 
 impl Builder<'_> {
@@ -64,13 +70,16 @@ impl Builder<'_> {
         let carried = carry(draft, &graph, &tree, &electrodes, self.diagnostics);
         self.check_electrodes(&graph, &tree, &carried);
         let given = Given { electrodes, line_constructions };
-        let sides = sides(draft, &graph, &tree, &carried, &given, self.diagnostics);
-        self.assemble(&Joined { graph, tree, carried, given, sides })
+        let Standing { sides, stays } = sides(draft, &graph, &tree, &carried, &given, self.diagnostics);
+        self.assemble(&Joined { graph, tree, carried, given, sides, stays })
     }
 
     /// Index of the supply node: always 0, where there is a supply.
     fn supply_node(&mut self) -> Option<usize> {
         let Some((first, others)) = self.draft.supplies.split_first() else {
+            if self.draft.unread.supply {
+                return None;
+            }
             self.diagnostics.error(
                 Code::NoSource,
                 None,
@@ -97,6 +106,9 @@ impl Builder<'_> {
             return false;
         }
         let name = &graph.names[root];
+        if self.draft.unread.joins(name) {
+            return false;
+        }
         let others = graph.names.iter().filter(|n| *n != name).map(|n| &**n);
         let cure = match nearest(name, others) {
             Some(near) => format!("did you mean {near:?}?"),
@@ -122,12 +134,24 @@ impl Builder<'_> {
     }
 
     pub(super) fn unknown_node(&mut self, graph: &Graph, node: &str, origin: Option<Origin>, who: &str) {
+        if self.draft.unread.joins(node) {
+            return;
+        }
         let cure = match nearest(node, graph.names.iter().map(|n| &**n)) {
+            _ if self.draft.lines.iter().any(|l| &*l.line == node) => self.line_for_node(node, who),
             Some(near) => format!("did you mean {near:?}?"),
             None => "join it with a line, switch or transformer, or take the row out".to_string(),
         };
         let message = format!("{who} node {node:?}, but no line, switch or transformer connects it");
         self.diagnostics.error(Code::UnknownNode, place(self.draft, origin, "node", node), message, cure);
+    }
+
+    /// The cure where a line stands in the place of a node.
+    fn line_for_node(&self, name: &str, who: &str) -> String {
+        match who.starts_with("load ") {
+            true => format!("{name} is a line: put it in column `line`"),
+            false => format!("{name} is a line: name the node at one of its ends"),
+        }
     }
 
     fn check_electrodes(&mut self, graph: &Graph, tree: &Tree, carried: &Carried) {
@@ -173,6 +197,15 @@ impl Builder<'_> {
         let supply = self.supply(new_node[0]?)?;
         let feeds = feeds(tree, &new_node, &parts.new_branch, nodes.len());
         let order: Vec<NodeId> = tree.order.iter().filter_map(|&n| new_node[n]).collect();
+        let ties = ties(tree, &new_node, &parts.new_branch);
+        let stays = joined.stays.iter().filter_map(|&(part, earth)| {
+            let place = match part.checked_sub(graph.names.len()) {
+                None => StayPlace::Node(new_node[part]?),
+                Some(tie) => StayPlace::TieEnd(tie),
+            };
+            Some(Stay { place, siemens: earth.reference_siemens, on: earth.on })
+        });
+        let stays = stays.collect();
         let (loads, capacitors) = self.shunts(joined, &new_node, &parts);
         let (loads, meters) = self.meters(Metered {
             joined,
@@ -180,6 +213,7 @@ impl Builder<'_> {
             new_node: &new_node,
             feeds: &feeds,
             order: &order,
+            ties: ties.as_deref().unwrap_or_default(),
             loads,
         });
         let study = self.draft.study.clone();
@@ -195,6 +229,8 @@ impl Builder<'_> {
             meters,
             feeds,
             order,
+            ties: ties?,
+            stays,
         })
     }
 
@@ -210,6 +246,15 @@ impl Builder<'_> {
             earth_ohm: record.earth_ohm,
         })
     }
+}
+
+/// The ties by new indices; `None` where a branch of one could not be made, which was told.
+fn ties(tree: &Tree, new_node: &[Option<NodeId>], new_branch: &[Option<BranchId>]) -> Option<Vec<Tie>> {
+    let of = |tie: &RawTie| {
+        let RawFeed { branch, parent, upstream } = tie.feed;
+        Some(Tie { branch: new_branch[branch]?, near: new_node[parent]?, far: new_node[tie.far]?, upstream })
+    };
+    tree.ties.iter().map(of).collect()
 }
 
 fn feeds(

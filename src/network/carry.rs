@@ -2,7 +2,7 @@
 
 use super::conductor::{Conductor, Conductors, Connection};
 use super::draft::{Across, Draft, TransformerRecord};
-use super::graph::{Graph, RawFeed, RawKind, Tree, place, written_conductors};
+use super::graph::{Graph, RawFeed, RawKind, RawTie, Tree, place, written_conductors};
 use super::model::{End, nominal_phase_volts};
 use super::transformer::{NeutralPoint, VectorGroup, Winding};
 use crate::diagnostic::{Code, Diagnostics};
@@ -24,6 +24,9 @@ pub(super) struct Carried {
     pub neutrals: Vec<[NeutralPoint; 2]>,
     /// First node of the galvanic side each node belongs to.
     pub side: Vec<usize>,
+    /// By how many twelfths of a turn the phases of each node lag the supply's; `None` where units
+    /// joined otherwise on both sides lie between.
+    hours: Vec<Option<u8>>,
 }
 
 /// Walks the tree; conductors used where they are not carried, and voltages that do not fit, are errors.
@@ -47,6 +50,7 @@ pub(super) fn carry(
             ends: vec![[Conductors::NONE; 2]; branches],
             neutrals: vec![[NeutralPoint::None; 2]; branches],
             side: (0..nodes).collect(),
+            hours: vec![Some(0); nodes],
         },
     };
     for &node in &tree.order {
@@ -54,6 +58,9 @@ pub(super) fn carry(
             None => walk.supply(node),
             Some(feed) => walk.follow(node, feed),
         }
+    }
+    for tie in &tree.ties {
+        walk.tie(tie);
     }
     walk.carried
 }
@@ -99,6 +106,84 @@ impl Walk<'_> {
         self.carried.ends[feed.branch] = [carried; 2];
         self.carried.nominal_volts[node] = self.carried.nominal_volts[feed.parent];
         self.carried.side[node] = self.carried.side[feed.parent];
+        self.carried.hours[node] = self.carried.hours[feed.parent];
+    }
+
+    /// A branch that closes a ring: what it carries and brings must be there at both its ends.
+    fn tie(&mut self, tie: &RawTie) {
+        let (feed, far) = (tie.feed, tie.far);
+        let branch = &self.graph.branches[feed.branch];
+        let (conductors, volts, hours) = match branch.kind {
+            RawKind::Transformer(first) => {
+                let ends = self.transformer_ends(feed, first, self.carried.conductors[far]);
+                (ends.far_phases, ends.far_volts, ends.hours)
+            }
+            kind => {
+                let carried = match kind {
+                    RawKind::Bank(bank) => self.bank_conductors(bank, feed),
+                    _ => written_conductors(self.draft, kind).unwrap_or(Conductors::NONE),
+                };
+                self.require(carried, feed);
+                self.carried.ends[feed.branch] = [carried; 2];
+                (carried, self.carried.nominal_volts[feed.parent], self.carried.hours[feed.parent])
+            }
+        };
+        self.check_meeting(tie, conductors, volts, hours);
+    }
+
+    /// What a tie brings to its far node must be what the node carries, at its voltage and phase.
+    fn check_meeting(&mut self, tie: &RawTie, conductors: Conductors, volts: f64, hours: Option<u8>) {
+        let branch = &self.graph.branches[tie.feed.branch];
+        let end = if branch.to == tie.far { "to" } else { "from" };
+        let node = &self.graph.names[tie.far];
+        let at = place(self.draft, branch.origin, end, node);
+        let here = self.carried.conductors[tie.far];
+        let missing = conductors.minus(here);
+        let called = branch.called();
+        if !missing.is_empty() {
+            self.diagnostics.error(
+                Code::PhaseNotCarried,
+                at,
+                format!(
+                    "{called} closes a ring and brings {missing} to node {node}, which carries only {here}"
+                ),
+                match branch.kind {
+                    RawKind::Switch(_) => format!(
+                        "write all conductors of one switch in one row; else carry {missing} on the other way to node {node} as well"
+                    ),
+                    _ => format!("carry {missing} on the other way to node {node} as well, or open {called}"),
+                },
+            );
+            return;
+        }
+        let nominal = self.carried.nominal_volts[tie.far];
+        if (volts / nominal - 1.0).abs() > VOLTAGE_CLASS_TOLERANCE {
+            self.diagnostics.error(
+                Code::ClosedRing,
+                at,
+                format!(
+                    "{called} closes a ring and brings {:.3} kV to node {node}, which is at {:.3} kV",
+                    volts / 1e3,
+                    nominal / 1e3
+                ),
+                format!("check the nodes it joins and the voltages of the transformers in the ring, or open {called}"),
+            );
+            return;
+        }
+        if let (Some(brought), Some(found)) = (hours, self.carried.hours[tie.far])
+            && brought != found
+        {
+            self.diagnostics.error(
+                Code::ClosedRing,
+                at,
+                format!(
+                    "{called} closes a ring in which the phases do not meet: it brings them {} degrees behind the source to node {node}, where they are {} degrees behind",
+                    30 * u32::from(brought),
+                    30 * u32::from(found)
+                ),
+                format!("check the clock numbers of the transformers in the ring, or open {called}"),
+            );
+        }
     }
 
     /// A bank carries its phases, what they are regulated against, and the neutral where there is one.
@@ -172,42 +257,66 @@ impl Walk<'_> {
     }
 
     fn transformer(&mut self, node: usize, feed: RawFeed, first: usize) {
-        let records: Vec<&TransformerRecord> =
-            self.graph.units_of(first).map(|i| &self.draft.transformers[i]).collect();
-        let record = records[0];
-        let mut sides = [Side::bank(&records, End::From), Side::bank(&records, End::To)];
-        if feed.upstream == End::To {
-            sides.swap(0, 1);
+        let far = self.far_side(feed, first);
+        let mut conductors = far.phases;
+        if far.has_neutral && (far.phases.is_split() || self.wants_neutral(node)) {
+            conductors = conductors.with(Conductor::N);
         }
-        let [near, far] = &sides;
+        let ends = self.transformer_ends(feed, first, conductors);
+        self.carried.conductors[node] = conductors;
+        self.carried.nominal_volts[node] = ends.far_volts;
+        self.carried.hours[node] = ends.hours;
+        self.carried.side[node] = if ends.through { self.carried.side[feed.parent] } else { node };
+    }
+
+    fn records(&self, first: usize) -> Vec<&TransformerRecord> {
+        self.graph.units_of(first).map(|i| &self.draft.transformers[i]).collect()
+    }
+
+    /// The side of a bank away from the source.
+    fn far_side(&self, feed: RawFeed, first: usize) -> Side {
+        let far_end = if feed.upstream == End::From { End::To } else { End::From };
+        Side::bank(&self.records(first), far_end)
+    }
+
+    /// Ends and neutral points of a bank whose far node carries `there`; its near side is checked.
+    fn transformer_ends(&mut self, feed: RawFeed, first: usize, there: Conductors) -> TransformerEnds {
+        let (draft, graph) = (self.draft, self.graph);
+        let records: Vec<&TransformerRecord> =
+            graph.units_of(first).map(|i| &draft.transformers[i]).collect();
+        let record = records[0];
+        let (near, far) = (Side::bank(&records, feed.upstream), self.far_side(feed, first));
         self.require(near.phases, feed);
         for unit in &records {
             self.check_voltage(unit, feed);
         }
         self.check_far_voltages(&records, feed);
-        let mut conductors = far.phases;
-        if far.has_neutral && (far.phases.is_split() || self.wants_neutral(node)) {
-            conductors = conductors.with(Conductor::N);
-        }
-        self.carried.conductors[node] = conductors;
-        self.carried.nominal_volts[node] = far.nominal_volts();
-        let auto = matches!(record.group, VectorGroup::Auto | VectorGroup::SingleAuto);
-        self.carried.side[node] = if auto { self.carried.side[feed.parent] } else { node };
-        let near_point = self.neutral_point(near, feed.parent, record);
-        let far_point = self.neutral_point(far, node, record);
-        let near_conductors = match near_point {
-            NeutralPoint::Conductor => near.phases.with(Conductor::N),
-            _ => near.phases,
+        let here = self.carried.conductors[feed.parent];
+        let near_point = self.neutral_point(&near, here, feed.parent, record);
+        let other = graph.branches[feed.branch].other(feed.parent);
+        let far_point = self.neutral_point(&far, there, other, record);
+        let with = |side: &Side, point: NeutralPoint| match point {
+            NeutralPoint::Conductor => side.phases.with(Conductor::N),
+            _ => side.phases,
         };
+        let (near_conductors, far_conductors) = (with(&near, near_point), with(&far, far_point));
         let (ends, mut points) = match feed.upstream {
-            End::From => ([near_conductors, conductors], [near_point, far_point]),
-            End::To => ([conductors, near_conductors], [far_point, near_point]),
+            End::From => ([near_conductors, far_conductors], [near_point, far_point]),
+            End::To => ([far_conductors, near_conductors], [far_point, near_point]),
         };
+        let auto = matches!(record.group, VectorGroup::Auto | VectorGroup::SingleAuto);
         if auto {
             points = self.shared_neutral(points, record);
         }
+        // Where only the far side carries the shared neutral, that begins there.
+        let near_index = if feed.upstream == End::From { 0 } else { 1 };
+        let through = auto && points[near_index] != NeutralPoint::Shared;
         self.carried.ends[feed.branch] = ends;
         self.carried.neutrals[feed.branch] = points;
+        let hours = lag(&records, feed.upstream)
+            .zip(self.carried.hours[feed.parent])
+            .map(|(own, above)| (own + above) % 12);
+        TransformerEnds { far_phases: far.phases, far_volts: far.nominal_volts(), hours, through }
     }
 
     /// One neutral point for both sides of an autotransformer.
@@ -235,8 +344,14 @@ impl Walk<'_> {
         points
     }
 
-    fn neutral_point(&mut self, side: &Side, node: usize, record: &TransformerRecord) -> NeutralPoint {
-        let neutral = self.carried.conductors[node].has_neutral();
+    fn neutral_point(
+        &mut self,
+        side: &Side,
+        carried: Conductors,
+        node: usize,
+        record: &TransformerRecord,
+    ) -> NeutralPoint {
+        let neutral = carried.has_neutral();
         let point = match (side.has_neutral, side.floats) {
             (true, _) if neutral => NeutralPoint::Conductor,
             (true, _) => NeutralPoint::Earthed(side.earth_ohm.unwrap_or_default()),
@@ -307,9 +422,9 @@ impl Walk<'_> {
         let phase_volts = nominal_phase_volts(self.carried.conductors[feed.parent], nominal);
         let cure = if fits(far.nominal_volts()) {
             "from and to, or kv_from and kv_to, look exchanged".to_string()
-        } else if fits(near.nominal_volts() * SQRT_3) {
+        } else if is_near(near.nominal_volts() * SQRT_3, nominal) {
             "give the line-to-line voltage (phase voltage times 1.732)".to_string()
-        } else if fits(near.nominal_volts() / SQRT_3) {
+        } else if near.phase_to_neutral && is_near(near.nominal_volts() / SQRT_3, nominal) {
             "give the voltage of the winding itself (line-to-line over 1.732)".to_string()
         } else {
             format!("check {}, and to which node that side is joined", near.volts_column)
@@ -330,6 +445,37 @@ impl Walk<'_> {
             cure,
         );
     }
+}
+
+/// What a bank brings to its far node.
+struct TransformerEnds {
+    far_phases: Conductors,
+    far_volts: f64,
+    hours: Option<u8>,
+    /// Whether conductors go through, as in an autotransformer.
+    through: bool,
+}
+
+/// Hours by which the far side lags the near one; `None` where single-phase units are joined
+/// otherwise on both sides.
+fn lag(records: &[&TransformerRecord], upstream: End) -> Option<u8> {
+    let clock = match records[0].group {
+        VectorGroup::Three { clock, .. } => clock,
+        VectorGroup::Auto | VectorGroup::SingleAuto => 0,
+        VectorGroup::Single { clock } => {
+            let alike = |r: &&TransformerRecord| {
+                r.group == records[0].group && r.terminals.is_some_and(|[from, to]| from == to)
+            };
+            records.iter().all(alike).then_some(clock)?
+        }
+        VectorGroup::CentreTap { .. } => return None,
+    };
+    Some(if upstream == End::From { clock } else { (12 - clock) % 12 })
+}
+
+/// Near enough to be the same rated voltage: 11 and 6.6 kV are no phase voltage of each other.
+fn is_near(volts: f64, nominal: f64) -> bool {
+    (volts / nominal - 1.0).abs() <= 0.025
 }
 
 /// One side of a transformer record, or of a bank of single-phase units.

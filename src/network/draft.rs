@@ -5,6 +5,7 @@
 //! Quantities are SI (volts, amperes, ohms, siemens, watts, metres, radians, per unit as a plain
 //! ratio). Each record keeps its [`Origin`] so that a fault can be shown where it was written.
 
+use std::collections::HashSet;
 use std::sync::Arc;
 
 use super::conductor::{Conductors, Connection};
@@ -50,6 +51,38 @@ pub struct Draft {
     /// True where rows of meters or loads had faults that were reported: what lacks because of
     /// them is then not reported as well.
     pub metering_faulty: bool,
+    /// What was given and could not be read.
+    pub unread: Unread,
+}
+
+/// What was given but could not be read: each was told as a fault where it stands, and what is
+/// missing for want of it is not told as well.
+#[derive(Debug, Clone, Default)]
+pub struct Unread {
+    /// Nodes named by branches that could not be read.
+    pub nodes: HashSet<Name>,
+    /// True where the ends of such a branch are not known either.
+    pub branches: bool,
+    /// Lines that could not be read.
+    pub lines: HashSet<Name>,
+    /// True where a source could not be read.
+    pub supply: bool,
+    /// True where a load could not be read.
+    pub loads: bool,
+    /// True where a construction could not be read.
+    pub constructions: bool,
+}
+
+impl Unread {
+    /// True where a branch that could not be read may join the node.
+    pub fn joins(&self, node: &str) -> bool {
+        self.branches || self.nodes.contains(node)
+    }
+
+    /// True where there may be loads beyond those that were read and are fed.
+    pub fn may_draw(&self) -> bool {
+        self.loads || self.branches || !self.nodes.is_empty()
+    }
 }
 
 /// Fault level of the supply, one kind of fault.

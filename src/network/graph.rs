@@ -1,11 +1,12 @@
 //! Which nodes there are, what joins them, and the tree that hangs from the supply.
 
-use std::collections::{HashMap, HashSet, VecDeque};
+use std::cmp::Reverse;
+use std::collections::{BinaryHeap, HashMap, HashSet, VecDeque};
 
 use super::conductor::Conductors;
 use super::draft::{Draft, Name, SwitchState, TransformerRecord};
 use super::model::End;
-use super::ring::report_ring;
+use super::ring::check_rings;
 use super::transformer::VectorGroup;
 use crate::diagnostic::{Code, Diagnostics, Origin, Place};
 
@@ -190,17 +191,26 @@ pub(super) struct RawFeed {
     pub upstream: End,
 }
 
-/// The tree from the supply: nodes breadth first, and how each is fed.
+/// A closed branch between two nodes that are fed without it; `far` is its other end.
+#[derive(Debug, Clone, Copy)]
+pub(super) struct RawTie {
+    pub feed: RawFeed,
+    pub far: usize,
+}
+
+/// The tree from the supply: nodes breadth first, how each is fed, and what closes rings.
 pub(super) struct Tree {
+    pub ties: Vec<RawTie>,
     pub order: Vec<usize>,
     pub feeds: Vec<Option<RawFeed>>,
     pub fed: Vec<bool>,
 }
 
-/// Walks outwards from the supply over closed branches; every branch that closes a ring is an error.
+/// Walks outwards from the supply over closed branches; a branch between nodes that are fed already is a tie.
 pub(super) fn grow(draft: &Draft, graph: &Graph, root: usize, diagnostics: &mut Diagnostics) -> Tree {
     let count = graph.names.len();
-    let mut tree = Tree { order: vec![root], feeds: vec![None; count], fed: vec![false; count] };
+    let mut tree =
+        Tree { ties: Vec::new(), order: vec![root], feeds: vec![None; count], fed: vec![false; count] };
     tree.fed[root] = true;
     let mut closing = HashSet::new();
     let mut next = 0;
@@ -212,20 +222,80 @@ pub(super) fn grow(draft: &Draft, graph: &Graph, root: usize, diagnostics: &mut 
                 continue;
             }
             let branch = &graph.branches[b];
-            let child = branch.other(node);
-            if tree.fed[child] {
-                if closing.insert(b) {
-                    report_ring(draft, graph, &tree, b, diagnostics);
+            let other = branch.other(node);
+            let upstream = if branch.from == node { End::From } else { End::To };
+            let feed = RawFeed { branch: b, parent: node, upstream };
+            if tree.fed[other] {
+                // A branch to a child is met again from there.
+                if tree.feeds[other].is_none_or(|f| f.branch != b) && closing.insert(b) {
+                    tree.ties.push(RawTie { feed, far: other });
                 }
                 continue;
             }
-            tree.fed[child] = true;
-            let upstream = if branch.from == node { End::From } else { End::To };
-            tree.feeds[child] = Some(RawFeed { branch: b, parent: node, upstream });
-            tree.order.push(child);
+            tree.fed[other] = true;
+            tree.feeds[other] = Some(feed);
+            tree.order.push(other);
+        }
+    }
+    if !tree.ties.is_empty() {
+        let reported = check_rings(draft, graph, diagnostics);
+        tree = widest(draft, graph, root);
+        // What was told once is not told again in other words.
+        tree.ties.retain(|tie| !reported.contains(&tie.feed.branch));
+    }
+    tree
+}
+
+/// The tree of a network with rings: every node is fed by the way that carries most conductors, and
+/// of such the one with fewest branches; the branches left over are ties.
+fn widest(draft: &Draft, graph: &Graph, root: usize) -> Tree {
+    let count = graph.names.len();
+    let mut tree =
+        Tree { ties: Vec::new(), order: Vec::new(), feeds: vec![None; count], fed: vec![false; count] };
+    // Widest first, then nearest, then in the order met.
+    let mut queue = BinaryHeap::new();
+    let mut met = Reverse(0u32);
+    queue.push((usize::MAX, Reverse(0u32), met, root, None::<(usize, usize)>));
+    while let Some((width, Reverse(depth), _, node, by)) = queue.pop() {
+        let upstream = |b: usize| if graph.branches[b].to == node { End::From } else { End::To };
+        let feed = by.map(|(branch, parent)| RawFeed { branch, parent, upstream: upstream(branch) });
+        if tree.fed[node] {
+            tree.ties.extend(feed.map(|feed| RawTie { feed, far: node }));
+            continue;
+        }
+        tree.fed[node] = true;
+        tree.feeds[node] = feed;
+        tree.order.push(node);
+        for b in graph.closed_at(node) {
+            let other = graph.branches[b].other(node);
+            let known = tree.feeds[node].is_some_and(|f| f.branch == b) || tree.fed[other];
+            if known {
+                continue;
+            }
+            met.0 += 1;
+            let width = width.min(conductors_of(draft, graph, b));
+            queue.push((width, Reverse(depth + 1), met, other, Some((b, node))));
         }
     }
     tree
+}
+
+/// How many conductors a branch takes on.
+fn conductors_of(draft: &Draft, graph: &Graph, branch: usize) -> usize {
+    match graph.branches[branch].kind {
+        RawKind::Bank(bank) => {
+            let units = graph.banks[bank].iter().map(|&i| draft.regulators[i].phases);
+            // The neutral goes through where there is one.
+            units.fold(Conductors::N, Conductors::union).count()
+        }
+        RawKind::Transformer(first) => {
+            let units = graph.units_of(first).map(|i| draft.transformers[i].terminals);
+            let far =
+                units.map(|t| t.map_or(Conductors::ABCN, |[from, to]| from.phases().union(to.phases())));
+            far.fold(Conductors::N, Conductors::union).count()
+        }
+        kind => written_conductors(draft, kind).map_or(0, Conductors::count),
+    }
 }
 
 /// Joins names with commas, the first `most` of them, and counts the rest.
@@ -255,6 +325,9 @@ pub(super) fn report_unfed(draft: &Draft, graph: &Graph, tree: &Tree, diagnostic
         }
     }
     for (p, nodes) in members.iter().enumerate() {
+        if nodes.iter().any(|&n| draft.unread.joins(&graph.names[n])) {
+            continue; // a branch that was told as faulty may feed it
+        }
         if nodes.len() == 1 && graph.at(nodes[0]).all(|b| is_switch(graph, b)) && watts[p] == 0.0 {
             continue; // nothing but a switch end: told as an isolated switch
         }
@@ -397,6 +470,7 @@ pub(super) fn report_isolated_switches(
         let lonely: Vec<usize> = [branch.from, branch.to]
             .into_iter()
             .filter(|&n| graph.at(n).count() == 1 && !used.contains(&n))
+            .filter(|&n| !draft.unread.joins(&graph.names[n]) && !draft.unread.loads)
             .collect();
         if let Some(&node) = lonely.first() {
             let column = if branch.from == node { "from" } else { "to" };

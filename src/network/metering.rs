@@ -12,8 +12,8 @@ use super::meter::{
     Channel, Meter, MeterPlace, MeterRecord, MeterSite, ReactiveReading, Reading, Share, ShareBasis,
     ShareRecord,
 };
-use super::model::{BranchId, End, Feed, NodeId};
-use super::zone::{Zones, phases_at};
+use super::model::{BranchId, End, Feed, NodeId, Tie};
+use super::zone::{Zones, in_rings, phases_at};
 use crate::diagnostic::{Code, Origin, nearest};
 
 /// The parts of the network that meters are joined to.
@@ -23,6 +23,7 @@ pub(super) struct Metered<'a> {
     pub(super) new_node: &'a [Option<NodeId>],
     pub(super) feeds: &'a [Option<Feed>],
     pub(super) order: &'a [NodeId],
+    pub(super) ties: &'a [Tie],
     pub(super) loads: Vec<Load>,
 }
 
@@ -73,6 +74,7 @@ impl Builder<'_> {
         let mut meters: Vec<Meter> = Vec::new();
         let mut origins: Vec<Vec<Option<Origin>>> = Vec::new();
         let mut known: HashMap<&str, Option<usize>> = HashMap::new();
+        let rings = in_rings(network.feeds, network.ties);
         let draft = self.draft;
         for record in &draft.meters {
             let index = match known.get(&*record.meter) {
@@ -99,7 +101,11 @@ impl Builder<'_> {
             let (reading, reactive) = (record.reading, record.reactive);
             meter.channels.push(Channel { phase: record.phase, reading, reactive, shares: Vec::new() });
             rows.push(record.origin);
-            self.check_phase(network, meter.place, record);
+            let place = meter.place;
+            self.check_phase(network, place, record);
+            if matches!(place, MeterPlace::Branch { branch, .. } if rings.contains(&branch)) {
+                self.ring_meter(record);
+            }
         }
         (meters, origins)
     }
@@ -131,6 +137,10 @@ impl Builder<'_> {
                 let branch = network.parts.new_branch.get(raw).copied().flatten();
                 let feed = branch.and_then(|b| network.feeds.iter().flatten().find(|f| f.branch == b));
                 let Some(feed) = feed else {
+                    if branch.is_some() {
+                        self.ring_meter(record);
+                        return None;
+                    }
                     self.unfed_meter(record, "line", name);
                     return None;
                 };
@@ -163,6 +173,20 @@ impl Builder<'_> {
             place(self.draft, record.origin, what, name),
             format!("meter {} is at {what} {name}, which is not fed: it can read nothing", record.meter),
             "close the switch or line that feeds it, or take the meter out",
+        );
+    }
+
+    fn ring_meter(&mut self, record: &MeterRecord) {
+        let (column, found) = match &record.site {
+            MeterSite::Head => ("meter", &record.meter),
+            MeterSite::Node(name) => ("node", name),
+            MeterSite::Line(name) => ("line", name),
+        };
+        self.diagnostics.error(
+            Code::NotSupported,
+            place(self.draft, record.origin, column, found),
+            format!("meter {} reads a branch of a closed ring: the loads behind it are fed from its other side as well", record.meter),
+            "move the meter out of the ring, open the ring where it was open when the meter was read, or take the meter out",
         );
     }
 

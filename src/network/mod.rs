@@ -12,9 +12,11 @@ mod load;
 mod meter;
 mod metering;
 mod model;
+mod plausible;
 mod regulator;
 mod ring;
 mod shunts;
+mod star_point;
 mod study;
 mod supply;
 mod transformer;
@@ -26,7 +28,7 @@ pub use conductor::{Conductor, Conductors, Connection};
 pub use draft::{
     Across, CapacitorRecord, Construction, Draft, FaultLevel, LineRecord, LoadRecord, LoadSite, Name,
     NodeRecord, RegulatorControl, RegulatorRecord, SupplyRecord, SwitchRecord, SwitchState,
-    TransformerRecord,
+    TransformerRecord, Unread,
 };
 pub use load::{Capacitor, Load, LoadModel, LoadPlace};
 pub use meter::{
@@ -35,8 +37,10 @@ pub use meter::{
 };
 pub use model::{
     Branch, BranchId, BranchKind, ConstructionId, End, Feed, Line, Network, Node, NodeId, SOLID_EARTH_OHM,
+    Stay, StayPlace, Tie,
 };
 pub use regulator::{Regulator, RegulatorUnit, TapMode};
+pub use star_point::{WeakStarPoint, weak_star_points};
 pub use study::Study;
 pub use supply::Supply;
 pub use transformer::{BOND_OHM, NeutralPoint, Transformer, VectorGroup, Winding};

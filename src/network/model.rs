@@ -1,7 +1,8 @@
-//! The network as it is solved: a radial tree of nodes and branches, checked and with indices.
+//! The network as it is solved: a tree of nodes and branches and the ties that close rings in it,
+//! checked and with indices.
 //!
 //! Only [`super::build`] makes one, so whoever holds a [`Network`] may rely on this:
-//! every node is fed from the supply by exactly one closed path; every branch carries only
+//! every node is fed from the supply by exactly one path of the tree; every branch carries only
 //! conductors both its nodes have; impedances are positive; names are unique a kind.
 
 use super::conductor::{Conductor, Conductors, Connection};
@@ -163,6 +164,42 @@ pub struct Feed {
     pub upstream: End,
 }
 
+/// A closed branch that the tree leaves out: it closes a ring. Its `upstream` end is at `near`, its
+/// other end at `far`; both nodes are fed without it.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub struct Tie {
+    /// The branch.
+    pub branch: BranchId,
+    /// Node at its end nearer the source.
+    pub near: NodeId,
+    /// Node at its other end.
+    pub far: NodeId,
+    /// Which end of the branch is at `near`.
+    pub upstream: End,
+}
+
+/// Where a [`Stay`] stands.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum StayPlace {
+    /// At a node.
+    Node(NodeId),
+    /// At the far end of a tie, on its side of the opening: index in [`Network::ties`].
+    TieEnd(usize),
+}
+
+/// A susceptance to earth for a part of the network that only its ties hold: with the rings opened
+/// it would float. It is no part of the network; a method that opens rings may put it there if it
+/// takes its current out again.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Stay {
+    /// Where it stands.
+    pub place: StayPlace,
+    /// Susceptance on each conductor, siemens.
+    pub siemens: f64,
+    /// Conductors that have it.
+    pub on: Conductors,
+}
+
 /// An end of a branch.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum End {
@@ -172,7 +209,7 @@ pub enum End {
     To,
 }
 
-/// A checked radial network.
+/// A checked network: a tree of branches from the supply, and ties that close rings.
 #[derive(Debug, Clone)]
 pub struct Network {
     /// Settings and limits.
@@ -196,6 +233,10 @@ pub struct Network {
     pub feeds: Vec<Option<Feed>>,
     /// Nodes from the supply outwards, breadth first: a parent stands before its children.
     pub order: Vec<NodeId>,
+    /// Branches that close rings; none in a radial network.
+    pub ties: Vec<Tie>,
+    /// What would float with the rings opened.
+    pub stays: Vec<Stay>,
 }
 
 impl Network {
@@ -222,6 +263,45 @@ impl Network {
     /// Shunt admittance of a whole line, siemens; half of it stands at each end.
     pub fn line_shunt(&self, line: &Line) -> PhaseMatrix {
         self.construction(line).y_per_m * Complex64::from(line.length_m * f64::from(line.sets))
+    }
+
+    /// The network with its rings opened at the far ends of the ties: each tie leads to a node of
+    /// its own, after all others and in the order of [`Network::ties`], and the stays stand.
+    pub fn opened(&self) -> Network {
+        let mut opened = self.clone();
+        for tie in std::mem::take(&mut opened.ties) {
+            let tail = NodeId(opened.nodes.len() as u32);
+            let far = self.node(tie.far);
+            let branch = &mut opened.branches[tie.branch.index()];
+            let conductors = match tie.upstream {
+                End::From => {
+                    branch.to = tail;
+                    branch.to_conductors
+                }
+                End::To => {
+                    branch.from = tail;
+                    branch.from_conductors
+                }
+            };
+            opened.nodes.push(Node {
+                conductors,
+                earth_ohm: None,
+                reference_siemens: 0.0,
+                reference_on: Conductors::NONE,
+                ..far.clone()
+            });
+            opened.feeds.push(Some(Feed { branch: tie.branch, parent: tie.near, upstream: tie.upstream }));
+            opened.order.push(tail);
+        }
+        for stay in std::mem::take(&mut opened.stays) {
+            let index = match stay.place {
+                StayPlace::Node(id) => id.index(),
+                StayPlace::TieEnd(tie) => self.nodes.len() + tie,
+            };
+            let node = &mut opened.nodes[index];
+            (node.reference_siemens, node.reference_on) = (stay.siemens, stay.on);
+        }
+        opened
     }
 
     /// Nodes where a load draws, each with its share of the load.

@@ -42,7 +42,7 @@ impl Builder<'_> {
             });
         }
         let capacitors = self.capacitors(joined, new_node);
-        if loads.is_empty() && !self.diagnostics.has_errors() {
+        if loads.is_empty() && !self.diagnostics.has_errors() && !self.draft.unread.may_draw() {
             self.diagnostics.warning(
                 Code::NoLoad,
                 None,
@@ -171,6 +171,9 @@ impl Builder<'_> {
         origin: Option<Origin>,
     ) -> Option<LoadPlace> {
         let Some(&b) = parts.lines.get(line) else {
+            if self.draft.unread.branches || self.draft.unread.lines.contains(line) {
+                return None;
+            }
             let cure = match nearest(line, parts.lines.keys().map(|n| &**n)) {
                 Some(near) => format!("did you mean {near:?}?"),
                 None => "give the name of a line in lines.csv, or a node".to_string(),

@@ -1,13 +1,13 @@
 //! Which meter a load is behind, and from which phases it draws there.
 
-use std::collections::HashMap;
+use std::collections::{HashMap, HashSet};
 
 use super::branches::Branches;
 use super::conductor::{Conductor, Connection};
 use super::load::Load;
 use super::meter::{Meter, MeterPlace};
 use super::metering::hangs;
-use super::model::{BranchId, BranchKind, End, Feed, NodeId};
+use super::model::{BranchId, BranchKind, End, Feed, NodeId, Tie};
 use super::transformer::VectorGroup;
 
 /// For each node the nearest meter towards the source, and the same for loads along a branch.
@@ -78,6 +78,24 @@ impl Zones {
             (None, None) => self.head,
         }
     }
+}
+
+/// Branches of closed rings: those between either end of a tie and where their paths meet.
+pub(super) fn in_rings(feeds: &[Option<Feed>], ties: &[Tie]) -> HashSet<BranchId> {
+    let path = |mut node: NodeId| {
+        let mut branches = HashSet::new();
+        while let Some(feed) = feeds.get(node.index()).copied().flatten() {
+            branches.insert(feed.branch);
+            node = feed.parent;
+        }
+        branches
+    };
+    let ring = |tie: &Tie| {
+        let (near, far) = (path(tie.near), path(tie.far));
+        let both: Vec<BranchId> = near.symmetric_difference(&far).copied().collect();
+        both.into_iter().chain([tie.branch])
+    };
+    ties.iter().flat_map(ring).collect()
 }
 
 /// Direction of the voltage across an element, in hours of 30 degrees ahead of phase a.

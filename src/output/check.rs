@@ -25,6 +25,9 @@ pub fn summary_text(summary: &Summary) -> String {
     section(&mut text, "Transformers", &transformers(summary));
     section(&mut text, "Loads at nominal voltage", &loads(summary));
     section(&mut text, "Load by phase", &phases(summary));
+    if !summary.rings_closed_by.is_empty() {
+        text.push_str(&folded("", &rings(&summary.rings_closed_by)));
+    }
     let _ = writeln!(
         text,
         "Closed switches {}, regulated phases {}, capacitors {} ({} kvar)",
@@ -34,6 +37,18 @@ pub fn summary_text(summary: &Summary) -> String {
         number(summary.capacitor_kvar, 1)
     );
     text
+}
+
+/// How many rings there are, and what closes them.
+fn rings(closed_by: &[String]) -> String {
+    const SHOWN: usize = 8;
+    let names = closed_by.iter().take(SHOWN).cloned().collect::<Vec<_>>().join(", ");
+    let more = match closed_by.len().saturating_sub(SHOWN) {
+        0 => String::new(),
+        more => format!(" and {more} more"),
+    };
+    let many = if closed_by.len() == 1 { "ring" } else { "rings" };
+    format!("{} closed {many}, closed by {names}{more}", closed_by.len())
 }
 
 fn section(text: &mut String, heading: &str, table: &Table) {

@@ -60,7 +60,10 @@ impl Folder {
     /// overwrite: the input folder or any other.
     pub fn new(path: &Path, input: &Path) -> io::Result<Folder> {
         // Made first: a path through folders that are not there yet may still end at the input.
-        fs::create_dir_all(path)?;
+        fs::create_dir_all(path).map_err(|e| {
+            let why = if path.is_file() { "it is a file, not a folder".to_string() } else { e.to_string() };
+            io::Error::new(e.kind(), format!("the folder {} cannot be made: {why}", path.display()))
+        })?;
         if path.canonicalize()? == input.canonicalize()? {
             return Err(refused(format!(
                 "{} is the network folder itself; results there would overwrite its files: name another folder",

@@ -57,7 +57,25 @@ pub fn construction_text(report: &ConstructionReport) -> String {
     }
     list(&mut text, "Assumptions", &report.assumptions);
     list(&mut text, "Sources", &report.sources);
+    text.push_str(&provenance(report.sources.iter().map(String::as_str)));
     text
+}
+
+/// What the words in brackets behind sources mean, those that occur.
+fn provenance<'a>(sources: impl Iterator<Item = &'a str>) -> String {
+    let sources: Vec<&str> = sources.collect();
+    let words = [
+        ("read", "taken from the document named"),
+        ("memory", "written down from memory of it, not held against it: check before you rely on it"),
+        ("mixed", "some values taken from it, some from memory"),
+        ("given", "from your own conductors.csv or the command line"),
+    ];
+    let told: Vec<String> = words
+        .into_iter()
+        .filter(|(word, _)| sources.iter().any(|s| s.ends_with(&format!("({word})"))))
+        .map(|(word, meaning)| format!("({word}): {meaning}"))
+        .collect();
+    if told.is_empty() { String::new() } else { folded("  ", &format!("{}.", told.join("; "))) }
 }
 
 fn list(text: &mut String, heading: &str, items: &[String]) {
@@ -139,6 +157,7 @@ pub fn wires_text(wires: &[&Conductor], temperature_c: f64, frequency_hz: f64) -
     sources.sort();
     sources.dedup();
     list(&mut text, "Sources", &sources);
+    text.push_str(&provenance(sources.iter().map(String::as_str)));
     let _ = writeln!(text, "{CAUTION}");
     text
 }

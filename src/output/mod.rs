@@ -14,6 +14,6 @@ pub use check::summary_text;
 pub use csv::guarded;
 pub use diagnostics::{diagnostics_json, diagnostics_lines, diagnostics_text};
 pub use files::{Folder, write_file};
-pub use flow::{Length, flow_csv, flow_json, flow_text, no_solution_text};
+pub use flow::{Length, flow_csv, flow_json, flow_text, loadability_text, no_solution_text};
 pub use line::{construction_text, drop_text, json_rows, matrix_rows, rows_csv, sizes_text, wires_text};
 pub use table::{Align, Cell, Colour, Column, Table, WIDTH};

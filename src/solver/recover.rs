@@ -51,7 +51,7 @@ impl Workspace<'_> {
                 let done = Iterations { count, change_pu };
                 let followed = self.checked(settings, done, done, true);
                 let good = followed.status == Status::Converged;
-                if !good || converged && same(self.network, &swept, &followed) {
+                if !good || converged && same(self.whole, &swept, &followed) {
                     return swept;
                 }
                 Solution { path: Path::Followed, ..followed }
@@ -98,7 +98,9 @@ impl Workspace<'_> {
         let mut solution = self.solution();
         solution.iterations = total.count;
         solution.change_pu = last.change_pu;
-        let check = residual(self.network, &solution);
+        // Nodes of the openings are no part of the network.
+        solution.volts.truncate(self.whole.nodes.len());
+        let check = residual(self.whole, &solution);
         solution.mismatch_amps = check.amps;
         solution.mismatch_volts = check.volts;
         solution.worst_node = check.node;
@@ -113,9 +115,17 @@ impl Workspace<'_> {
             Status::IterationLimit
         };
         if !settled {
-            solution.worst_node = self.largest_change(&before);
+            solution.worst_node = self.in_network(self.largest_change(&before));
         }
         solution
+    }
+
+    /// The node of the network that a node of the opened one stands for.
+    fn in_network(&self, id: NodeId) -> NodeId {
+        match id.index().checked_sub(self.whole.nodes.len()) {
+            None => id,
+            Some(tie) => self.whole.ties[tie].far,
+        }
     }
 
     /// Node whose voltage still moves most, per unit.

@@ -68,8 +68,28 @@ impl Workspace<'_> {
         self.passes(Passes::Settle);
     }
 
-    /// Makes the passes with the widest instructions the processor has; gives the largest change, per unit.
+    /// Makes the passes; gives the largest change, per unit. With rings or machines, passes over the opened
+    /// network find the mismatch at their ports first, and those that count follow with it mended.
     fn passes(&mut self, which: Passes) -> f64 {
+        let Some(mut ports) = self.ports.take() else { return self.tree_passes(which) };
+        if which == Passes::Down {
+            self.state.amps.fill(Slots::ZERO);
+        }
+        ports.own.copy_from_slice(&self.state.amps);
+        ports.before.copy_from_slice(&self.state.volts);
+        ports.draw(&mut self.state.amps);
+        self.tree_passes(Passes::Settle);
+        ports.correct(&self.state.volts);
+        self.state.amps.copy_from_slice(&ports.own);
+        ports.draw(&mut self.state.amps);
+        self.state.volts.copy_from_slice(&ports.before);
+        let change = self.tree_passes(if which == Passes::Down { Passes::UpAndDown } else { which });
+        self.ports = Some(ports);
+        change
+    }
+
+    /// Passes over the tree, with the widest instructions the processor has.
+    fn tree_passes(&mut self, which: Passes) -> f64 {
         let Workspace { layout, loads, state, .. } = self;
         #[cfg(target_arch = "x86_64")]
         if std::arch::is_x86_feature_detected!("avx2") && std::arch::is_x86_feature_detected!("fma") {

@@ -1,6 +1,6 @@
 //! Terminal admittances of a transformer from its windings and neutral points.
 
-use super::windings::{INNER, TO, elements};
+use super::windings::{INNER, TO, bond, elements};
 use crate::math::{Complex64, PhaseMatrix, ZERO};
 use crate::network::{NeutralPoint, Transformer};
 
@@ -27,7 +27,7 @@ impl Terminals {
     /// Joins the windings of all units and takes the neutral points where they go (see [`Transformer`]).
     pub fn of(t: &Transformer) -> Terminals {
         let mut y = Primitive::zeros();
-        for element in t.units().flat_map(elements) {
+        for element in t.units().flat_map(elements).chain(bond(t)) {
             for &(row, by) in &element.weights {
                 for &(column, times) in &element.weights {
                     y[(row, column)] += element.siemens * (by * times);

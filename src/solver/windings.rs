@@ -64,15 +64,20 @@ pub(super) fn elements(t: &Transformer) -> Vec<Element> {
     elements
 }
 
+/// The bond between the neutral conductors of an autotransformer's sides, where both carry one.
+pub(super) fn bond(t: &Transformer) -> Option<Element> {
+    let auto = matches!(t.group, VectorGroup::Auto | VectorGroup::SingleAuto);
+    let both = [t.from_neutral, t.to_neutral] == [NeutralPoint::Conductor; 2];
+    (auto && both).then(|| Element::shunt(Complex64::from(BOND_OHM.recip()), (N, N + TO)))
+}
+
 /// One neutral point for both sides of an autotransformer.
-fn share_neutral(t: &Transformer, elements: &mut Vec<Element>) {
+fn share_neutral(t: &Transformer, elements: &mut [Element]) {
     let (lost, kept) = match (t.from_neutral, t.to_neutral) {
         (NeutralPoint::Shared, _) => (N, N + TO),
         (_, NeutralPoint::Shared) => (N + TO, N),
-        _ => {
-            elements.push(Element::shunt(Complex64::from(BOND_OHM.recip()), (N, N + TO)));
-            return;
-        }
+        // Two conductors with a bond between.
+        _ => return,
     };
     let terminals = elements.iter_mut().flat_map(|element| &mut element.weights);
     terminals.filter(|(terminal, _)| *terminal == lost).for_each(|(terminal, _)| *terminal = kept);

@@ -11,6 +11,7 @@ use super::branch::{
 };
 use super::injection::{Gathered, Mixed, StarPower, gather};
 use super::lanes::{Columns, Slots};
+use super::ports::Ports;
 use crate::math::{Complex64, PhaseMatrix, ZERO};
 use crate::network::{BranchKind, LoadModel, Network, NodeId};
 
@@ -114,10 +115,14 @@ pub struct Workspace<'a> {
     pub(super) state: State,
     /// Linear admittance each node sees, by node index: needed once, for the currents.
     pub(super) seen: Vec<Seen>,
+    /// Currents of rings and machines; `None` where there are none.
+    pub(super) ports: Option<Box<Ports>>,
+    /// The network itself, where [`Self::network`] is that with its rings opened.
+    pub(super) whole: &'a Network,
 }
 
 impl<'a> Workspace<'a> {
-    /// Lays out and eliminates a network.
+    /// Lays out and eliminates a network without rings.
     ///
     /// # Errors
     /// The node where the linear part has no solution (opposite impedances, or a side without reference).
@@ -149,7 +154,30 @@ impl<'a> Workspace<'a> {
         let zero = vec![Slots::ZERO; count];
         let mut state = State { volts: zero.clone(), amps: zero.clone(), drop: zero };
         state.volts[0] = Slots::from(&network.supply.held_volts);
-        Ok(Workspace { network, nodes, layout, loads, state, seen })
+        Ok(Workspace { network, nodes, layout, loads, state, seen, ports: None, whole: network })
+    }
+
+    /// The same for a network with rings and that network with its rings opened ([`Network::opened`]).
+    ///
+    /// # Errors
+    /// As [`Self::new`]; also where a ring leaves a current undetermined.
+    pub fn meshed(whole: &'a Network, opened: &'a Network) -> Result<Workspace<'a>, NodeId> {
+        Self::with_machines(whole, opened, &[])
+    }
+
+    /// The same, with machines at three-phase nodes whose admittances are given later and may change.
+    ///
+    /// # Errors
+    /// As [`Self::meshed`].
+    pub(super) fn with_machines(
+        whole: &'a Network,
+        opened: &'a Network,
+        machines: &[NodeId],
+    ) -> Result<Workspace<'a>, NodeId> {
+        let mut workspace = Workspace::new(opened)?;
+        workspace.ports = Some(Box::new(Ports::new(&mut workspace, whole, machines)?));
+        workspace.whole = whole;
+        Ok(workspace)
     }
 }
 

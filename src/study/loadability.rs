@@ -5,6 +5,8 @@ use crate::solver::{Path, Settings, Solution, Status, solve};
 
 /// Factors are told apart down to this share.
 const RESOLUTION: f64 = 1e-3;
+/// Solves that are expected while the limit is not enclosed yet.
+const FIRST_GUESS: u32 = 13;
 /// Growth beyond this is not looked for.
 const MOST: f64 = 1000.0;
 
@@ -28,7 +30,30 @@ pub struct Loadability {
 /// solve passes both convergence tests. A network that has no solution as it stands gives a
 /// factor below 1.
 pub fn loadability(network: &Network, settings: &Settings) -> Loadability {
-    let attempt = |factor: f64| {
+    loadability_with(network, settings, |_| {})
+}
+
+/// How far a search has come.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Progress {
+    /// Solves done so far.
+    pub solved: u32,
+    /// Solves expected in all; settles once the limit is enclosed.
+    pub expected: u32,
+    /// Factor that is solved next.
+    pub factor: f64,
+}
+
+/// [`loadability`], telling before each solve how far it has come.
+pub fn loadability_with(
+    network: &Network,
+    settings: &Settings,
+    mut tell: impl FnMut(Progress),
+) -> Loadability {
+    let mut solved_so_far = 0;
+    let mut attempt = |factor: f64, left: u32| {
+        tell(Progress { solved: solved_so_far, expected: solved_so_far + left, factor });
+        solved_so_far += 1;
         let grown = grown(network, factor);
         let solution = solve(&grown, settings);
         let good = solution.status == Status::Converged && !matches!(solution.path, Path::Folds { .. });
@@ -37,7 +62,7 @@ pub fn loadability(network: &Network, settings: &Settings) -> Loadability {
     let (mut low, mut high, mut solved) = (0.0, None, None);
     let mut factor = 1.0;
     while high.is_none() && factor <= MOST {
-        match attempt(factor) {
+        match attempt(factor, FIRST_GUESS) {
             Some(solution) => (low, solved) = (factor, Some(solution)),
             None => high = Some(factor),
         }
@@ -48,13 +73,14 @@ pub fn loadability(network: &Network, settings: &Settings) -> Loadability {
     };
     while high - low > RESOLUTION * high && high > 1e-6 {
         let middle = 0.5 * (low + high);
-        match attempt(middle) {
+        let left = ((high - low) / (RESOLUTION * high)).log2().ceil().max(1.0) as u32 + 1;
+        match attempt(middle, left) {
             Some(solution) => (low, solved) = (middle, Some(solution)),
             None => high = middle,
         }
     }
     let weakest = solved.and_then(|at_limit| {
-        let before = attempt(low * 0.99)?;
+        let before = attempt(low * 0.99, 1)?;
         weakest(network, &before, &at_limit)
     });
     Loadability {

@@ -86,6 +86,8 @@ pub struct Summary {
     pub loads: Vec<LoadsOf>,
     /// Load on each phase.
     pub phases: Vec<LoadOn>,
+    /// Branches that close a ring, each with its kind: `line L7`.
+    pub rings_closed_by: Vec<String>,
     /// Number of closed switches.
     pub switches: usize,
     /// Number of regulated phases.
@@ -124,6 +126,14 @@ pub fn summary(network: &Network) -> Summary {
         transformers: branches.transformers.into_values().collect(),
         loads: loads(network),
         phases: phases(network),
+        rings_closed_by: network
+            .ties
+            .iter()
+            .map(|tie| {
+                let branch = network.branch(tie.branch);
+                format!("{} {}", branch.kind.word(), branch.name)
+            })
+            .collect(),
         switches: branches.switches,
         regulated_phases: branches.regulated_phases,
         capacitors: network.capacitors.len(),

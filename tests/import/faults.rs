@@ -71,6 +71,33 @@ const CELLS: &[(&str, Files)] = &[
         "rating zero",
         &[("lines.csv", "line,from,to,phases,length_m,construction,rating_a\nL1,S,A,abcn,100,cable,0\n")],
     ),
+    ("thousands or nothing, commas", &[("loads.csv", "load,node,phases,kw,pf\nhouse,A,an,\"1,200\",0.95\n")]),
+    (
+        "percentages as fractions",
+        &[(
+            "study.csv",
+            "setting,value\nvoltage_low_percent,0.94\nvoltage_high_percent,1.06\ndrop_limit_percent,0.05\n\
+             unbalance_limit_percent,0.02\nconstant_power_floor_percent,0.7\nload_growth_percent,0.03\n",
+        )],
+    ),
+    ("power in watts", &[("loads.csv", "load,node,phases,W,pf\nhouse,A,an,2000,0.95\n")]),
+    (
+        "clock number before the last letter",
+        &[(
+            "transformers.csv",
+            "transformer,from,to,kva,kv_from,kv_to,group,r_percent,x_percent\nT,A,B,63,11,0.4,Dy11n,1,4\n",
+        )],
+    ),
+    (
+        "names that a spreadsheet has changed",
+        &[
+            (
+                "lines.csv",
+                "line,from,to,phases,length_m,construction\n4-Mar,S,A,abcn,100,cable\nL2,A,1.00E+05,abcn,100,cable\n",
+            ),
+            ("loads.csv", "load,node,phases,kw,pf\nhouse,1.00E+05,an,2,1\n"),
+        ],
+    ),
     // Words, names and conductors.
     (
         "state misspelt",

@@ -55,6 +55,17 @@ const CASES: &[(&str, Files)] = &[
     ("meter at an open line", &[HOUSE, meters!("M,,L3,,20,,,")]),
     ("two meters at one place", &[HOUSE, meters!("M,,,,20,,,", "N,S,,,20,,,")]),
     (
+        "meters in a closed ring",
+        &[
+            (
+                "lines.csv",
+                "line,from,to,phases,length_m,construction\nL1,S,A,abcn,100,cable\nL2,A,B,abcn,100,cable\nL3,A,C,abcn,90,cable\nL4,B,C,abcn,90,cable\n",
+            ),
+            HOUSE,
+            meters!("M,,,,20,,,", "N,,L2,,10,,,", "P,,L4,,1,,,", "Q,C,,,10,,,"),
+        ],
+    ),
+    (
         "meter of a phase not carried",
         &[
             (

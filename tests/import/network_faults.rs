@@ -74,20 +74,40 @@ const CASES: &[(&str, Files)] = &[
         ],
     ),
     (
-        "closed ring",
-        &[lines!(
-            "L1,S,A,abcn,100,cable,",
-            "L2,A,B,abcn,100,cable,",
-            "L3,B,C,abcn,100,cable,",
-            "L4,C,A,abcn,100,cable,"
+        "ring of switches alone",
+        &[(
+            "switches.csv",
+            "switch,from,to,phases,state\nQ1,A,B,abcn,\nQ2,B,C,abcn,\nQ3,C,A,abcn,\nQ4,B,D,abcn,open\n",
         )],
     ),
-    ("two lines side by side", &[lines!("L1,S,A,abcn,100,cable,", "L1b,S,A,abcn,100,cable,")]),
     (
-        "ring over a switch",
+        "two switches side by side",
+        &[("switches.csv", "switch,from,to,phases,state\nQ1,A,B,abcn,\nQ2,A,B,an,\n")],
+    ),
+    (
+        "the poles of a switch written apart",
+        &[("switches.csv", "switch,from,to,phases,state\nQ1,A,B,an,\nQ2,A,B,b,\nQ3,A,B,c,\n")],
+    ),
+    (
+        "ring in which the phases do not meet",
         &[
-            lines!("L1,S,A,abcn,100,cable,", "L2,A,B,abcn,100,cable,"),
-            ("switches.csv", "switch,from,to,phases,state\nQ1,B,S,abcn,closed\n"),
+            ("lines.csv", "line,from,to,phases,length_m,construction\n"),
+            ("source.csv", "node,kv\nS,11\n"),
+            (
+                "transformers.csv",
+                "transformer,from,to,kva,kv_from,kv_to,group,r_percent,x_percent\nT1,S,A,100,11,0.4,Dyn11,1,4\nT2,S,A,100,11,0.4,Dyn1,1,4\n",
+            ),
+        ],
+    ),
+    (
+        "ring at two voltages",
+        &[
+            ("lines.csv", "line,from,to,phases,length_m,construction\n"),
+            ("source.csv", "node,kv\nS,11\n"),
+            (
+                "transformers.csv",
+                "transformer,from,to,kva,kv_from,kv_to,group,r_percent,x_percent\nT1,S,A,100,11,0.4,Dyn11,1,4\nT2,S,A,100,11,0.69,Dyn11,1,4\n",
+            ),
         ],
     ),
     ("line from a node to itself", &[lines!("L1,S,A,abcn,100,cable,", "L2,A,A,abcn,100,cable,")]),
@@ -96,6 +116,8 @@ const CASES: &[(&str, Files)] = &[
     // Names.
     ("load at a missing node", &[loads!("house,AA,,an,5,1", "shop,nowhere,,an,5,1")]),
     ("load along a missing line", &[loads!("house,,L2,an,5,1")]),
+    ("load at a line", &[loads!("house,L1,,an,5,1")]),
+    ("node row of a line", &[("nodes.csv", "node,x,y\nL1,1,2\n")]),
     ("capacitor at a missing node", &[("capacitors.csv", "capacitor,node,phases,kvar\nC1,B,abc,10\n")]),
     ("node row of a missing node", &[("nodes.csv", "node,x,y\nB,1,2\n")]),
     ("unknown construction", &[lines!("L1,S,A,abcn,100,cabel,", "L2,A,B,abcn,100,overhead,")]),
@@ -153,6 +175,24 @@ const CASES: &[(&str, Files)] = &[
     (
         "transformer for another voltage",
         &[transformers!("T1,A,B,,100,11,0.4,Dyn11,1,4,,"), loads!("house,B,,an,5,1")],
+    ),
+    (
+        "transformer for a higher voltage class",
+        &[
+            ("source.csv", "node,kv\nS,6.6\n"),
+            lines!("L1,S,A,abc,100,three,"),
+            transformers!("T1,A,B,,100,11,0.4,Dyn11,1,4,,"),
+            loads!("house,B,,an,5,1"),
+        ],
+    ),
+    (
+        "transformer by its phase voltage",
+        &[
+            ("source.csv", "node,kv\nS,11\n"),
+            lines!("L1,S,A,abc,100,three,"),
+            transformers!("T1,A,B,,100,6.35,0.4,Dyn11,1,4,,"),
+            loads!("house,B,,an,5,1"),
+        ],
     ),
     (
         "transformer the wrong way round",
@@ -221,6 +261,45 @@ const CASES: &[(&str, Files)] = &[
             transformers!("T1,A,B,,100,11,0.4,Dyn11,1,4,,5"),
             ("nodes.csv", "node,earth_ohm\nC,3\n"),
             loads!("house,C,,an,5,1"),
+        ],
+    ),
+    (
+        "single-phase load behind a star point earthed through an impedance",
+        &[
+            ("source.csv", "node,kv\nS,33\n"),
+            lines!("L1,S,A,abc,100,three,", "L2,B,C,abc,100,three,"),
+            transformers!("T1,A,B,,5000,33,11,Dyn11,1,7,,63"),
+            loads!("farm,C,,an,50,1", "mill,C,,abc,50,1"),
+        ],
+    ),
+    // Sizes far from any in use.
+    (
+        "load in watts behind a transformer",
+        &[
+            ("source.csv", "node,kv\nS,11\n"),
+            lines!("L1,S,A,abc,100,three,", "L2,B,C,abcn,100,cable,"),
+            transformers!("T1,A,B,,63,11,0.4,Dyn11,1,4,,"),
+            ("nodes.csv", "node,earth_ohm\nB,3\n"),
+            loads!("house,C,,an,9000,1", "shop,C,,an,5,1"),
+        ],
+    ),
+    ("load of thousands of amperes", &[loads!("house,A,,abcn,9000,1")]),
+    ("line of 120 km at 400 V", &[lines!("L1,S,A,abcn,120000,cable,")]),
+    (
+        "rating in MVA",
+        &[
+            ("source.csv", "node,kv\nS,11\n"),
+            lines!("L1,S,A,abc,100,three,", "L2,B,C,abcn,100,cable,"),
+            transformers!("T1,A,B,,0.063,11,0.4,Dyn11,0.01,0.04,,"),
+            ("nodes.csv", "node,earth_ohm\nB,3\n"),
+            loads!("house,C,,an,0.01,1"),
+        ],
+    ),
+    (
+        "steps per unit",
+        &[
+            ("regulators.csv", "regulator,from,to,phases,tap_a,step_percent\nR1,A,B,a,1,0.00625\n"),
+            loads!("house,B,,an,5,1"),
         ],
     ),
     // Regulators.

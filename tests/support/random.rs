@@ -26,6 +26,8 @@ struct Spot {
     /// Whether the neutral of its side is a wire earthed by electrodes only: a load from phase to
     /// earth would return through these, which nobody builds.
     wired_return: bool,
+    /// Number of its galvanic side.
+    side: usize,
 }
 
 struct Grower {
@@ -38,6 +40,7 @@ struct Grower {
 }
 
 /// A random network of 2 to 40 nodes.
+#[allow(dead_code)] // tests of rings use the other
 pub fn random_draft(seed: u64) -> Draft {
     let mut rng = StdRng::seed_from_u64(seed);
     let nodes = rng.random_range(2..=40);
@@ -53,7 +56,59 @@ pub fn random_draft(seed: u64) -> Draft {
     grower.draft
 }
 
+/// The same with up to `loops` rings: lines and switches between nodes of one side, and transformers in parallel.
+#[allow(dead_code)] // only tests of rings use it
+pub fn random_ringed_draft(seed: u64, loops: usize) -> Draft {
+    let mut rng = StdRng::seed_from_u64(seed);
+    let nodes = rng.random_range(5..=40);
+    let charging = rng.random_bool(0.5);
+    let loading = rng.random_range(0.1..0.6);
+    let mut grower = Grower { rng, draft: Draft::default(), spots: Vec::new(), charging, loading };
+    grower.supply();
+    while grower.spots.len() < nodes {
+        grower.extend();
+    }
+    grower.loads(nodes);
+    for tie in 0..loops {
+        grower.tie(tie);
+    }
+    grower.draft
+}
+
 impl Grower {
+    fn tie(&mut self, tie: usize) {
+        if self.chance(0.15) && !self.draft.transformers.is_empty() {
+            let i = self.rng.random_range(0..self.draft.transformers.len());
+            let mut twin = self.draft.transformers[i].clone();
+            twin.transformer = format!("{} twin {tie}", twin.transformer).into();
+            twin.x_pu *= self.between(0.8, 1.3);
+            self.draft.transformers.push(twin);
+            return;
+        }
+        let (i, j) = (self.rng.random_range(0..self.spots.len()), self.rng.random_range(0..self.spots.len()));
+        let (one, two) = (self.spots[i].clone(), self.spots[j].clone());
+        let common = one.conductors.intersection(two.conductors);
+        if i == j || one.side != two.side || common.phases().is_empty() {
+            return;
+        }
+        let spot = Spot { name: one.name.clone(), conductors: common, ..one };
+        // The helpers draw a branch to a new node; its end is then put to the other one.
+        let name = format!("tie {tie}");
+        if self.chance(0.2) {
+            self.switch(&spot, name.clone());
+        } else {
+            self.line(&spot, name.clone());
+        }
+        let ends = self.draft.lines.iter_mut().map(|l| (&mut l.from, &mut l.to));
+        let switches = self.draft.switches.iter_mut().map(|q| (&mut q.from, &mut q.to));
+        for end in ends.chain(switches).flat_map(|(from, to)| [from, to]) {
+            if **end == *name {
+                *end = two.name.as_str().into();
+            }
+        }
+        self.draft.nodes.retain(|n| *n.node != *name);
+    }
+
     fn chance(&mut self, probability: f64) -> bool {
         self.rng.random_bool(probability)
     }
@@ -100,6 +155,7 @@ impl Grower {
             held: true,
             rating: 4e6,
             wired_return: false,
+            side: 0,
         });
     }
 
@@ -112,12 +168,16 @@ impl Grower {
         let at = self.rng.random_range(0..self.spots.len());
         let parent = self.spots[at].clone();
         let name = format!("N{}", self.spots.len());
-        let spot = match self.rng.random_range(0..100) {
+        let sides = self.draft.transformers.len();
+        let mut spot = match self.rng.random_range(0..100) {
             0..8 => self.switch(&parent, name),
             8..16 if !parent.conductors.is_split() => self.regulator(&parent, name),
             16..32 => self.transformer(&parent, name),
             _ => self.line(&parent, name),
         };
+        if self.draft.transformers.len() > sides {
+            spot.side = self.draft.transformers.len();
+        }
         self.spots.push(spot);
     }
 
@@ -287,7 +347,7 @@ impl Grower {
         let conductors = if carries_neutral { Conductors::ABCN } else { Conductors::ABC };
         // Without an earth on either side the neutral follows the parent's.
         let wired_return = carries_neutral || parent.conductors.has_neutral();
-        Spot { name, conductors, volts: far_volts, held: true, rating, wired_return }
+        Spot { name, conductors, volts: far_volts, held: true, rating, wired_return, side: 0 }
     }
 
     /// Two or three unequal single-phase units as one bank: open star, open delta and the like.
@@ -317,7 +377,8 @@ impl Grower {
             self.electrode(&name);
         }
         let conductors = if carries_neutral { far_phases.with(Conductor::N) } else { far_phases };
-        Spot { name, conductors, volts: far_volts, held: far_star, rating, wired_return: carries_neutral }
+        let wired_return = carries_neutral;
+        Spot { name, conductors, volts: far_volts, held: far_star, rating, wired_return, side: 0 }
     }
 
     /// A single-phase unit with two halves and a point between them.
@@ -344,7 +405,7 @@ impl Grower {
             self.electrode(&name);
         }
         let conductors = Conductors::S1S2.with(Conductor::N);
-        Spot { name, conductors, volts, held: true, rating: 30e3, wired_return: true }
+        Spot { name, conductors, volts, held: true, rating: 30e3, wired_return: true, side: 0 }
     }
 
     /// Resistance or reactance between a star point and earth.
@@ -425,6 +486,7 @@ impl Grower {
             held: far == ZigzagNeutral || far == StarNeutral && near != Star && !near.is_zigzag(),
             rating,
             wired_return: carries_neutral,
+            side: 0,
         }
     }
 
@@ -460,7 +522,8 @@ impl Grower {
             Connection::Star(_) => set,
             Connection::Delta(_) => set.with(start.next()),
         };
-        Spot { name, conductors, volts: far_volts, held: !far_across, rating, wired_return: carries_neutral }
+        let wired_return = carries_neutral;
+        Spot { name, conductors, volts: far_volts, held: !far_across, rating, wired_return, side: 0 }
     }
 
     fn loads(&mut self, nodes: usize) {

@@ -74,6 +74,7 @@ pub fn flow_csv(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
     if !report.meters.is_empty() {
         folder.write("meters.csv", |out| meters_csv(&report.meters, out))?;
     }
+    electrodes(report, folder)?;
     findings(report, folder)?;
     totals(report, folder)
 }
@@ -131,6 +132,20 @@ fn elements(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
             Field::Number(r.loss_kw),
             Field::Number(r.loss_kvar),
             r.rating_percent.into(),
+        ]
+    })
+}
+
+fn electrodes(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
+    let columns = ["node", "transformer", "r_ohm", "x_ohm", "amps", "volts"];
+    list(folder, "electrodes.csv", &columns, &report.electrodes, |r| {
+        vec![
+            Field::Text(&r.node),
+            Field::Text(r.transformer.as_deref().unwrap_or("")),
+            Field::Number(r.r_ohm),
+            Field::Number(r.x_ohm),
+            Field::Number(r.amps),
+            Field::Number(r.volts),
         ]
     })
 }

@@ -9,7 +9,7 @@ use crate::network::{BranchKind, Conductor, Network, NodeId};
 use crate::output::allocation::meters_text;
 use crate::output::table::{Cell, Colour, Column, Table, folded, number, printable};
 use crate::solver::Solution;
-use crate::study::flow::{Extreme, FlowReport, lowest_judged};
+use crate::study::flow::{Electrode, Extreme, FlowReport, lowest_judged};
 
 /// How much of the tables is shown.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -25,6 +25,11 @@ const SPLIT_NOTE: &str = "Behind a centre tap, columns a and b hold s1 and s2.";
 
 /// Rows of a long table that are shown.
 const WORST: usize = 20;
+/// A table of no more rows than this is shown whole: cutting it would hide a row or two only.
+const WHOLE: usize = 24;
+/// Rows of the table of electrodes.
+const WORST_ELECTRODES: usize = 10;
+
 /// The page as text, at most 100 columns wide.
 pub fn flow_text(
     network: &Network,
@@ -42,7 +47,46 @@ pub fn flow_text(
     nodes(&mut text, network, solution, report, length);
     branches(&mut text, network, solution, report, length);
     regulators(&mut text, report);
+    electrodes(&mut text, report, length);
     text
+}
+
+/// Electrodes, those of the highest voltage first.
+fn electrodes(text: &mut String, report: &FlowReport, length: Length) {
+    let mut order: Vec<&Electrode> = report.electrodes.iter().collect();
+    if order.is_empty() {
+        return;
+    }
+    order.sort_by(|a, b| b.volts.total_cmp(&a.volts));
+    let all = order.len();
+    if length == Length::Short && all > WORST_ELECTRODES + 4 {
+        order.truncate(WORST_ELECTRODES);
+    }
+    let heading = match order.len() == all {
+        true => "Earth electrodes, highest voltage first".to_string(),
+        false => format!("Earth electrodes: the {} of highest voltage of {all} (--all for all)", order.len()),
+    };
+    let mut table = Table::new(&[
+        Column::text("node"),
+        Column::text("earths"),
+        Column::number("electrode", "ohm", 2),
+        Column::number("into earth", "A", 3),
+        Column::number("to remote earth", "V", 2),
+    ]);
+    for electrode in order {
+        let what = match &electrode.transformer {
+            Some(name) => format!("neutral point of {name}"),
+            None => "neutral".to_string(),
+        };
+        table.rows.push(vec![
+            Cell::Text(electrode.node.to_string()),
+            Cell::Text(what),
+            Cell::Number(electrode.r_ohm.hypot(electrode.x_ohm)),
+            Cell::Number(electrode.amps),
+            Cell::Number(electrode.volts),
+        ]);
+    }
+    let _ = writeln!(text, "{heading}\n{}", table.text());
 }
 
 fn head(text: &mut String, report: &FlowReport) {
@@ -76,6 +120,8 @@ fn totals(text: &mut String, report: &FlowReport) {
     row("  phase conductors", t.line_loss_kw, None);
     if report.glance.neutral_volts.is_some() {
         row("  neutral conductors", t.neutral_loss_kw, None);
+    }
+    if report.glance.neutral_volts.is_some() || !report.electrodes.is_empty() {
         row("  earth electrodes", t.earth_loss_kw, None);
     }
     row("  transformers", t.transformer_loss_kw, None);
@@ -111,7 +157,7 @@ fn glance(text: &mut String, network: &Network, report: &FlowReport) {
     row("lowest voltage", &g.lowest_pu, 4, "pu", pu(study.voltage_low_percent), "no phases");
     row("highest voltage", &g.highest_pu, 4, "pu", pu(study.voltage_high_percent), "no phases");
     let drop = format!("{} %", study.drop_limit_percent);
-    row("largest drop since last set", &g.drop_percent, 2, "%", drop, "no lines");
+    row("largest voltage drop", &g.drop_percent, 2, "%", drop, "no lines");
     let unbalance = format!("{} %", study.unbalance_limit_percent);
     row("largest unbalance factor", &g.unbalance_percent, 2, "%", unbalance, "no three-phase node");
     row("highest neutral current", &g.neutral_amps, 2, "A", String::new(), "no line carries a neutral");
@@ -121,7 +167,7 @@ fn glance(text: &mut String, network: &Network, report: &FlowReport) {
     let _ = writeln!(text, "{}", table.text());
     let _ = writeln!(
         text,
-        "  Voltages are phase to neutral where the neutral is carried, else to earth. The drop is counted\n  from the last source, transformer or regulator.\n"
+        "  Voltages are phase to neutral where the neutral is carried, else to earth. The drop is counted\n  from the source, transformer or regulator that last set the voltage.\n"
     );
     if network.nodes.iter().any(|n| !n.reference_on.phases().is_empty()) {
         let _ = writeln!(
@@ -133,7 +179,7 @@ fn glance(text: &mut String, network: &Network, report: &FlowReport) {
 
 fn nodes(text: &mut String, network: &Network, solution: &Solution, report: &FlowReport, length: Length) {
     let mut order = network.order.clone();
-    let (shown, heading) = if length == Length::Short && order.len() > WORST {
+    let (shown, heading) = if length == Length::Short && order.len() > WHOLE {
         let lowest = lowest_judged(network, solution);
         order.sort_by(|a, b| lowest[a.index()].total_cmp(&lowest[b.index()]));
         (WORST, format!("Nodes: the {WORST} lowest of {} (--all for all)", network.nodes.len()))
@@ -184,10 +230,16 @@ fn branches(text: &mut String, network: &Network, solution: &Solution, report: &
         return;
     }
     let mut order: Vec<usize> = (0..network.branches.len()).collect();
-    let (shown, heading) = if length == Length::Short && order.len() > WORST {
+    let (shown, heading) = if length == Length::Short && order.len() > WHOLE {
         let key = |b: usize| (report.elements[b].rating_percent.unwrap_or(0.0), report.elements[b].loss_kw);
         order.sort_by(|&a, &b| key(b).0.total_cmp(&key(a).0).then(key(b).1.total_cmp(&key(a).1)));
-        (WORST, format!("Branches: the {WORST} most loaded of {} (--all for all)", network.branches.len()))
+        (
+            WORST,
+            format!(
+                "Branches: the {WORST} most loaded of {} (--all for all), currents at the from end",
+                network.branches.len()
+            ),
+        )
     } else {
         (order.len(), "Branches, currents at the from end".to_string())
     };

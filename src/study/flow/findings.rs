@@ -4,9 +4,9 @@ use serde::Serialize;
 
 use super::losses::Totals;
 use super::places::{drop_percent, floating_nodes, judged, set_points};
-use super::{ElementLoss, LoadDraw, NodeSummary};
-use crate::network::{BranchKind, Network};
-use crate::solver::{RegulatedUnit, Solution, TapState};
+use super::{Electrode, ElementLoss, LoadDraw, NodeSummary};
+use crate::network::{BranchKind, Network, weak_star_points};
+use crate::solver::{Path, RegulatedUnit, Solution, TapState};
 
 /// Conventional limit of touch voltage in normal dry conditions, volts AC (IEC 60364-4-41; from memory).
 const TOUCH_VOLTAGE_V: f64 = 50.0;
@@ -16,6 +16,8 @@ const CAUTION: &str =
     "Ratings and touch voltages: the local code and a licensed engineer decide, not this table.";
 /// Source power may differ from loads and losses by this share.
 const BALANCE_SHARE: f64 = 1e-6;
+/// And by this much, kilovolt-amperes: rounding, where nothing is drawn to take a share of.
+const BALANCE_FLOOR_KVA: f64 = 1e-7;
 
 /// How much a finding matters.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
@@ -70,9 +72,15 @@ pub enum Rule {
     /// Regulator at the end of its range, hunting, or fed backwards.
     #[serde(rename = "regulator")]
     Regulator,
+    /// Voltages that are those after a collapse.
+    #[serde(rename = "voltage collapse")]
+    Collapse,
     /// A side that nothing but a stated reference holds to earth.
     #[serde(rename = "no earth")]
     NoEarth,
+    /// A star point earthed through a large impedance that single-phase loads return through.
+    #[serde(rename = "weak star point")]
+    StarPoint,
     /// What the numbers cannot decide: the local code and a licensed engineer do.
     #[serde(rename = "caution")]
     Caution,
@@ -91,7 +99,9 @@ impl Rule {
             Rule::Overload => "overload",
             Rule::BelowFloor => "load below floor",
             Rule::Regulator => "regulator",
+            Rule::Collapse => "voltage collapse",
             Rule::NoEarth => "no earth",
+            Rule::StarPoint => "weak star point",
             Rule::Caution => "caution",
         }
     }
@@ -117,6 +127,7 @@ pub struct Finding {
 
 /// What findings are drawn from.
 pub(super) struct Seen<'a> {
+    pub electrodes: &'a [Electrode],
     pub network: &'a Network,
     pub solution: &'a Solution,
     pub elements: &'a [ElementLoss],
@@ -135,6 +146,8 @@ pub(super) fn all(seen: &Seen) -> Vec<Finding> {
     below_floor(seen, &mut found);
     regulators(seen, &mut found);
     unearthed(seen, &mut found);
+    star_points(seen, &mut found);
+    collapse(seen, &mut found);
     balance(seen, &mut found);
     caution(seen, &mut found);
     let excess = |f: &Finding| match (f.rule, f.limit) {
@@ -191,21 +204,42 @@ fn nodes(seen: &Seen, found: &mut Vec<Finding>) {
             let text = format!("unbalance factor {percent:.2} %, limit {} %", study.unbalance_limit_percent);
             found.push(warning(Rule::Unbalance, place(), percent, Some(study.unbalance_limit_percent), text));
         }
-        let Some(volts) = node.neutral_volts else { continue };
-        match study.neutral_limit_v {
-            Some(limit) if volts > limit => {
-                let text = format!("neutral {volts:.2} V above remote earth, limit {limit} V");
-                found.push(warning(Rule::NeutralVoltage, place(), volts, Some(limit), text));
-            }
-            _ if volts > TOUCH_VOLTAGE_V => {
-                let text = format!(
-                    "neutral {volts:.2} V above remote earth; {TOUCH_VOLTAGE_V} V is the conventional touch limit"
-                );
-                found.push(warning(Rule::NeutralVoltage, place(), volts, None, text));
-            }
-            _ => {}
+        if let Some(volts) = node.neutral_volts {
+            found.extend(to_earth("neutral", place, volts, study.neutral_limit_v));
         }
     }
+    for electrode in seen.electrodes {
+        let Some(transformer) = &electrode.transformer else { continue };
+        let place = || format!("transformer {transformer} at node {}", electrode.node);
+        found.extend(to_earth("star point", place, electrode.volts, study.neutral_limit_v));
+    }
+}
+
+/// A neutral or star point too far from earth.
+fn to_earth(what: &str, place: impl Fn() -> String, volts: f64, limit: Option<f64>) -> Option<Finding> {
+    match limit {
+        Some(limit) if volts > limit => {
+            let text = format!("{what} {volts:.2} V above remote earth, limit {limit} V");
+            Some(warning(Rule::NeutralVoltage, place(), volts, Some(limit), text))
+        }
+        _ if volts > TOUCH_VOLTAGE_V => {
+            let text = format!(
+                "{what} {volts:.2} V above remote earth; {TOUCH_VOLTAGE_V} V is the conventional touch limit"
+            );
+            Some(warning(Rule::NeutralVoltage, place(), volts, None, text))
+        }
+        _ => None,
+    }
+}
+
+/// A solution that the unloaded state does not lead to.
+fn collapse(seen: &Seen, found: &mut Vec<Finding>) {
+    let Path::Folds { share } = seen.solution.path else { return };
+    let text = format!(
+        "raised from nothing, the loads can be fed up to {:.1} % only; what is shown is the state after the voltage has collapsed, with loads below their floor",
+        100.0 * share
+    );
+    found.push(warning(Rule::Collapse, "network".to_string(), 100.0 * share, Some(100.0), text));
 }
 
 fn overloads(seen: &Seen, found: &mut Vec<Finding>) {
@@ -279,12 +313,35 @@ fn unearthed(seen: &Seen, found: &mut Vec<Finding>) {
     }
 }
 
+/// Star points that single-phase loads to earth shift; the value is the ohms.
+fn star_points(seen: &Seen, found: &mut Vec<Finding>) {
+    for weak in weak_star_points(seen.network) {
+        let name = &seen.network.branch(weak.branch).name;
+        let volts = seen
+            .electrodes
+            .iter()
+            .find(|e| e.transformer.as_ref() == Some(name))
+            .map_or(f64::NAN, |e| e.volts);
+        let shifted =
+            if volts.is_finite() { format!(", now {volts:.1} V from earth") } else { String::new() };
+        let text = format!(
+            "star point earthed through {:.1} ohm{shifted}, with {} single-phase load{} behind it that return{} through earth ({}): check the earthing, or carry n to them",
+            weak.ohm,
+            weak.loads,
+            if weak.loads == 1 { "" } else { "s" },
+            if weak.loads == 1 { "s" } else { "" },
+            weak.first,
+        );
+        found.push(warning(Rule::StarPoint, format!("transformer {name}"), weak.ohm, None, text));
+    }
+}
+
 /// Source power against loads and losses; what is not a number counts as a difference.
 fn balance(seen: &Seen, found: &mut Vec<Finding>) {
     let t = seen.totals;
     let off = (t.source_kw - t.load_kw - t.loss_kw).hypot(t.source_kvar - t.load_kvar - t.loss_kvar);
     let size = t.source_kw.hypot(t.source_kvar).max(t.load_kw.hypot(t.load_kvar));
-    let limit = BALANCE_SHARE * size;
+    let limit = (BALANCE_SHARE * size).max(BALANCE_FLOOR_KVA);
     if off.is_finite() && off <= limit {
         return;
     }
@@ -300,7 +357,7 @@ fn balance(seen: &Seen, found: &mut Vec<Finding>) {
 
 /// The caution, once, where an overload or a neutral's voltage is in question; its value is their number.
 fn caution(seen: &Seen, found: &mut Vec<Finding>) {
-    let risky = |f: &&Finding| matches!(f.rule, Rule::Overload | Rule::NeutralVoltage);
+    let risky = |f: &&Finding| matches!(f.rule, Rule::Overload | Rule::NeutralVoltage | Rule::StarPoint);
     let questions = found.iter().filter(risky).count();
     let limited =
         seen.network.study.neutral_limit_v.is_some() && seen.nodes.iter().any(|n| n.neutral_volts.is_some());

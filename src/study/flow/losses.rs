@@ -2,7 +2,7 @@
 
 use serde::Serialize;
 
-use super::{ElementLoss, LoadDraw, element_volts};
+use super::{Electrode, ElementLoss, LoadDraw, element_volts};
 use crate::math::{Complex64, PhaseVector, SLOTS};
 use crate::network::{Branch, BranchKind, Conductor, End, Network, Transformer};
 use crate::solver::Solution;
@@ -40,7 +40,7 @@ fn power(volts: &PhaseVector, amps: &PhaseVector) -> Complex64 {
 }
 
 /// Loss and loading of every branch, then of every electrode and of every reference to earth.
-pub(super) fn elements(network: &Network, solution: &Solution) -> Vec<ElementLoss> {
+pub(super) fn elements(network: &Network, solution: &Solution, electrodes: &[Electrode]) -> Vec<ElementLoss> {
     let mut rows = Vec::with_capacity(network.branches.len());
     for (b, branch) in network.branches.iter().enumerate() {
         let (from, to) = (&solution.volts[branch.from.index()], &solution.volts[branch.to.index()]);
@@ -54,6 +54,7 @@ pub(super) fn elements(network: &Network, solution: &Solution) -> Vec<ElementLos
             rating_percent: rating_percent(branch, from_amps, to_amps),
         });
     }
+    star_points(electrodes, &mut rows);
     for (node, volts) in network.nodes.iter().zip(&solution.volts) {
         let loss: Complex64 = node
             .earth_admittance()
@@ -73,6 +74,29 @@ pub(super) fn elements(network: &Network, solution: &Solution) -> Vec<ElementLos
         }
     }
     rows
+}
+
+/// Takes what is lost in the earthing of star points out of the transformers, as rows of its own.
+fn star_points(electrodes: &[Electrode], rows: &mut Vec<ElementLoss>) {
+    for electrode in electrodes {
+        let Some(transformer) = &electrode.transformer else { continue };
+        let (loss_kw, loss_kvar) = (
+            electrode.amps * electrode.amps * electrode.r_ohm / 1e3,
+            electrode.amps * electrode.amps * electrode.x_ohm / 1e3,
+        );
+        let of = |row: &&mut ElementLoss| row.kind == "transformer" && row.element == *transformer;
+        if let Some(row) = rows.iter_mut().find(of) {
+            row.loss_kw -= loss_kw;
+            row.loss_kvar -= loss_kvar;
+        }
+        rows.push(ElementLoss {
+            element: transformer.clone(),
+            kind: "electrode",
+            loss_kw,
+            loss_kvar,
+            rating_percent: None,
+        });
+    }
 }
 
 /// Largest phase current over the rating, percent.

@@ -3,6 +3,7 @@
 //! [`FlowReport`] is the result record of `flow`: its fields and their names are those of the
 //! result files. Voltages are to remote earth, currents positive from `from` to `to` at both ends.
 
+mod electrodes;
 mod findings;
 mod losses;
 mod places;
@@ -14,6 +15,7 @@ use crate::network::{BranchKind, Conductor, Conductors, LoadPlace, Name, Network
 use crate::solver::{RegulatedUnit, Solution, Status, TapState, load_current};
 use crate::study::allocation::MeterRead;
 
+pub use electrodes::Electrode;
 pub use findings::{Finding, FindingSeverity, Rule};
 pub use losses::Totals;
 pub use places::{Extreme, Glance, lowest_judged};
@@ -36,7 +38,7 @@ pub struct NodeVoltage {
 /// Current of one conductor at both ends of an element.
 #[derive(Debug, Clone, PartialEq, Serialize)]
 pub struct ElementCurrent {
-    /// Line, switch, regulator or transformer; for an electrode the node it stands at.
+    /// Line, switch, regulator or transformer; for an electrode the node it stands at, or the transformer it earths.
     pub element: Name,
     /// `line`, `switch`, `regulator`, `transformer` or `electrode`.
     pub kind: &'static str,
@@ -159,6 +161,8 @@ pub struct FlowReport {
     /// Meters that loads were shared to meet; empty where there are none.
     #[serde(skip_serializing_if = "Vec::is_empty")]
     pub meters: Vec<MeterRead>,
+    /// Earth electrodes, of neutrals and of star points.
+    pub electrodes: Vec<Electrode>,
     /// Limits exceeded and other remarks, worst first within a rule.
     pub findings: Vec<Finding>,
     /// Extremes for the summary; the lists above hold the same numbers.
@@ -180,12 +184,14 @@ impl FlowReport {
             return None;
         }
         let loads = loads(network, solution);
-        let elements = losses::elements(network, solution);
+        let electrodes = electrodes::electrodes(network, solution);
+        let elements = losses::elements(network, solution, &electrodes);
         let totals = losses::totals(network, solution, &elements, &loads);
         let nodes_summary = nodes_summary(network, solution);
         let regulators = regulators(network, units);
         let glance = places::glance(network, solution, &elements, &nodes_summary);
         let seen = findings::Seen {
+            electrodes: &electrodes,
             network,
             solution,
             elements: &elements,
@@ -211,6 +217,7 @@ impl FlowReport {
             regulators,
             loads,
             meters: Vec::new(),
+            electrodes,
             findings,
             glance,
         })
