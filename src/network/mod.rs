@@ -14,6 +14,7 @@ mod metering;
 mod model;
 mod plausible;
 mod regulator;
+mod remainder;
 mod ring;
 mod shunts;
 mod star_point;
