@@ -6,7 +6,8 @@ use std::path::{Path, PathBuf};
 
 /// What each module may use, besides itself.
 fn allowed() -> HashMap<&'static str, &'static [&'static str]> {
-    let below_import: &[&str] = &["math", "units", "diagnostic", "catalog", "impedance", "network"];
+    let below_import: &[&str] =
+        &["math", "units", "diagnostic", "catalog", "impedance", "machine", "network"];
     HashMap::from([
         ("math", &["units"] as &[&str]),
         ("units", &[]),
@@ -14,11 +15,14 @@ fn allowed() -> HashMap<&'static str, &'static [&'static str]> {
         ("catalog", &["math", "units"]),
         ("impedance", &["catalog", "math", "units"]),
         ("machine", &["math", "units", "catalog", "diagnostic"]),
-        ("network", &["math", "units", "diagnostic"]),
+        ("network", &["math", "units", "diagnostic", "machine"]),
         ("import", below_import),
-        ("solver", &["math", "units", "network"]),
-        ("study", &["math", "units", "diagnostic", "catalog", "impedance", "network", "solver"]),
-        ("output", &["math", "units", "diagnostic", "catalog", "impedance", "network", "solver", "study"]),
+        ("solver", &["math", "units", "machine", "network"]),
+        ("study", &["math", "units", "diagnostic", "catalog", "impedance", "machine", "network", "solver"]),
+        (
+            "output",
+            &["math", "units", "diagnostic", "catalog", "impedance", "machine", "network", "solver", "study"],
+        ),
         (
             "cli",
             &[
@@ -27,6 +31,7 @@ fn allowed() -> HashMap<&'static str, &'static [&'static str]> {
                 "diagnostic",
                 "catalog",
                 "impedance",
+                "machine",
                 "network",
                 "import",
                 "solver",

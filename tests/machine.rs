@@ -23,6 +23,7 @@ pub fn chapman() -> Circuit {
         xm_ohm: 26.3,
         core_siemens: 0.0,
         rotor_x_ohm: 0.464,
+        standstill_leakage: 1.0,
         inner: Cage { r_ohm: 0.332, x_ohm: 0.0 },
         outer: None,
         // Rotational loss 1100 W at the speed of the example, slip 2.2 %.
@@ -140,18 +141,38 @@ fn task_force_machines() {
     }
 }
 
-/// A double cage is two rotor branches in parallel: current by hand through the ladder.
+/// A double cage is two rotor branches in parallel: current by hand through the ladder, without and with saturation of
+/// the leakage (a quarter gone at standstill, `0.25 x 1.09 s^2 / (s^2 + 0.09)` at slip `s`, by the circuit's definition).
 #[test]
 fn double_cage_by_hand() {
-    let circuit = nameplates::double_cage();
-    let outer = circuit.outer.unwrap();
-    for slip in [0.01, 0.1, 0.6, 1.0] {
+    let even = nameplates::double_cage();
+    for (slip, left) in
+        [(0.01, 1.0), (0.1, 1.0), (0.6, 1.0), (1.0, 1.0), (1.0, 0.75), (0.3, 1.0 - 0.25 * 0.545)]
+    {
+        let saturating = Circuit { standstill_leakage: 0.75, ..even };
+        let whole = if left < 1.0 { saturating } else { even };
+        let circuit = Circuit { x1_ohm: even.x1_ohm * left, rotor_x_ohm: even.rotor_x_ohm * left, ..even };
+        let outer = circuit.outer.unwrap();
         let cage = |c: Cage| Complex64::new(c.r_ohm / slip, c.x_ohm);
         let both = cage(circuit.inner) * cage(outer) / (cage(circuit.inner) + cage(outer));
         let rotor = both + Complex64::new(0.0, circuit.rotor_x_ohm);
         let shunt = 1.0 / Complex64::new(circuit.core_siemens, -1.0 / circuit.xm_ohm);
         let z = Complex64::new(circuit.r1_ohm, circuit.x1_ohm) + rotor * shunt / (rotor + shunt);
         let amps = polar(460.0 / 3f64.sqrt(), 0.0) / z;
-        assert!((circuit.operation(slip, &balanced(460.0)).amps[0] - amps).norm() < 1e-9 * amps.norm());
+        assert!((whole.operation(slip, &balanced(460.0)).amps[0] - amps).norm() < 1e-9 * amps.norm());
     }
+}
+
+/// A circuit given directly: Chapman's motor gives 10,478 W (Example 7-3 without rounding) at slip 0.022 and 18.89 A.
+#[test]
+fn a_circuit_given_directly() {
+    let load = DrivenLoad { shape: Shape::Quadratic, torque_nm: 50.0, rated_rad_s: 184.0, inertia_kgm2: 0.2 };
+    let motor = Motor::of_circuit(chapman(), 460.0, 10_478.0, 0.1, load.clone()).unwrap();
+    near("slip", chapman().slip(motor.rated_rad_s), 0.022, 1e-4);
+    near("current", motor.amps, 18.892, 1e-4);
+    near("torque", motor.torque_nm * motor.rated_rad_s, 10_478.0, 1e-9);
+    // More than its breakdown torque, or a broken circuit: none.
+    assert!(Motor::of_circuit(chapman(), 460.0, 60e3, 0.1, load.clone()).is_none());
+    let broken = Circuit { xm_ohm: -1.0, ..chapman() };
+    assert!(Motor::of_circuit(broken, 460.0, 10_478.0, 0.1, load).is_none());
 }

@@ -1,17 +1,4 @@
-//! Equivalent circuit of a three-phase cage motor, one phase of a star, all ohms seen from the stator.
-//!
-//! ```text
-//!  o--R1--jX1--+-------+------jXr--+------+
-//!              |       |           |      |
-//!              Gc     jXm        Ri/s   Ro/s
-//!              |       |          jXi    jXo
-//!  o-----------+-------+-----------+------+
-//! ```
-//!
-//! The positive sequence sees slip `s`, the negative sequence `2 - s`; the star point floats (or the windings
-//! stand in delta), so no zero-sequence current flows. One cage: leave the outer cage out.
-//! Formulae: any text on induction machines, e.g. Chapman, Electric Machinery Fundamentals, chapter on
-//! induction motors; double cage as two rotor branches in parallel.
+//! Equivalent circuit of a three-phase cage motor, with positive and negative sequence.
 
 use crate::math::{Complex64, ONE, SequenceVoltages, ZERO, sequence_components};
 use crate::units::SQRT_3;
@@ -47,7 +34,25 @@ impl MechanicalLoss {
     }
 }
 
-/// Equivalent circuit of the whole motor; see the [module](self) for the drawing.
+/// Equivalent circuit of a three-phase cage motor, one phase of a star, all ohms seen from the stator.
+///
+/// ```text
+///  o--R1--jX1--+-------+------jXr--+------+
+///              |       |           |      |
+///              Gc     jXm        Ri/s   Ro/s
+///              |       |          jXi    jXo
+///  o-----------+-------+-----------+------+
+/// ```
+///
+/// Heavy currents saturate the leakage paths: `X1` and `Xr` fall from their running values to a part `k` of
+/// them at standstill, `1 - (1 - k) g(s)` with `g = s^2 (1 + a^2) / (s^2 + a^2)` and `a` 0.3, so that the circuit
+/// stays linear at a given slip (common practice is to let leakage change with slip; the curve is our own). It
+/// belongs to full voltage: on less, a motor draws a little less and turns a little less strongly than computed.
+///
+/// The positive sequence sees slip `s`, the negative sequence `2 - s`; the star point floats (or the windings
+/// stand in delta), so no zero-sequence current flows. One cage: leave the outer cage out.
+/// Formulae: any text on induction machines, e.g. Chapman, Electric Machinery Fundamentals, chapter on
+/// induction motors; double cage as two rotor branches in parallel.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Circuit {
     /// Stator resistance `R1`, ohms.
@@ -60,6 +65,8 @@ pub struct Circuit {
     pub core_siemens: f64,
     /// Leakage reactance `Xr` common to both cages, ohms.
     pub rotor_x_ohm: f64,
+    /// Part of `X1` and `Xr` left at standstill by saturation; 1 for none.
+    pub standstill_leakage: f64,
     /// The cage that carries the running current.
     pub inner: Cage,
     /// The cage that carries the starting current, for a double cage or deep bars.
@@ -142,6 +149,7 @@ impl Circuit {
             xm_ohm: xm,
             core_siemens: 0.0,
             rotor_x_ohm: x2,
+            standstill_leakage: 1.0,
             inner: Cage { r_ohm: r2, x_ohm: 0.0 },
             outer: None,
             mechanical: MechanicalLoss { watts: 0.0, at_rad_s: sync_rad_s },
@@ -172,7 +180,10 @@ impl Circuit {
         let low = above.iter().filter(|(_, v)| !(*v > 0.0 && v.is_finite())).map(|(n, _)| (n, "above 0"));
         let negative =
             from.iter().filter(|(_, v)| !(*v >= 0.0 && v.is_finite())).map(|(n, _)| (n, "0 or more"));
-        low.chain(negative).map(|(name, wanted)| format!("{name} must be {wanted}")).collect()
+        let part = self.standstill_leakage;
+        let fine = part > 0.0 && part <= 1.0;
+        let outside = (!fine).then_some((&"part of leakage left at standstill", "above 0 and up to 1"));
+        low.chain(negative).chain(outside).map(|(name, wanted)| format!("{name} must be {wanted}")).collect()
     }
 
     /// Speed at a slip, radians per second.
@@ -190,17 +201,25 @@ impl Circuit {
         // Written with s over ohms, so that nothing is divided by a slip of zero.
         let of = |c: &Cage| Complex64::from(slip) / Complex64::new(c.r_ohm, slip * c.x_ohm);
         let cages = of(&self.inner) + self.outer.as_ref().map_or(ZERO, of);
-        cages / (ONE + Complex64::new(0.0, self.rotor_x_ohm) * cages)
+        cages / (ONE + Complex64::new(0.0, self.rotor_x_ohm * self.leakage(slip)) * cages)
     }
 
     /// Admittance at the terminals of one phase at a slip, siemens. Give `2 - s` for the negative sequence.
     pub fn admittance(&self, slip: f64) -> Complex64 {
         let gap = self.gap_admittance(slip);
-        gap / (ONE + self.stator() * gap)
+        gap / (ONE + self.stator(slip) * gap)
     }
 
-    fn stator(&self) -> Complex64 {
-        Complex64::new(self.r1_ohm, self.x1_ohm)
+    /// Part of leakage left at a slip. Both sequences of one motor, at `s` and `2 - s`, have the same.
+    fn leakage(&self, slip: f64) -> f64 {
+        const A_SQUARE: f64 = 0.09;
+        let near = slip.min(2.0 - slip);
+        let square = near * near;
+        1.0 - (1.0 - self.standstill_leakage) * square * (1.0 + A_SQUARE) / (square + A_SQUARE)
+    }
+
+    fn stator(&self, slip: f64) -> Complex64 {
+        Complex64::new(self.r1_ohm, self.x1_ohm * self.leakage(slip))
     }
 
     fn gap_admittance(&self, slip: f64) -> Complex64 {
@@ -239,7 +258,7 @@ impl Circuit {
     fn part(&self, slip: f64, volts: Complex64) -> SequencePart {
         let rotor = self.rotor_admittance(slip);
         let gap = Complex64::new(self.core_siemens, -1.0 / self.xm_ohm) + rotor;
-        let gap_volts = volts / (ONE + self.stator() * gap);
+        let gap_volts = volts / (ONE + self.stator(slip) * gap);
         let amps = gap_volts * gap;
         let square = gap_volts.norm_sqr();
         let gap_w = 3.0 * square * rotor.re;
@@ -307,6 +326,7 @@ mod tests {
             xm_ohm: 8.0,
             core_siemens: 2e-3,
             rotor_x_ohm: 0.1,
+            standstill_leakage: 0.7,
             inner: Cage { r_ohm: 0.05, x_ohm: 0.3 },
             outer: Some(Cage { r_ohm: 0.3, x_ohm: 0.02 }),
             mechanical: MechanicalLoss { watts: 500.0, at_rad_s: 185.0 },

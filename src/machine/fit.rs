@@ -1,8 +1,9 @@
 //! Equivalent circuit out of ratings: bounded least squares.
 //!
-//! Eight unknowns (stator resistance and leakage, magnetising reactance, resistances of two cages, leakage of
-//! the inner one, fixed losses, full-load slip) meet eight ratings: shaft power at that slip, slip, power
-//! factor, efficiency, locked-rotor current, torque and power factor, breakdown torque. Each is weighted by how
+//! Nine unknowns (stator resistance and leakage, magnetising reactance, resistances of two cages, leakage of
+//! the inner one, fixed losses, full-load slip, leakage left at standstill by saturation) meet eight ratings:
+//! shaft power at that slip, slip, power factor, efficiency, locked-rotor current, torque and power factor,
+//! breakdown torque; the ninth wish is little saturation. Each is weighted by how
 //! well it is known: what stands on the nameplate firmly, what was filled in from tables loosely.
 
 use nalgebra::{SMatrix, SVector};
@@ -13,7 +14,9 @@ use super::full_load::{balanced, check, shaft_w};
 use super::nameplate::{Origin, Rated, Ratings};
 use crate::units::SQRT_3;
 
-const SIZE: usize = 8;
+const SIZE: usize = 9;
+/// Place of breakdown torque among the ratings.
+const BREAKDOWN: usize = 7;
 /// Slips at which torque is looked at for its maximum.
 const SLIPS: usize = 48;
 type Vector = SVector<f64, SIZE>;
@@ -25,15 +28,18 @@ const CORE_SHARE: f64 = 0.5;
 
 /// Weight of a breakdown torque above that of a table: 20 % more counts as one tolerance.
 const EXCESS_WEIGHT: f64 = 5.0;
+/// Tolerance of leakage left at standstill, logarithmic: it saturates only as far as the ratings ask for.
+const SATURATION: f64 = 0.5;
 /// Sum of squared weighted errors at which no further start is tried.
-const GOOD_ENOUGH: f64 = 0.02;
+const GOOD_ENOUGH: f64 = 0.05;
 /// Most rounds of descent from one start.
 const ROUNDS: u32 = 8;
 
 /// Bounds of the unknowns in per unit of rated volts over full-load amperes, in the order of [`circuit_of`].
-/// The sixth is outer over inner resistance, the seventh a part of rated power, the eighth of rated slip.
-const LOW: [f64; SIZE] = [0.002, 0.01, 0.8, 0.002, 0.001, 1.0, 0.002, 0.4];
-const HIGH: [f64; SIZE] = [0.25, 0.30, 20.0, 0.4, 2.0, 300.0, 0.12, 2.5];
+/// The sixth is outer over inner resistance, the seventh a part of rated power, the eighth of rated slip, the
+/// ninth of running leakage.
+const LOW: [f64; SIZE] = [0.002, 0.01, 0.8, 0.002, 0.001, 1.0, 0.002, 0.4, 0.35];
+const HIGH: [f64; SIZE] = [0.25, 0.30, 20.0, 0.4, 2.0, 300.0, 0.12, 2.5, 1.0];
 
 /// A rating, and what the fitted circuit does.
 #[derive(Debug, Clone, PartialEq, Serialize)]
@@ -207,6 +213,7 @@ impl<'a> Problem<'a> {
             weight(&ratings.locked_rotor_torque, 0.005, 0.01, table),
             weight(&ratings.locked_rotor_pf, 0.03, 0.03, 0.20),
             weight(&ratings.breakdown_torque, 0.005, 0.01, table),
+            1.0 / SATURATION,
         ];
         let base_ohm = ratings.volts / SQRT_3 / ratings.amps.value;
         let slips = std::array::from_fn(|i| 10f64.powf(-2.5 * i as f64 / (SLIPS - 1) as f64));
@@ -232,7 +239,7 @@ impl<'a> Problem<'a> {
 
     /// The circuit of unknowns, which are logarithms.
     fn circuit_of(&self, unknowns: &Vector) -> Circuit {
-        let [r1, x1, xm, inner_r, inner_x, ratio, fixed, _] = (*unknowns).map(f64::exp).into();
+        let [r1, x1, xm, inner_r, inner_x, ratio, fixed, _, saturated] = (*unknowns).map(f64::exp).into();
         let z = self.base_ohm;
         let fixed_w = fixed * self.ratings.shaft_w.value;
         Circuit {
@@ -241,6 +248,7 @@ impl<'a> Problem<'a> {
             xm_ohm: xm * z,
             core_siemens: CORE_SHARE * fixed_w / (self.ratings.volts * self.ratings.volts),
             rotor_x_ohm: SHARED_LEAKAGE * x1 * z,
+            standstill_leakage: saturated.min(1.0),
             inner: Cage { r_ohm: inner_r * z, x_ohm: inner_x * z },
             outer: Some(Cage { r_ohm: ratio * inner_r * z, x_ohm: 0.0 }),
             mechanical: MechanicalLoss {
@@ -257,7 +265,7 @@ impl<'a> Problem<'a> {
     fn errors(&self, unknowns: &Vector, shift: f64) -> Vector {
         let r = self.ratings;
         let circuit = self.circuit_of(unknowns);
-        let slip_error = unknowns[SIZE - 1];
+        let slip_error = unknowns[7];
         let slip = r.slip.value * slip_error.exp();
         let volts = balanced(r.volts);
         let full = circuit.operation(slip, &volts);
@@ -271,7 +279,7 @@ impl<'a> Problem<'a> {
             log(smooth_peak(&circuit, r.volts, &self.slips) / torque, r.breakdown_torque.value) - shift;
         // A table's breakdown torque is the least that a motor must have.
         let excess = r.breakdown_torque.is_filled() && peak > 0.0;
-        let peak = if excess { peak * EXCESS_WEIGHT / self.weights[SIZE - 1] } else { peak };
+        let peak = if excess { peak * EXCESS_WEIGHT / self.weights[BREAKDOWN] } else { peak };
         let raw = [
             log(shaft, r.shaft_w.value),
             slip_error,
@@ -281,6 +289,7 @@ impl<'a> Problem<'a> {
             log(locked.torque_nm / torque, r.locked_rotor_torque.value),
             log(locked.pf().unwrap_or(0.0), r.locked_rotor_pf.value),
             peak,
+            unknowns[8],
         ];
         Vector::from_fn(|i, _| raw[i] * self.weights[i])
     }
@@ -299,13 +308,14 @@ impl<'a> Problem<'a> {
         for (ratio, inner_x) in [(4.0, 0.1), (10.0, 0.1), (3.0, 0.3), (30.0, 0.2), (10.0, 0.5), (1.5, 0.05)] {
             let values = [
                 0.25 * z,
-                0.5 * z,
+                0.6 * z,
                 2.5,
                 0.9 * r.slip.value,
                 inner_x,
                 ratio,
                 0.25 * (1.0 - r.efficiency.value),
                 1.0,
+                0.8,
             ];
             let start = Vector::from(values.map(f64::ln));
             starts.push(start.zip_zip_map(&low, &high, |v, l, h| v.clamp(l, h)));

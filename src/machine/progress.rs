@@ -8,7 +8,7 @@ use super::circuit::Phases;
 use super::running::Motor;
 use super::starter::{ChangeOver, Coupling, Seen, Stage, Starter};
 
-/// Accelerating torque, part of full-load torque, at which a motor below breakdown counts as stalled.
+/// Torque left over, part of full-load torque, up to which a motor below breakdown counts as stalled.
 const STALLED: f64 = 1e-3;
 
 /// What a motor is doing.
@@ -17,8 +17,10 @@ const STALLED: f64 = 1e-3;
 pub enum Condition {
     /// Not switched on yet.
     Waiting,
-    /// On its way.
+    /// On its way up.
     Accelerating,
+    /// The load takes more than there is: on its way down.
+    Slowing,
     /// On the last stage, beyond breakdown, with hardly any torque left to accelerate.
     Running,
     /// No torque left to accelerate below breakdown, and nothing to come that would change it.
@@ -115,7 +117,7 @@ impl Progress {
     }
 
     /// What the motor is doing, from its air-gap torque at this instant; `settled` is the part of full-load torque
-    /// below which the accelerating torque of a running motor must be.
+    /// that the torque left over of a running motor must not exceed.
     pub fn condition(
         &self,
         motor: &Motor,
@@ -133,12 +135,15 @@ impl Progress {
         }
         let net = net_nm(motor, speed_rad_s, torque_nm) / motor.torque_nm;
         let beyond = self.is_beyond_breakdown(motor, time_s, speed_rad_s);
-        if self.until().is_none() && beyond && net <= settled {
+        let last = self.until().is_none();
+        if last && beyond && net.abs() <= settled {
             Condition::Running
-        } else if net <= STALLED {
+        } else if net.abs() <= STALLED && !(last && beyond) {
             Condition::Stalled
-        } else {
+        } else if net > 0.0 {
             Condition::Accelerating
+        } else {
+            Condition::Slowing
         }
     }
 }

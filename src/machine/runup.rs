@@ -210,6 +210,9 @@ impl<T: Terminals> Climb<'_, T> {
             if let Some(outcome) = trace.last().and_then(|now| self.ended(now)) {
                 break outcome;
             }
+            if ode.evaluations() > MOST_EVALUATIONS {
+                return Err(RunUpFault::StepTooShort(ode.time_s()));
+            }
             let until = self.next_corner(ode.time_s());
             let advance = self.advance(&mut ode, until)?;
             let (time, speed) = (ode.time_s(), ode.state()[0]);
@@ -306,12 +309,12 @@ impl<T: Terminals> Climb<'_, T> {
             return None;
         }
         let torque = now.seen.torque_nm;
-        // With a speed to reach, settling below it is no end but a stall.
-        let part = settled.unwrap_or(0.0);
+        // With a speed to reach, settling below it is a stall.
+        let part = settled.unwrap_or(SETTLED_BELOW);
         match self.progress.condition(self.motor, now.time_s, now.speed_rad_s, torque, part) {
             Condition::Running if settled.is_some() => Some(Outcome::Running),
             Condition::Running | Condition::Stalled => Some(Outcome::Stalled),
-            Condition::Waiting | Condition::Accelerating => None,
+            Condition::Waiting | Condition::Accelerating | Condition::Slowing => None,
         }
     }
 
@@ -342,6 +345,12 @@ impl<T: Terminals> Climb<'_, T> {
         }
     }
 }
+
+/// Torque left over, part of full-load torque, at which a motor has settled below the speed that was to be reached.
+const SETTLED_BELOW: f64 = 1e-4;
+
+/// Rates asked for in one run-up before it is given up; a usual one takes hundreds.
+const MOST_EVALUATIONS: u64 = 1_000_000;
 
 /// Least accelerating torque before breakdown, part of full-load torque, and its speed; pauses left out.
 fn least_margin(motor: &Motor, trace: &[Instant]) -> Option<(f64, f64)> {

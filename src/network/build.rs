@@ -216,6 +216,7 @@ impl Builder<'_> {
             ties: ties.as_deref().unwrap_or_default(),
             loads,
         });
+        let motors = self.motors(joined, &new_node);
         let study = self.draft.study.clone();
         let Branches { branches, constructions, .. } = parts;
         Some(Network {
@@ -227,6 +228,7 @@ impl Builder<'_> {
             loads,
             capacitors,
             meters,
+            motors,
             feeds,
             order,
             ties: ties?,

@@ -11,9 +11,11 @@ use std::sync::Arc;
 use super::conductor::{Conductors, Connection};
 use super::load::LoadModel;
 use super::meter::{MeterRecord, ShareRecord};
+use super::motor::MotorState;
 use super::study::Study;
 use super::transformer::VectorGroup;
 use crate::diagnostic::{Origin, Sources};
+use crate::machine::{FitItem, Motor as Machine, Starter};
 use crate::math::{Complex64, PhaseMatrix};
 
 /// A name from the user's files, trimmed; cheap to clone.
@@ -51,6 +53,8 @@ pub struct Draft {
     /// True where rows of meters or loads had faults that were reported: what lacks because of
     /// them is then not reported as well.
     pub metering_faulty: bool,
+    /// Motors.
+    pub motors: Vec<MotorRecord>,
     /// What was given and could not be read.
     pub unread: Unread,
 }
@@ -313,6 +317,33 @@ pub struct LoadRecord {
     pub model: LoadModel,
     /// Name of its profile.
     pub profile: Option<Name>,
+    /// Where it was written.
+    pub origin: Option<Origin>,
+}
+
+/// One row of `motors.csv`, its circuit found.
+#[derive(Debug, Clone)]
+pub struct MotorRecord {
+    /// Name of the motor.
+    pub motor: Name,
+    /// Node.
+    pub node: Name,
+    /// Equal motors side by side.
+    pub count: u32,
+    /// The machine and its load.
+    pub machine: Machine,
+    /// How it is started.
+    pub starter: Starter,
+    /// Whether it runs.
+    pub state: MotorState,
+    /// Starts an hour that are planned.
+    pub starts_per_hour: Option<f64>,
+    /// Longest time at standstill under full voltage, seconds.
+    pub locked_rotor_limit_s: Option<f64>,
+    /// What tables filled in: quantity, value, source.
+    pub filled: Vec<(&'static str, f64, String)>,
+    /// How well the circuit meets the ratings.
+    pub fit: Vec<FitItem>,
     /// Where it was written.
     pub origin: Option<Origin>,
 }

@@ -12,6 +12,7 @@ mod load;
 mod meter;
 mod metering;
 mod model;
+mod motor;
 mod plausible;
 mod regulator;
 mod remainder;
@@ -27,8 +28,8 @@ mod zone;
 pub use build::{Built, build};
 pub use conductor::{Conductor, Conductors, Connection};
 pub use draft::{
-    Across, CapacitorRecord, Construction, Draft, FaultLevel, LineRecord, LoadRecord, LoadSite, Name,
-    NodeRecord, RegulatorControl, RegulatorRecord, SupplyRecord, SwitchRecord, SwitchState,
+    Across, CapacitorRecord, Construction, Draft, FaultLevel, LineRecord, LoadRecord, LoadSite, MotorRecord,
+    Name, NodeRecord, RegulatorControl, RegulatorRecord, SupplyRecord, SwitchRecord, SwitchState,
     TransformerRecord, Unread,
 };
 pub use load::{Capacitor, Load, LoadModel, LoadPlace};
@@ -40,6 +41,7 @@ pub use model::{
     Branch, BranchId, BranchKind, ConstructionId, End, Feed, Line, Network, Node, NodeId, SOLID_EARTH_OHM,
     Stay, StayPlace, Tie,
 };
+pub use motor::{Motor, MotorState};
 pub use regulator::{Regulator, RegulatorUnit, TapMode};
 pub use star_point::{WeakStarPoint, weak_star_points};
 pub use study::Study;

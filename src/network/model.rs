@@ -9,6 +9,7 @@ use super::conductor::{Conductor, Conductors, Connection};
 use super::draft::{Construction, Name};
 use super::load::{Capacitor, Load, LoadPlace};
 use super::meter::Meter;
+use super::motor::Motor;
 use super::regulator::Regulator;
 use super::study::Study;
 use super::supply::Supply;
@@ -229,6 +230,8 @@ pub struct Network {
     /// Meters whose readings loads share; those loads draw nothing until they are allocated
     /// (see `study::allocation`), so a network with meters is not solved as it stands.
     pub meters: Vec<Meter>,
+    /// Motors.
+    pub motors: Vec<Motor>,
     /// How each node is fed; `None` only for the supply node.
     pub feeds: Vec<Option<Feed>>,
     /// Nodes from the supply outwards, breadth first: a parent stands before its children.

@@ -7,6 +7,7 @@ use super::draft::{LoadSite, SwitchState};
 use super::graph::place;
 use super::load::{Capacitor, Load, LoadPlace};
 use super::model::{NodeId, nominal_phase_volts};
+use super::motor::Motor;
 use crate::diagnostic::{Code, Origin, nearest};
 
 impl Builder<'_> {
@@ -42,7 +43,11 @@ impl Builder<'_> {
             });
         }
         let capacitors = self.capacitors(joined, new_node);
-        if loads.is_empty() && !self.diagnostics.has_errors() && !self.draft.unread.may_draw() {
+        if loads.is_empty()
+            && self.draft.motors.is_empty()
+            && !self.diagnostics.has_errors()
+            && !self.draft.unread.may_draw()
+        {
             self.diagnostics.warning(
                 Code::NoLoad,
                 None,
@@ -90,6 +95,46 @@ impl Builder<'_> {
             });
         }
         capacitors
+    }
+
+    /// Motors, each at a node with all three phases and near its rated voltage.
+    pub(super) fn motors(&mut self, joined: &Joined, new_node: &[Option<NodeId>]) -> Vec<Motor> {
+        let mut motors = Vec::with_capacity(self.draft.motors.len());
+        for record in &self.draft.motors {
+            let who = format!("motor {} is at", record.motor);
+            let three = Connection::Delta(Conductors::ABC);
+            let Some(node) = self.shunt_node(joined, &record.node, &who, three, record.origin) else {
+                continue;
+            };
+            let Some(id) = new_node[node] else { continue };
+            let nominal = joined.carried.nominal_volts[node];
+            let rated = record.machine.volts;
+            if !(0.75..=1.25).contains(&(rated / nominal)) {
+                self.diagnostics.error(
+                    Code::VoltageMismatch,
+                    place(self.draft, record.origin, "volts", &rated.to_string()),
+                    format!(
+                        "motor {} is rated {rated} V, but node {} is at {:.0} V",
+                        record.motor, record.node, nominal
+                    ),
+                    "check the voltage of its plate, and the node it stands at",
+                );
+            }
+            motors.push(Motor {
+                name: record.motor.clone(),
+                node: id,
+                count: record.count,
+                machine: record.machine.clone(),
+                starter: record.starter,
+                state: record.state,
+                slip: record.machine.circuit.slip(record.machine.rated_rad_s),
+                starts_per_hour: record.starts_per_hour,
+                locked_rotor_limit_s: record.locked_rotor_limit_s,
+                filled: record.filled.clone(),
+                fit: record.fit.clone(),
+            });
+        }
+        motors
     }
 
     /// The graph node of a load or capacitor, its conductors checked; `None` where it cannot be placed.

@@ -3,7 +3,9 @@
 
 use super::coils;
 use crate::math::{Complex64, PhaseVector, ZERO};
-use crate::network::{Branch, BranchKind, Conductor, Connection, LoadModel, Network, Node, NodeId};
+use crate::network::{
+    Branch, BranchKind, Conductor, Connection, LoadModel, MotorState, Network, Node, NodeId,
+};
 use crate::solver::Solution;
 
 /// Largest mismatches of a solution.
@@ -129,6 +131,13 @@ fn subtract_shunts(network: &Network, solution: &Solution, balance: &mut [PhaseV
     for (i, node) in network.nodes.iter().enumerate() {
         for (slot, y) in node.earth_admittance().into_iter().enumerate() {
             balance[i][slot] -= y * solution.volts[i][slot];
+        }
+    }
+    for motor in network.motors.iter().filter(|m| m.state == MotorState::Running) {
+        let volts = &solution.volts[motor.node.index()];
+        let drawn = motor.machine.circuit.operation(motor.slip, &[volts[0], volts[1], volts[2]]).amps;
+        for (k, amps) in drawn.into_iter().enumerate() {
+            balance[motor.node.index()][k] -= amps * f64::from(motor.count);
         }
     }
     let mut take = |id: NodeId, connection: Connection, current: &dyn Fn(&Node, Complex64) -> Complex64| {

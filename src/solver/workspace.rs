@@ -13,7 +13,7 @@ use super::injection::{Gathered, Mixed, StarPower, gather};
 use super::lanes::{Columns, Slots};
 use super::ports::Ports;
 use crate::math::{Complex64, PhaseMatrix, ZERO};
-use crate::network::{BranchKind, LoadModel, Network, NodeId};
+use crate::network::{BranchKind, LoadModel, MotorState, Network, NodeId};
 
 /// Work at the branch of a position.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
@@ -295,6 +295,12 @@ pub(super) fn own_shunts(network: &Network) -> Vec<Seen> {
         let siemens = Complex64::new(0.0, each / (capacitor.rated_volts * capacitor.rated_volts));
         let conductors = network.node(capacitor.node).conductors;
         seen[capacitor.node.index()].add_matrix(&shunt_matrix(capacitor.connection, siemens, conductors));
+    }
+    for motor in network.motors.iter().filter(|m| m.state == MotorState::Running) {
+        let y = motor.machine.circuit.phase_matrix(motor.slip) * Complex64::from(f64::from(motor.count));
+        let mut four = PhaseMatrix::zeros();
+        four.fixed_view_mut::<3, 3>(0, 0).copy_from(&y);
+        seen[motor.node.index()].add_matrix(&four);
     }
     for load in network.loads.iter().filter(|l| l.model == LoadModel::Impedance) {
         let each = Complex64::new(load.watts, -load.vars) / load.connection.elements().max(1) as f64;

@@ -16,6 +16,7 @@ pub fn double_cage() -> Circuit {
         xm_ohm: 8.0,
         core_siemens: 2e-3,
         rotor_x_ohm: 0.1,
+        standstill_leakage: 1.0,
         inner: Cage { r_ohm: 0.05, x_ohm: 0.3 },
         outer: Some(Cage { r_ohm: 0.3, x_ohm: 0.02 }),
         mechanical: MechanicalLoss { watts: 500.0, at_rad_s: 185.0 },
@@ -202,15 +203,14 @@ fn rows() -> Vec<(f64, u32)> {
     table.lines().skip(1).filter_map(of).collect()
 }
 
-/// All rows from 7.5 hp up come within 3 %. Of the small ones hardly any do: the greatest current allowed (7 to 16 kVA
-/// a horsepower) leaves so little leakage that the fitted circuit, whose reactances are constant, has a breakdown torque
-/// above the least one of the table. They are printed.
+/// All rows from 1.5 hp up come within 3 %. Of the five smallest the greatest current allowed (12 to 16 kVA a horsepower)
+/// and the least torques are more than the fitted circuit can join with full load; they are printed.
 #[test]
 fn design_b_rows() {
     let (mut good, mut failures) = (0, Vec::new());
     for (hp, poles) in rows() {
         let mut beyond = |what: String| {
-            assert!(hp < 7.5, "{what}");
+            assert!(hp < 1.5, "{what}");
             failures.push(what);
         };
         match fit(&design_b(poles, hp)) {
@@ -228,7 +228,7 @@ fn design_b_rows() {
     }
     println!("{good} rows within 3 %; beyond:\n{}", failures.join("\n"));
     assert_eq!(good + failures.len(), 94);
-    assert!(good >= 73, "{good}");
+    assert!(good >= 89, "{good}");
 }
 
 /// A plate with nothing but power, voltage and poles: standstill and full load as in the tables, breakdown torque not
@@ -293,5 +293,48 @@ fn the_plate_wins_over_tables() {
         assert!(firm.error_percent().abs() < 3.0, "{hp} hp {firm:?}");
         assert!(fitted.item("amps").unwrap().error_percent().abs() < 5.0);
         assert!(fitted.item("locked_rotor_amps").unwrap().error_percent() < 1.0);
+    }
+}
+
+/// Every design letter at 50 hp, all else filled in from the tables: current and torque at standstill are met.
+#[test]
+fn every_design_fits() {
+    for letter in ['A', 'B', 'C', 'D', 'N', 'H'] {
+        let ratings = Nameplate { design: Design::from_letter(letter), ..plate(50.0) }.resolve().unwrap();
+        let fitted = fit(&ratings).unwrap();
+        let error = |q: &str| fitted.item(q).unwrap().error_percent();
+        for (quantity, most) in [("locked_rotor_amps", 0.5), ("locked_rotor_torque", 0.5), ("amps", 2.0)] {
+            assert!(error(quantity).abs() < most, "{letter}: {:?}", fitted.items);
+        }
+        assert!((-1.0..20.0).contains(&error("breakdown_torque")), "{letter}: {:?}", fitted.items);
+    }
+}
+
+/// Motors of 400 V and 50 Hz as catalogues have them, the values made up: all that stands on the plate within 4 %.
+#[test]
+fn fifty_hertz_plates() {
+    for (kw, rpm, amps, efficiency, multiple, locked, most) in [
+        (110.0, 1487.0, 195.0, 0.952, 7.0, 2.4, 2.9),
+        (15.0, 1465.0, 28.0, 0.921, 7.3, 2.3, 3.1),
+        (4.0, 1445.0, 8.0, 0.886, 7.0, 2.2, 3.0),
+        (250.0, 2982.0, 425.0, 0.958, 7.2, 1.9, 3.0),
+    ] {
+        let plate = Nameplate {
+            frequency_hz: 50.0,
+            shaft_w: Some(kw * 1e3),
+            volts: Some(400.0),
+            amps: Some(amps),
+            efficiency: Some(efficiency),
+            rpm: Some(rpm),
+            locked_rotor_multiple: Some(multiple),
+            locked_rotor_torque: Some(locked),
+            breakdown_torque: Some(most),
+            ..Nameplate::default()
+        };
+        let fitted = fit(&plate.resolve().unwrap()).unwrap();
+        for i in fitted.items.iter().filter(|i| i.firm) {
+            println!("{kw} kW: {} {:.4} {:.4} {:+.2} %", i.quantity, i.wanted, i.obtained, i.error_percent());
+            assert!(i.error_percent().abs() < 4.0, "{kw} kW: {i:?}");
+        }
     }
 }

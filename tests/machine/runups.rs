@@ -312,3 +312,27 @@ fn senseless_settings_are_told() {
     };
     assert!(faults.len() >= 5, "{faults:?}");
 }
+
+/// A running motor in a dip: it slows and settles, or slows to a stop; from above speed it comes down.
+#[test]
+fn a_running_motor_in_a_dip() {
+    let m = motor(double_cage(), Shape::Constant, 380.0);
+    let at = |part: f64| {
+        let volts = balanced(460.0 * part);
+        let from_rad_s = m.circuit.speed_rad_s(running_slip(&m, &balanced(460.0)).unwrap());
+        let settings =
+            RunUpSettings { from_rad_s, finish: Finish::Settled(1e-4), ..RunUpSettings::default() };
+        (run_up(&m, &Starter::Direct, &mut StiffBus(volts), &settings).unwrap(), volts)
+    };
+    let (shallow, volts) = at(0.85);
+    assert_eq!(shallow.outcome, Outcome::Running);
+    near("speed", shallow.speed_rad_s, m.circuit.speed_rad_s(running_slip(&m, &volts).unwrap()), 1e-5);
+    assert!(shallow.energies.kinetic < 0.0 && shallow.energies.imbalance().abs() < 1e-5);
+    let (deep, volts) = at(0.55);
+    assert!(running_slip(&m, &volts).is_err());
+    assert_eq!((deep.outcome, deep.speed_rad_s), (Outcome::Stalled, 0.0));
+    assert!(deep.seconds > 0.1 && deep.energies.imbalance().abs() < 1e-5);
+    let above = RunUpSettings { from_rad_s: 1.02 * SYNC, ..RunUpSettings::default() };
+    let down = run_up(&m, &Starter::Direct, &mut stiff(), &above).unwrap();
+    assert!(down.outcome == Outcome::Running && down.speed_rad_s < SYNC);
+}

@@ -89,8 +89,10 @@ fn nema_percent() {
     assert!(unbalance(&[Complex64::new(0.0, 0.0); 3]).is_none());
 }
 
-/// NEMA MG 1 14.36.5: current unbalance is of the order of 6 to 10 times voltage unbalance (from memory); at 3.5 %
-/// Figure 14-1 leaves about 0.85 of rated output (between 0.88 at 3 % and 0.82 at 4 %, from memory).
+/// NEMA MG 1 14.36.5: current unbalance is of the order of 6 to 10 times voltage unbalance (from memory). At 3.5 % the
+/// 100 hp motor filled in from the tables stands at the lower end: negative over positive sequence of current 5.8 times
+/// that of voltage, greatest deviation of a line current 5.4 times that of a line voltage. At 3.5 % Figure 14-1
+/// leaves about 0.85 of rated output (between 0.88 at 3 % and 0.82 at 4 %, from memory).
 #[test]
 fn three_and_a_half_percent() {
     let volts = triangle(460.0 * 1.035, 460.0 * 0.9825, 460.0 * 0.9825);
@@ -103,7 +105,11 @@ fn three_and_a_half_percent() {
     assert!((running.unbalance.nema_percent - 3.5).abs() < 1e-9);
     assert!((running.unbalance.derating.unwrap() - 0.85).abs() < 1e-9);
     let ratio = running.current_unbalance_percent / 3.5;
-    assert!((5.0..10.0).contains(&ratio), "{ratio}");
+    let operation = &running.operation;
+    let sequences = 100.0 * operation.negative.amps.norm() / operation.positive.amps.norm();
+    let by_sequence = sequences / running.unbalance.factor_percent;
+    println!("current unbalance {ratio:.2} times that of voltage, by sequences {by_sequence:.2} times");
+    assert!((5.0..10.0).contains(&ratio) && (5.5..10.0).contains(&by_sequence), "{ratio} {by_sequence}");
     // Heat of the negative sequence: both windings.
     assert!(running.operation.negative.stator_w > 0.0 && running.operation.negative.rotor_w > 0.0);
     let even = run(&motor(fitted.circuit, Shape::Constant, 395.0), &balanced(460.0)).unwrap();
