@@ -276,6 +276,14 @@ codes! {
     BadGeometry => "bad-geometry",
     /// A wire's datum that the computation needs and neither the table nor the folder gives.
     MissingDatum => "missing-datum",
+    /// A meter in a part that is not fed.
+    MeterNotFed => "meter-not-fed",
+    /// A load that shares a reading no meter gives.
+    NoReading => "no-reading",
+    /// A meter whose reading no load shares.
+    NoShare => "no-share",
+    /// Known loads and inner meters take more than a meter reads.
+    NegativeRemainder => "negative-remainder",
     /// Nothing draws power.
     NoLoad => "no-load",
     /// A name that looks as if a spreadsheet had made a date or a rounded number of it.

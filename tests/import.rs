@@ -8,6 +8,8 @@ mod dialects;
 mod faults;
 #[path = "import/knock_on.rs"]
 mod knock_on;
+#[path = "import/meter_faults.rs"]
+mod meter_faults;
 #[path = "import/network_faults.rs"]
 mod network_faults;
 #[path = "import/places.rs"]

@@ -26,6 +26,12 @@ pub(super) enum Command {
         Exit status: 0 solved, 1 solved, --strict, a limit is exceeded or a control hunts,\n\
         2 the input or the command line is wrong, 3 no solution.")]
     Flow(Flow),
+    /// Share metered demand over the loads that have a share, until the flow meets every meter.
+    #[command(after_help = "Examples:\n  fourwire allocate networks/ferrow-lane\n  \
+        fourwire allocate networks/ferrow-lane --out results\n\n\
+        Exit status: 0 every meter is met, 2 the input or the command line is wrong,\n\
+        3 no solution, or a meter that cannot be met.")]
+    Allocate(Allocate),
     /// Impedance from wires and geometry, the table of wires, and drop and loss of one circuit.
     #[command(after_help = "Examples:\n  fourwire line --list \"4/0\"\n  \
         fourwire line --construction trunk336 networks/larkfoot-valley\n  \
@@ -88,6 +94,19 @@ pub(super) enum FlowFormat {
     Json,
     /// One CSV file a list
     Csv,
+}
+
+/// Options of `allocate`.
+#[derive(Debug, Args)]
+pub(super) struct Allocate {
+    /// Folder of the network's CSV files, with meters.csv
+    pub folder: PathBuf,
+    /// Form of the table that is printed
+    #[arg(long, value_enum, default_value_t = FlowFormat::Text)]
+    pub format: FlowFormat,
+    /// Folder to write the loads (loads.csv, ready for a network) and the readings (meters.csv) to
+    #[arg(long, value_name = "DIR")]
+    pub out: Option<PathBuf>,
 }
 
 /// Options of `line`.

@@ -8,9 +8,10 @@ use super::{Outcome, Screen};
 use crate::network::{LoadModel, Network};
 use crate::output::{
     Colour, Folder, Length, diagnostics_text, flow_csv, flow_json, flow_text, loadability_text,
-    no_solution_text,
+    no_solution_text, unmet_text,
 };
-use crate::solver::{Settings, Solution, solve_controlled};
+use crate::solver::{Controls, Settings, Solution, solve_controlled};
+use crate::study::allocation::{Allocation, MeterRead, Unmet, allocate};
 use crate::study::flow::FlowReport;
 use crate::study::loadability::loadability_with;
 
@@ -31,7 +32,13 @@ pub(super) fn flow(options: &Flow, screen: &mut Screen) -> Outcome {
     };
     screen.doing("solving");
     let settings = Settings::default();
-    let (solution, controls) = solve_controlled(&mut network, &settings);
+    let (solution, controls, meters) = match solved(&mut network, &settings) {
+        Ok(solved) => solved,
+        Err(unmet) => {
+            screen.tell(&unmet_text(&network, &unmet));
+            return Outcome::NoSolution;
+        }
+    };
     let Some(report) = FlowReport::controlled(&network, &solution, &controls, &loaded.input_sha256) else {
         screen.tell(&no_solution_text(&network, &solution));
         if options.loadability {
@@ -40,6 +47,7 @@ pub(super) fn flow(options: &Flow, screen: &mut Screen) -> Outcome {
         }
         return Outcome::NoSolution;
     };
+    let report = report.with_meters(meters);
     screen.doing("writing");
     if let Err(error) = deliver(options, &network, &solution, &report, screen) {
         screen.tell(&format!("error: the results cannot be written: {error}\n"));
@@ -54,6 +62,18 @@ pub(super) fn flow(options: &Flow, screen: &mut Screen) -> Outcome {
     } else {
         Outcome::Done
     }
+}
+
+type Solved = (Solution, Controls, Vec<MeterRead>);
+
+/// The flow; where there are meters, with the loads shared to meet them.
+fn solved(network: &mut Network, settings: &Settings) -> Result<Solved, Unmet> {
+    if network.meters.is_empty() {
+        let (solution, controls) = solve_controlled(network, settings);
+        return Ok((solution, controls, Vec::new()));
+    }
+    let Allocation { solution, controls, meters, .. } = allocate(network, settings)?;
+    Ok((solution, controls, meters))
 }
 
 fn deliver(

@@ -1,5 +1,6 @@
 //! The command line: arguments, one function a command, messages and exit codes.
 
+mod allocate;
 mod args;
 mod check;
 mod flow;
@@ -53,6 +54,7 @@ pub fn run() -> ExitCode {
     let outcome = match arguments.command {
         Command::Check(options) => check::check(&options, &mut screen),
         Command::Flow(options) => flow::flow(&options, &mut screen),
+        Command::Allocate(options) => allocate::allocate(&options, &mut screen),
         Command::Line(options) => line::line(&options, &mut screen),
     };
     if let Some(error) = screen.failure() {

@@ -8,7 +8,7 @@ use sha2::{Digest, Sha256};
 use super::constructions::DescribedConstruction;
 use super::text::decode;
 use super::{
-    Intake, Reading, capacitors, constructions, lines, loads, matrices, motors, nodes, place_of_file,
+    Intake, Reading, capacitors, constructions, lines, loads, matrices, meters, motors, nodes, place_of_file,
     regulators, source, study, switches, transformers, unsupported,
 };
 use crate::catalog::Catalog;
@@ -16,7 +16,7 @@ use crate::diagnostic::{Code, Diagnostics, FileId, SourceFile, nearest};
 use crate::network::Draft;
 
 /// Files of the format, in the order they are read and reported.
-const KNOWN: [&str; 15] = [
+const KNOWN: [&str; 16] = [
     "study.csv",
     "source.csv",
     "nodes.csv",
@@ -32,6 +32,7 @@ const KNOWN: [&str; 15] = [
     "capacitors.csv",
     "motors.csv",
     "profiles.csv",
+    "meters.csv",
 ];
 
 /// Endings of files people save instead of CSV.
@@ -261,7 +262,7 @@ fn fill(
         }
     }
     let [study, source, nodes, conductors, spacings, constructions, matrices, rest @ ..] = ids;
-    let [lines, switches, transformers, regulators, loads, capacitors, motor_file, profiles] = rest;
+    let [lines, switches, transformers, regulators, loads, capacitors, motor_file, profiles, meters] = rest;
     let mut draft = Draft {
         study: with(intake, study, study::read),
         supplies: with(intake, source, source::read),
@@ -276,7 +277,10 @@ fn fill(
     draft.switches = with(intake, switches, switches::read);
     draft.transformers = with(intake, transformers, transformers::read);
     draft.regulators = with(intake, regulators, regulators::read);
-    draft.loads = with(intake, loads, loads::read);
+    let before = intake.diagnostics.counts().0;
+    (draft.loads, draft.shares) = with(intake, loads, loads::read);
+    draft.meters = with(intake, meters, meters::read);
+    draft.metering_faulty = intake.diagnostics.counts().0 > before;
     draft.capacitors = with(intake, capacitors, capacitors::read);
     let frequency_hz = draft.study.frequency_hz;
     draft.motors = motor_file.map(|id| motors::read(intake, id, frequency_hz)).unwrap_or_default();

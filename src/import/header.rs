@@ -198,7 +198,14 @@ impl Finder<'_> {
     fn missing(&mut self, cells: &[Vec<(usize, &'static Header)>]) {
         for (column, found) in self.schema.columns.iter().zip(cells) {
             let misspelt = column.headers().any(|h| self.suggested.contains(&h.name));
-            if column.need == Need::Required && found.is_empty() && !misspelt {
+            let needed = match column.need {
+                Need::Required => true,
+                Need::RequiredWithout(others) => {
+                    others.iter().all(|&other| cells.get(other).is_none_or(Vec::is_empty))
+                }
+                Need::Optional => false,
+            };
+            if needed && found.is_empty() && !misspelt {
                 let message = format!("the column for {} is missing", column.what);
                 let cure = format!("add a column: {}", column.names());
                 self.error(Code::MissingColumn, None, message, cure);

@@ -6,7 +6,7 @@ use super::row::{Number, Row};
 use super::schema::{Column, Range, Schema};
 use super::table::read_table;
 use crate::diagnostic::{Code, FileId};
-use crate::network::{LoadModel, LoadRecord, LoadSite};
+use crate::network::{LoadModel, LoadRecord, LoadSite, Name, ShareBasis, ShareRecord};
 use crate::units::KILO;
 
 const LOAD: usize = 0;
@@ -18,6 +18,11 @@ const KVAR: usize = 5;
 const PF: usize = 6;
 const MODEL: usize = 7;
 const PROFILE: usize = 8;
+const SHARE_KVA: usize = 9;
+const SHARE_KWH: usize = 10;
+const SHARE_WEIGHT: usize = 11;
+const SHARES: [(usize, ShareBasis); 3] =
+    [(SHARE_KVA, ShareBasis::Kva), (SHARE_KWH, ShareBasis::Kwh), (SHARE_WEIGHT, ShareBasis::Weight)];
 
 static LOADS: Schema = Schema {
     file: "loads.csv",
@@ -26,37 +31,54 @@ static LOADS: Schema = Schema {
         Column::text("node", "the node"),
         Column::text("line", "the line"),
         Column::text("phases", "the connection").required(),
-        Column::number("kw", KILO, "kW", "the active power").required(),
+        Column::number("kw", KILO, "kW", "the active power").required_without(&[
+            SHARE_KVA,
+            SHARE_KWH,
+            SHARE_WEIGHT,
+        ]),
         Column::number("kvar", KILO, "kvar", "the reactive power"),
         Column::number("pf", 1.0, "", "the power factor").range(Range::Within(-1.0, 1.0)),
         Column::text("model", "the load model"),
         Column::text("profile", "the profile"),
+        Column::number("share_kva", 1.0, "kVA", "the share by transformer rating").range(Range::NotNegative),
+        Column::number("share_kwh", 1.0, "kWh", "the share by energy").range(Range::NotNegative),
+        Column::number("share_weight", 1.0, "", "the share by weight").range(Range::NotNegative),
     ],
 };
 
 const MODELS: [(&str, LoadModel); 3] =
     [("power", LoadModel::Power), ("current", LoadModel::Current), ("impedance", LoadModel::Impedance)];
 
-/// Reads the rows of `loads.csv`.
-pub(super) fn read(intake: &mut Intake, file: FileId) -> Vec<LoadRecord> {
-    let mut records = Vec::new();
+/// Reads the rows of `loads.csv`: loads, and the shares of those that are allocated.
+pub(super) fn read(intake: &mut Intake, file: FileId) -> (Vec<LoadRecord>, Vec<ShareRecord>) {
+    let (mut records, mut shares) = (Vec::new(), Vec::new());
     let mut unique = Unique::new("load");
-    read_table(intake, file, &LOADS, |row| match read_row(row, &mut unique) {
+    read_table(intake, file, &LOADS, |row| match read_row(row, &mut unique, &mut shares) {
         Some(record) => records.push(record),
         None => row.lose(),
     });
-    records
+    (records, shares)
 }
 
-fn read_row(row: &mut Row<'_>, unique: &mut Unique) -> Option<LoadRecord> {
+fn read_row(row: &mut Row<'_>, unique: &mut Unique, shares: &mut Vec<ShareRecord>) -> Option<LoadRecord> {
     let load = row.own_name(LOAD);
     if let Some(load) = &load {
         unique.check(row, LOAD, load);
     }
     let site = site(row);
     let connection = row.connection(PHASES);
-    let watts = row.optional_number(KW);
-    let vars = vars(row, watts);
+    let (watts, vars) = match SHARES.iter().any(|(column, _)| row.is_filled(*column)) {
+        true => {
+            let share = share(row, load.clone());
+            let drawn = share.as_ref().map(|_| 0.0);
+            shares.extend(share);
+            (drawn, drawn)
+        }
+        false => {
+            let watts = watts(row);
+            (watts, vars(row, watts))
+        }
+    };
     let model = row.word(MODEL, &MODELS, LoadModel::Power);
     let profile = row.shared_name(PROFILE);
     Some(LoadRecord {
@@ -69,6 +91,59 @@ fn read_row(row: &mut Row<'_>, unique: &mut Unique) -> Option<LoadRecord> {
         profile,
         origin: Some(row.origin),
     })
+}
+
+fn watts(row: &mut Row<'_>) -> Option<f64> {
+    match row.number(KW) {
+        Number::Value(watts) => Some(watts),
+        Number::Faulty => None,
+        // A header without any of these was reported.
+        Number::Blank if ![KW, SHARE_KVA, SHARE_KWH, SHARE_WEIGHT].iter().any(|&c| row.has_column(c)) => None,
+        Number::Blank => {
+            let message = "the active power is missing";
+            let cure = "fill in `kw`, or a share (`share_kva`, `share_kwh` or `share_weight`) for a load that takes its part of what a meter reads";
+            row.error(Code::MissingValue, KW, message, cure);
+            None
+        }
+    }
+}
+
+/// Share of a load that is allocated: just one basis, and no power of its own.
+fn share(row: &mut Row<'_>, load: Option<Name>) -> Option<ShareRecord> {
+    let mut filled = SHARES.into_iter().filter(|(column, _)| row.is_filled(*column));
+    let first = filled.next();
+    if let Some((second, _)) = filled.next() {
+        let message = "two shares are given";
+        row.error(Code::Conflict, second, message, "keep one of `share_kva`, `share_kwh` and `share_weight`");
+        return None;
+    }
+    for (column, name) in [(KW, "kw"), (KVAR, "kvar")] {
+        if row.is_filled(column) {
+            let message = format!(
+                "both `{name}` and a share are given: a load with a share takes its power from the meter"
+            );
+            row.error(Code::Conflict, column, message, format!("clear `{name}`, or clear the share"));
+            return None;
+        }
+    }
+    let (column, basis) = first?;
+    let amount = row.optional_number(column)?;
+    let ratio = match row.number(PF) {
+        Number::Blank => None,
+        Number::Faulty => return None,
+        Number::Value(pf) => Some(ratio_of(row, PF, pf)?),
+    };
+    Some(ShareRecord { load: load?, basis, amount, ratio, origin: Some(row.origin) })
+}
+
+/// `Q / P = tan(acos |pf|)` of a power factor, negative where it leads.
+pub(super) fn ratio_of(row: &mut Row<'_>, column: usize, pf: f64) -> Option<f64> {
+    if pf.abs() < 0.01 {
+        let message = "the power factor must be between 0.01 and 1, or between -0.01 and -1 where it leads";
+        row.error(Code::OutOfRange, column, message, "write the power factor, or clear it and write `kvar`");
+        return None;
+    }
+    Some(pf.abs().acos().tan() * pf.signum())
 }
 
 fn site(row: &mut Row<'_>) -> Option<LoadSite> {
@@ -93,13 +168,10 @@ fn site(row: &mut Row<'_>) -> Option<LoadSite> {
 fn vars(row: &mut Row<'_>, watts: Option<f64>) -> Option<f64> {
     match (row.number(KVAR), row.number(PF)) {
         (Number::Value(vars), Number::Blank) => Some(vars),
-        (Number::Blank, Number::Value(pf)) if pf.abs() < 0.01 => {
-            let message =
-                "the power factor must be between 0.01 and 1, or between -0.01 and -1 where it leads";
-            row.error(Code::OutOfRange, PF, message, "write the power factor, or clear it and write `kvar`");
-            None
+        (Number::Blank, Number::Value(pf)) => {
+            let ratio = ratio_of(row, PF, pf);
+            Some(watts? * ratio?)
         }
-        (Number::Blank, Number::Value(pf)) => Some(watts? * pf.abs().acos().tan() * pf.signum()),
         (Number::Blank, Number::Blank) => {
             let message = "neither the reactive power nor the power factor is given";
             let cure = "fill in `kvar` or `pf`; write 1 in `pf` for a load without reactive power";

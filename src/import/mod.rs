@@ -12,6 +12,7 @@ mod header;
 mod lines;
 mod loads;
 mod matrices;
+mod meters;
 mod motors;
 mod names;
 mod nodes;

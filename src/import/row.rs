@@ -56,6 +56,11 @@ impl<'r> Row<'r> {
         self.layout.schema.column(column)
     }
 
+    /// True where the header has the column, under any of its names.
+    pub(crate) fn has_column(&self, column: usize) -> bool {
+        self.layout.has(column)
+    }
+
     /// True where the cell holds text, under any of the column's names.
     pub(crate) fn is_filled(&self, column: usize) -> bool {
         self.filled(column).next().is_some()

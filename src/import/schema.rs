@@ -65,6 +65,8 @@ impl Range {
 pub(crate) enum Need {
     /// Every row.
     Required,
+    /// Every row in which none of these columns is filled.
+    RequiredWithout(&'static [usize]),
     /// Blank means the default, or depends on other columns.
     Optional,
 }
@@ -111,6 +113,11 @@ impl Column {
     /// The same column, needed in every row.
     pub(crate) const fn required(self) -> Column {
         Column { need: Need::Required, ..self }
+    }
+
+    /// The same column, needed in every row without any of these others.
+    pub(crate) const fn required_without(self, others: &'static [usize]) -> Column {
+        Column { need: Need::RequiredWithout(others), ..self }
     }
 
     /// The same column with a range.

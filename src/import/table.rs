@@ -96,7 +96,7 @@ fn open<'t>(
                 schema
                     .columns
                     .iter()
-                    .filter(|c| c.need == super::schema::Need::Required)
+                    .filter(|c| c.need != super::schema::Need::Optional)
                     .map(|c| format!("`{}`", c.name()))
                     .collect::<Vec<_>>()
                     .join(", ")

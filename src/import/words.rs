@@ -74,7 +74,7 @@ pub(super) fn explain(
         }
         NumberFault::NotFinite => {
             let cure = match spec.need {
-                Need::Required => "write the value itself",
+                Need::Required | Need::RequiredWithout(_) => "write the value itself",
                 Need::Optional => "write the value itself, or leave the cell blank",
             };
             (Code::BadNumber, format!("expected a finite number, {expected}"), cure.to_owned())

@@ -6,6 +6,7 @@ use super::draft::Draft;
 use super::earth::{Given, SideEarth, Standing, sides};
 use super::graph::{Graph, RawFeed, RawTie, Tree, grow, place, report_isolated_switches, report_unfed};
 use super::load::CapacitorBank;
+use super::metering::Metered;
 use super::model::{BranchId, Feed, Network, Node, NodeId, SOLID_EARTH_OHM, Stay, StayPlace, Tie};
 use super::plausible;
 use super::supply::{Supply, circulant, held_volts, sequence_impedance};
@@ -196,7 +197,7 @@ impl Builder<'_> {
         let parts = self.branches(joined, &new_node)?;
         let supply = self.supply(new_node[0]?)?;
         let feeds = feeds(tree, &new_node, &parts.new_branch, nodes.len());
-        let order = tree.order.iter().filter_map(|&n| new_node[n]).collect();
+        let order: Vec<NodeId> = tree.order.iter().filter_map(|&n| new_node[n]).collect();
         let ties = ties(tree, &new_node, &parts.new_branch);
         let stays = joined.stays.iter().filter_map(|&(part, earth)| {
             let place = match part.checked_sub(graph.names.len()) {
@@ -207,6 +208,15 @@ impl Builder<'_> {
         });
         let stays = stays.collect();
         let (loads, capacitor_banks) = self.shunts(joined, &new_node, &parts);
+        let (loads, meters) = self.meters(Metered {
+            joined,
+            parts: &parts,
+            new_node: &new_node,
+            feeds: &feeds,
+            order: &order,
+            ties: ties.as_deref().unwrap_or_default(),
+            loads,
+        });
         let motors = self.motors(joined, &new_node);
         let study = self.draft.study.clone();
         let Branches { branches, constructions, .. } = parts;
@@ -219,6 +229,7 @@ impl Builder<'_> {
             loads,
             capacitors: CapacitorBank::in_service(&capacitor_banks),
             capacitor_banks,
+            meters,
             motors,
             feeds,
             order,

@@ -10,6 +10,7 @@ use std::sync::Arc;
 
 use super::conductor::{Conductors, Connection};
 use super::load::LoadModel;
+use super::meter::{MeterRecord, ShareRecord};
 use super::motor::MotorState;
 use super::study::Study;
 use super::transformer::VectorGroup;
@@ -45,6 +46,13 @@ pub struct Draft {
     pub loads: Vec<LoadRecord>,
     /// Capacitors.
     pub capacitors: Vec<CapacitorRecord>,
+    /// Meters: readings that loads with a share are allocated to meet.
+    pub meters: Vec<MeterRecord>,
+    /// Shares of loads, by their names.
+    pub shares: Vec<ShareRecord>,
+    /// True where rows of meters or loads had faults that were reported: what lacks because of
+    /// them is then not reported as well.
+    pub metering_faulty: bool,
     /// Motors.
     pub motors: Vec<MotorRecord>,
     /// What was given and could not be read.

@@ -10,10 +10,13 @@ mod draft;
 mod earth;
 mod graph;
 mod load;
+mod meter;
+mod metering;
 mod model;
 mod motor;
 mod plausible;
 mod regulator;
+mod remainder;
 mod ring;
 mod shunts;
 mod star_point;
@@ -21,6 +24,7 @@ mod study;
 mod supply;
 mod transformer;
 mod validate;
+mod zone;
 
 pub use build::{Built, build};
 pub use conductor::{Conductor, Conductors, Connection};
@@ -30,6 +34,10 @@ pub use draft::{
     Sense, SupplyRecord, SwitchRecord, SwitchState, TransformerRecord, Unread,
 };
 pub use load::{Capacitor, CapacitorBank, CapacitorSwitch, Load, LoadModel, LoadPlace};
+pub use meter::{
+    Channel, Meter, MeterPlace, MeterRecord, MeterSite, ReactiveReading, Reading, Share, ShareBasis,
+    ShareRecord,
+};
 pub use model::{
     Branch, BranchId, BranchKind, ConstructionId, End, Feed, Line, Network, Node, NodeId, SOLID_EARTH_OHM,
     Stay, StayPlace, Tie,

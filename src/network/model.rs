@@ -8,6 +8,7 @@
 use super::conductor::{Conductor, Conductors, Connection};
 use super::draft::{Construction, Name, SwitchState};
 use super::load::{Capacitor, CapacitorBank, Load, LoadPlace};
+use super::meter::Meter;
 use super::motor::Motor;
 use super::regulator::Regulator;
 use super::study::Study;
@@ -228,6 +229,9 @@ pub struct Network {
     pub capacitors: Vec<Capacitor>,
     /// Every capacitor with what switches it.
     pub capacitor_banks: Vec<CapacitorBank>,
+    /// Meters whose readings loads share; those loads draw nothing until they are allocated
+    /// (see `study::allocation`), so a network with meters is not solved as it stands.
+    pub meters: Vec<Meter>,
     /// Motors.
     pub motors: Vec<Motor>,
     /// How each node is fed; `None` only for the supply node.

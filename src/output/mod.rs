@@ -1,5 +1,6 @@
 //! From a result to text, JSON or CSV: one result, one table, many writers.
 
+mod allocation;
 mod check;
 mod csv;
 mod diagnostics;
@@ -8,6 +9,7 @@ mod flow;
 mod line;
 mod table;
 
+pub use allocation::{allocation_json, allocation_text, loads_csv, meters_csv, meters_text, unmet_text};
 pub use check::summary_text;
 pub use csv::guarded;
 pub use diagnostics::{diagnostics_json, diagnostics_lines, diagnostics_text};

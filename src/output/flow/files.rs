@@ -2,6 +2,7 @@
 
 use std::io::{self, Write};
 
+use crate::output::allocation::meters_csv;
 use crate::output::csv::{Field, write_row};
 use crate::output::files::Folder;
 use crate::study::flow::FlowReport;
@@ -74,6 +75,9 @@ pub fn flow_csv(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
         },
     )?;
     motors(report, folder)?;
+    if !report.meters.is_empty() {
+        folder.write("meters.csv", |out| meters_csv(&report.meters, out))?;
+    }
     electrodes(report, folder)?;
     findings(report, folder)?;
     totals(report, folder)

@@ -5,6 +5,7 @@ use std::fmt::Write as _;
 use super::findings::findings;
 use crate::math::{SLOTS, degrees};
 use crate::network::{BranchKind, Conductor, Network, NodeId};
+use crate::output::allocation::meters_text;
 use crate::output::table::{Cell, Colour, Column, Table, folded, number, printable};
 use crate::solver::Solution;
 use crate::study::flow::{Electrode, Extreme, FlowReport, RegulatorTap, lowest_judged};
@@ -38,6 +39,7 @@ pub fn flow_text(
 ) -> String {
     let mut text = String::new();
     head(&mut text, report);
+    text.push_str(&meters_text(&report.meters));
     totals(&mut text, report);
     glance(&mut text, network, report);
     findings(&mut text, &report.findings, length, colour);

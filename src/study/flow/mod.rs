@@ -15,6 +15,7 @@ use serde::Serialize;
 use crate::math::{Complex64, PhaseVector, degrees, unbalance_factor};
 use crate::network::{Conductor, Conductors, LoadPlace, Name, Network, Node, NodeId};
 use crate::solver::{Controls, RegulatedUnit, Solution, Status, load_current};
+use crate::study::allocation::MeterRead;
 
 pub use controls::{CapacitorStatus, RegulatorTap};
 pub use electrodes::Electrode;
@@ -152,6 +153,9 @@ pub struct FlowReport {
     pub loads: Vec<LoadDraw>,
     /// Running motors.
     pub motors: Vec<MotorRun>,
+    /// Meters that loads were shared to meet; empty where there are none.
+    #[serde(skip_serializing_if = "Vec::is_empty")]
+    pub meters: Vec<MeterRead>,
     /// Earth electrodes, of neutrals and of star points.
     pub electrodes: Vec<Electrode>,
     /// Limits exceeded and other remarks, worst first within a rule.
@@ -223,10 +227,17 @@ impl FlowReport {
             capacitors: controls::capacitors(network, &controls.capacitors),
             loads,
             motors,
+            meters: Vec::new(),
             electrodes,
             findings,
             glance,
         })
+    }
+
+    /// The report with the meters that the loads were shared to meet.
+    #[must_use]
+    pub fn with_meters(self, meters: Vec<MeterRead>) -> FlowReport {
+        FlowReport { meters, ..self }
     }
 
     /// True where a limit of the study is exceeded.
