@@ -208,6 +208,10 @@ codes! {
     OutOfRange => "out-of-range",
     /// A word that is not one of those allowed.
     UnknownWord => "unknown-word",
+    /// A curve whose points do not make one.
+    BadCurve => "bad-curve",
+    /// A curve that is not defined.
+    UnknownCurve => "unknown-curve",
     /// Conductor letters that cannot be read.
     BadPhases => "bad-phases",
     /// A quantity given in two units, or two quantities that exclude each other.

@@ -258,6 +258,7 @@ fn results_can_be_written_again_and_leave_nothing_else() {
         "electrodes.csv",
         "elements.csv",
         "findings.csv",
+        "generators_delivering.csv",
         "loads.csv",
         "motors_running.csv",
         "nodes.csv",

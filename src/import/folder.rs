@@ -8,15 +8,15 @@ use sha2::{Digest, Sha256};
 use super::constructions::DescribedConstruction;
 use super::text::decode;
 use super::{
-    Intake, Reading, capacitors, constructions, lines, loads, matrices, meters, motors, nodes, place_of_file,
-    regulators, source, study, switches, transformers, unsupported,
+    Intake, Reading, capacitors, constructions, curves, generators, lines, loads, matrices, meters, motors,
+    nodes, place_of_file, regulators, source, study, switches, transformers, unsupported,
 };
 use crate::catalog::Catalog;
 use crate::diagnostic::{Code, Diagnostics, FileId, SourceFile, nearest};
 use crate::network::Draft;
 
 /// Files of the format, in the order they are read and reported.
-const KNOWN: [&str; 16] = [
+const KNOWN: [&str; 18] = [
     "study.csv",
     "source.csv",
     "nodes.csv",
@@ -33,6 +33,8 @@ const KNOWN: [&str; 16] = [
     "motors.csv",
     "profiles.csv",
     "meters.csv",
+    "generators.csv",
+    "curves.csv",
 ];
 
 /// Endings of files people save instead of CSV.
@@ -262,7 +264,19 @@ fn fill(
         }
     }
     let [study, source, nodes, conductors, spacings, constructions, matrices, rest @ ..] = ids;
-    let [lines, switches, transformers, regulators, loads, capacitors, motor_file, profiles, meters] = rest;
+    let [
+        lines,
+        switches,
+        transformers,
+        regulators,
+        loads,
+        capacitors,
+        motor_file,
+        profiles,
+        meters,
+        others @ ..,
+    ] = rest;
+    let [generators, curves] = others;
     let mut draft = Draft {
         study: with(intake, study, study::read),
         supplies: with(intake, source, source::read),
@@ -282,6 +296,8 @@ fn fill(
     draft.meters = with(intake, meters, meters::read);
     draft.metering_faulty = intake.diagnostics.counts().0 > before;
     draft.capacitors = with(intake, capacitors, capacitors::read);
+    draft.generators = with(intake, generators, generators::read);
+    draft.curves = with(intake, curves, curves::read);
     let frequency_hz = draft.study.frequency_hz;
     draft.motors = motor_file.map(|id| motors::read(intake, id, frequency_hz)).unwrap_or_default();
     with(intake, profiles, unsupported::profiles);

@@ -66,6 +66,7 @@ pub(super) fn normal_names<'a>(cells: impl Iterator<Item = &'a str>) -> Vec<Stri
 }
 
 /// Finds every column; `None` where the row is no header at all.
+#[allow(clippy::too_many_arguments)] // one call, where all of them are at hand
 pub(super) fn lay_out(
     schema: &'static Schema,
     names: &[String],

@@ -7,7 +7,9 @@
 
 mod capacitors;
 mod constructions;
+mod curves;
 mod folder;
+mod generators;
 mod header;
 mod lines;
 mod loads;

@@ -217,6 +217,7 @@ impl Builder<'_> {
             ties: ties.as_deref().unwrap_or_default(),
             loads,
         });
+        let generators = self.generators(joined, &new_node);
         let motors = self.motors(joined, &new_node);
         let study = self.draft.study.clone();
         let Branches { branches, constructions, .. } = parts;
@@ -230,6 +231,7 @@ impl Builder<'_> {
             capacitors: CapacitorBank::in_service(&capacitor_banks),
             capacitor_banks,
             meters,
+            generators,
             motors,
             feeds,
             order,

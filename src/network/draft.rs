@@ -9,6 +9,7 @@ use std::collections::HashSet;
 use std::sync::Arc;
 
 use super::conductor::{Conductors, Connection};
+use super::generator::{CurvePoint, Priority};
 use super::load::LoadModel;
 use super::meter::{MeterRecord, ShareRecord};
 use super::motor::MotorState;
@@ -53,6 +54,10 @@ pub struct Draft {
     /// True where rows of meters or loads had faults that were reported: what lacks because of
     /// them is then not reported as well.
     pub metering_faulty: bool,
+    /// Generators.
+    pub generators: Vec<GeneratorRecord>,
+    /// Curves of generators.
+    pub curves: Vec<CurveRecord>,
     /// Motors.
     pub motors: Vec<MotorRecord>,
     /// What was given and could not be read.
@@ -398,6 +403,53 @@ pub struct Sense {
     pub line: Name,
     /// Phases: their reactive powers are added up, of their currents the greatest counts.
     pub phases: Conductors,
+}
+
+/// What sets the reactive power of a generator, as written.
+#[derive(Debug, Clone, PartialEq)]
+pub enum ReactiveRecord {
+    /// Constant, vars, positive where delivered.
+    Held(f64),
+    /// In proportion to the active power.
+    PerWatt(f64),
+    /// By a curve of that name.
+    VoltVar(Name),
+}
+
+/// One row of `generators.csv`.
+#[derive(Debug, Clone)]
+pub struct GeneratorRecord {
+    /// Name of the generator.
+    pub generator: Name,
+    /// Node.
+    pub node: Name,
+    /// Between which conductors.
+    pub connection: Connection,
+    /// Active power it could deliver, watts.
+    pub watts: f64,
+    /// What sets the reactive power.
+    pub reactive: ReactiveRecord,
+    /// Volt-watt curve by name.
+    pub volt_watt: Option<Name>,
+    /// Rating, volt-amperes.
+    pub rated_va: Option<f64>,
+    /// What gives way at the rating.
+    pub priority: Priority,
+    /// Closed or open.
+    pub state: SwitchState,
+    /// Where it was written.
+    pub origin: Option<Origin>,
+}
+
+/// A curve of `curves.csv`.
+#[derive(Debug, Clone)]
+pub struct CurveRecord {
+    /// Name of the curve.
+    pub curve: Name,
+    /// Its points, rising in voltage and not in output.
+    pub points: Vec<CurvePoint>,
+    /// Where its first point was written.
+    pub origin: Option<Origin>,
 }
 
 /// One row of `motors.csv`, its circuit found.

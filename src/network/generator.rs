@@ -126,6 +126,8 @@ pub struct Generator {
     pub rated_va: f64,
     /// What gives way at the rating.
     pub priority: Priority,
+    /// Power it delivers in the state that is solved, volt-amperes.
+    pub delivering: Complex64,
 }
 
 impl Generator {
@@ -200,6 +202,7 @@ mod tests {
             volt_watt: None,
             rated_va: 10e3,
             priority: Priority::Watts,
+            delivering: Complex64::new(0.0, 0.0),
         }
     }
 

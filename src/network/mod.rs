@@ -8,6 +8,7 @@ mod carry;
 mod conductor;
 mod draft;
 mod earth;
+mod generator;
 mod graph;
 mod load;
 mod meter;
@@ -29,10 +30,12 @@ mod zone;
 pub use build::{Built, build};
 pub use conductor::{Conductor, Conductors, Connection};
 pub use draft::{
-    Across, BankMode, CapacitorControl, CapacitorRecord, Construction, Draft, FaultLevel, LineRecord,
-    LoadRecord, LoadSite, MotorRecord, Name, NodeRecord, RegulatorControl, RegulatorRecord, ReverseFlow,
-    Sense, SupplyRecord, SwitchRecord, SwitchState, TransformerRecord, Unread,
+    Across, BankMode, CapacitorControl, CapacitorRecord, Construction, CurveRecord, Draft, FaultLevel,
+    GeneratorRecord, LineRecord, LoadRecord, LoadSite, MotorRecord, Name, NodeRecord, ReactiveRecord,
+    RegulatorControl, RegulatorRecord, ReverseFlow, Sense, SupplyRecord, SwitchRecord, SwitchState,
+    TransformerRecord, Unread,
 };
+pub use generator::{Curve, CurvePoint, Generator, Limited, Output, Priority, Reactive};
 pub use load::{Capacitor, CapacitorBank, CapacitorSwitch, Load, LoadModel, LoadPlace};
 pub use meter::{
     Channel, Meter, MeterPlace, MeterRecord, MeterSite, ReactiveReading, Reading, Share, ShareBasis,

@@ -7,6 +7,7 @@
 
 use super::conductor::{Conductor, Conductors, Connection};
 use super::draft::{Construction, Name, SwitchState};
+use super::generator::Generator;
 use super::load::{Capacitor, CapacitorBank, Load, LoadPlace};
 use super::meter::Meter;
 use super::motor::Motor;
@@ -232,6 +233,8 @@ pub struct Network {
     /// Meters whose readings loads share; those loads draw nothing until they are allocated
     /// (see `study::allocation`), so a network with meters is not solved as it stands.
     pub meters: Vec<Meter>,
+    /// Generators in service.
+    pub generators: Vec<Generator>,
     /// Motors.
     pub motors: Vec<Motor>,
     /// How each node is fed; `None` only for the supply node.

@@ -3,12 +3,14 @@
 use super::branches::Branches;
 use super::build::{Builder, Joined};
 use super::conductor::{Conductors, Connection};
-use super::draft::LoadSite;
+use super::draft::{GeneratorRecord, LoadSite, ReactiveRecord, SwitchState};
+use super::generator::{Curve, Generator, Reactive};
 use super::graph::place;
 use super::load::{CapacitorBank, Load, LoadPlace};
 use super::model::NodeId;
 use super::motor::Motor;
 use crate::diagnostic::{Code, Origin, nearest};
+use crate::math::Complex64;
 
 impl Builder<'_> {
     pub(super) fn shunts(
@@ -56,6 +58,59 @@ impl Builder<'_> {
             );
         }
         (loads, capacitors)
+    }
+
+    /// Generators in service, each with its curves.
+    pub(super) fn generators(&mut self, joined: &Joined, new_node: &[Option<NodeId>]) -> Vec<Generator> {
+        let mut generators = Vec::with_capacity(self.draft.generators.len());
+        for record in &self.draft.generators {
+            let who = format!("generator {} is at", record.generator);
+            let node = self.shunt_node(joined, &record.node, &who, record.connection, record.origin);
+            let volt_watt = record.volt_watt.as_ref().map(|name| self.curve(record, "volt_watt", name));
+            let reactive = match &record.reactive {
+                ReactiveRecord::Held(vars) => Some(Reactive::Held(*vars)),
+                ReactiveRecord::PerWatt(ratio) => Some(Reactive::PerWatt(*ratio)),
+                ReactiveRecord::VoltVar(name) => self.curve(record, "volt_var", name).map(Reactive::VoltVar),
+            };
+            let (Some(node), Some(reactive)) = (node, reactive) else { continue };
+            let (Some(id), SwitchState::Closed) = (new_node[node], record.state) else { continue };
+            if volt_watt == Some(None) {
+                continue;
+            }
+            let mut generator = Generator {
+                name: record.generator.clone(),
+                node: id,
+                connection: record.connection,
+                watts: record.watts,
+                reactive,
+                volt_watt: volt_watt.flatten(),
+                rated_va: record.rated_va.unwrap_or(f64::INFINITY),
+                priority: record.priority,
+                delivering: Complex64::default(),
+            };
+            generator.delivering = generator.output(1.0).power;
+            generators.push(generator);
+        }
+        generators
+    }
+
+    /// A curve by name; one that is not defined is an error.
+    fn curve(&mut self, record: &GeneratorRecord, column: &str, name: &str) -> Option<Curve> {
+        let found = self.draft.curves.iter().find(|c| *c.curve == *name);
+        if let Some(found) = found {
+            return Curve::new(found.curve.clone(), found.points.clone());
+        }
+        let cure = match nearest(name, self.draft.curves.iter().map(|c| &*c.curve)) {
+            Some(near) => format!("did you mean {near:?}?"),
+            None => "give its points in curves.csv".to_string(),
+        };
+        self.diagnostics.error(
+            Code::UnknownCurve,
+            place(self.draft, record.origin, column, name),
+            format!("generator {} follows curve {name:?}, which is not defined", record.generator),
+            cure,
+        );
+        None
     }
 
     /// Motors, each at a node with all three phases and near its rated voltage.

@@ -8,7 +8,7 @@
 //! regulators at rest, one capacitor switches (shortest delay first); then the regulators settle
 //! anew. What goes to and fro without end is stopped and told as hunting.
 
-use super::motors::solve_running;
+use super::generators::solve_operating;
 use super::relay::{PowerFlow, Seen, look, unit_of};
 use super::settings::Settings;
 use super::solution::{Solution, Status};
@@ -78,7 +78,7 @@ pub fn solve_regulated(network: &mut Network, settings: &Settings) -> (Solution,
 pub fn solve_controlled(network: &mut Network, settings: &Settings) -> (Solution, Controls) {
     let mut units = automatic_units(network);
     let mut capacitors = switched(network);
-    let mut solution = solve_running(network, settings);
+    let mut solution = solve_operating(network, settings);
     let mut spent = Spent::No;
     for round in 0.. {
         if solution.status != Status::Converged {
@@ -91,7 +91,7 @@ pub fn solve_controlled(network: &mut Network, settings: &Settings) -> (Solution
         if !advance(network, &solution, &mut units, &mut capacitors) {
             break;
         }
-        solution = solve_running(network, settings);
+        solution = solve_operating(network, settings);
     }
     let ended = Controls {
         units: units.iter().filter_map(|u| ended(network, &solution, u, spent)).collect(),

@@ -167,6 +167,11 @@ pub(super) fn gather(network: &Network) -> Vec<Gathered> {
             gathered[id.index()].add(network.node(id), floor_pu, load.connection, load.model, power * share);
         }
     }
+    for generator in &network.generators {
+        let node = network.node(generator.node);
+        let drawn = -generator.delivering;
+        gathered[generator.node.index()].add(node, floor_pu, generator.connection, LoadModel::Power, drawn);
+    }
     gathered
 }
 

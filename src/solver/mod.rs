@@ -9,6 +9,7 @@ mod branch;
 mod coils;
 mod control;
 mod follow;
+mod generators;
 mod injection;
 mod lanes;
 mod motors;
@@ -25,6 +26,7 @@ mod windings;
 mod workspace;
 
 pub use control::{Controls, RegulatedUnit, TapState, solve_controlled, solve_regulated};
+pub use generators::{generator_pu, solve_operating};
 pub use motors::solve_running;
 pub use relay::PowerFlow;
 pub use residual::{Residual, load_current, residual};

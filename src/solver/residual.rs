@@ -162,6 +162,12 @@ fn subtract_shunts(network: &Network, solution: &Solution, balance: &mut [PhaseV
             });
         }
     }
+    for generator in &network.generators {
+        let each = -generator.delivering / generator.connection.elements() as f64;
+        take(generator.node, generator.connection, &|node, u| {
+            load_current(LoadModel::Power, each, node.nominal_across(generator.connection), floor, u)
+        });
+    }
     for capacitor in &network.capacitors {
         let each = capacitor.vars / capacitor.connection.elements() as f64;
         let y = Complex64::new(0.0, each / capacitor.rated_volts.powi(2));

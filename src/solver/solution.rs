@@ -14,6 +14,8 @@ pub enum Status {
     Diverged,
     /// Loads raised from nothing have no solution beyond the share told by [`Path::Folds`].
     BeyondLoadability,
+    /// Generators that follow the voltage do not come to rest.
+    CurvesMove,
     /// The motor of this index cannot carry its load at the voltage it gets.
     Stalls(usize),
     /// The linear part has no solution at this node: a side without reference, or opposite impedances.

@@ -22,7 +22,7 @@ pub use measure::{Measured, measure};
 use crate::network::{
     BranchKind, Channel, Meter, Name, Network, ReactiveReading, Reading, Regulator, TapMode,
 };
-use crate::solver::{Controls, Path, Settings, Solution, Status, solve_controlled, solve_running};
+use crate::solver::{Controls, Path, Settings, Solution, Status, solve_controlled, solve_operating};
 
 /// Largest difference from a reading that counts as met, watts and vars.
 pub const MET_WATTS: f64 = 100.0;
@@ -222,7 +222,7 @@ impl Search {
     /// Solves with the unknowns as they are; the corrections, where the flow has a solution.
     fn attempt(&mut self, network: &mut Network, settings: &Settings) -> (Solution, Option<DVector<f64>>) {
         self.apply(network);
-        let solution = solve_running(network, settings);
+        let solution = solve_operating(network, settings);
         self.solves += 1;
         let good = solution.status == Status::Converged && self.shared.iter().all(|x| x.is_finite());
         let residual = good.then(|| self.residual(network, &measure(network, &solution)));

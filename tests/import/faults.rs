@@ -175,6 +175,30 @@ const CELLS: &[(&str, Files)] = &[
     ("same file twice", &[("LINES.csv", LINES)]),
     ("not text", &[("loads.csv", "load\0,node\n")]),
     ("workbook", &[("loads.csv", "PK\u{3}\u{4}abc")]),
+    (
+        "generators",
+        &[
+            (
+                "generators.csv",
+                "generator,node,phases,kw,kvar,pf,kva,volt_var,volt_watt,priority,state\n\
+                 G1,A,an,-5,,1,,,,,\nG2,A,an,5,,,,,,,\nG3,A,an,5,1,0.9,,,,,\nG4,A,an,5,,,,v,,,\nG5,A,an,5,,0.9,6,,,vars,\n\
+                 G6,A,an,5,,0,,,,,\nG1,A,an,5,0,,,,,,shut\nG8,A,an,5,0,,0,,,watt,\n",
+            ),
+            (
+                "curves.csv",
+                "curve,pu,percent\nv,0.95,40\nv,0.95,20\nv,1.05,60\nv,105,-20\nv,1.1,-120\n,1,0\n",
+            ),
+        ],
+    ),
+    (
+        "motors",
+        &[(
+            "motors.csv",
+            "motor,node,hp,kw,volts,rpm,amps,pf,efficiency_percent,code,design,load_torque,starter,starter_tap_percent,starter_ramp_s,state\n\
+             M1,A,20,15,400,,,,,,,,,,,\nM2,A,20,,400,1500,,,,,,,,,,\nM3,A,20,,400,1460,5,0.85,90,,,,,,,\nM4,A,20,,400,,,,,GG,X,,,,,\n\
+             M5,A,20,,400,,,,,,,cubic,soft,65,,\nM6,A,20,,400,,,,,,,,star delta,,,\nM7,A,,,400,,,,,,,,,,,\nM8,A,20,,0.4,,,,,,,,,,,on\n",
+        )],
+    ),
     ("motors and profiles", &[("motors.csv", "motor,node\nM1,A\n"), ("profiles.csv", "time,house\n0,1\n")]),
     ("motors without rows", &[("motors.csv", "motor,node\n"), ("profiles.csv", "time,house\n")]),
     // Settings.

@@ -113,6 +113,20 @@ const CASES: &[(&str, Files)] = &[
     ("line from a node to itself", &[lines!("L1,S,A,abcn,100,cable,", "L2,A,A,abcn,100,cable,")]),
     ("isolated switch", &[("switches.csv", "switch,from,to,phases,state\nQ1,A,Z,abcn,closed\n")]),
     ("isolated open switch", &[("switches.csv", "switch,from,to,phases,state\nQ1,Y,Z,abcn,open\n")]),
+    (
+        "generators at the wrong place and of unknown curves",
+        &[
+            (
+                "generators.csv",
+                "generator,node,phases,kw,kvar,kva,volt_var,volt_watt\nG1,AA,an,5,0,,,\nG2,A,an,5,,6,vv,\nG3,A,an,5,0,6,,w\n",
+            ),
+            ("curves.csv", "curve,pu,percent\nv,0.95,40\nv,1.05,-40\n"),
+        ],
+    ),
+    (
+        "motors at the wrong place and voltage",
+        &[("motors.csv", "motor,node,kw,volts\nM1,AA,15,400\nM2,A,15,690\n")],
+    ),
     // Names.
     ("load at a missing node", &[loads!("house,AA,,an,5,1", "shop,nowhere,,an,5,1")]),
     ("load along a missing line", &[loads!("house,,L2,an,5,1")]),

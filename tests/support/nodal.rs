@@ -222,6 +222,24 @@ fn add_shunts(network: &Network, numbering: &Numbering, system: &mut System) {
             system.admittance(numbering.at(id, p), numbering.at(id, q), y);
         }
     }
+    for generator in &network.generators {
+        let nominal = match generator.connection {
+            Connection::Star(phases) if phases.is_split() => network.node(generator.node).nominal_volts / 2.0,
+            Connection::Star(_) => network.node(generator.node).nominal_volts / 3f64.sqrt(),
+            Connection::Delta(_) => network.node(generator.node).nominal_volts,
+        };
+        let pairs = terminals(generator.node, generator.connection);
+        for &(id, p, q) in &pairs {
+            system.elements.push(Element {
+                from: numbering.at(id, p),
+                to: numbering.at(id, q),
+                power: -generator.delivering / pairs.len() as f64,
+                model: LoadModel::Power,
+                nominal,
+                floor: network.study.constant_power_floor_percent / 100.0,
+            });
+        }
+    }
     for load in &network.loads {
         for (node, share) in network.load_sites(load) {
             let nominal = match load.connection {

@@ -74,6 +74,7 @@ pub fn flow_csv(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
             ]
         },
     )?;
+    generators(report, folder)?;
     motors(report, folder)?;
     if !report.meters.is_empty() {
         folder.write("meters.csv", |out| meters_csv(&report.meters, out))?;
@@ -136,6 +137,24 @@ fn elements(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
             Field::Number(r.loss_kw),
             Field::Number(r.loss_kvar),
             r.rating_percent.into(),
+        ]
+    })
+}
+
+fn generators(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
+    let columns =
+        ["generator", "node", "kw", "kvar", "available_kw", "kva", "pu", "by_volt_watt", "by_rating"];
+    list(folder, "generators_delivering.csv", &columns, &report.generators, |r| {
+        vec![
+            Field::Text(&r.generator),
+            Field::Text(&r.node),
+            Field::Number(r.kw),
+            Field::Number(r.kvar),
+            Field::Number(r.available_kw),
+            r.kva.into(),
+            Field::Number(r.pu),
+            Field::Flag(r.by_volt_watt),
+            Field::Flag(r.by_rating),
         ]
     })
 }
@@ -249,6 +268,8 @@ fn totals(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
         ("neutral_loss_kw", Field::Number(t.neutral_loss_kw)),
         ("transformer_loss_kw", Field::Number(t.transformer_loss_kw)),
         ("earth_loss_kw", Field::Number(t.earth_loss_kw)),
+        ("generation_kw", Field::Number(t.generation_kw)),
+        ("generation_kvar", Field::Number(t.generation_kvar)),
         ("motor_kw", Field::Number(t.motor_kw)),
         ("motor_kvar", Field::Number(t.motor_kvar)),
         ("motor_loss_kw", Field::Number(t.motor_loss_kw)),

@@ -46,10 +46,45 @@ pub fn flow_text(
     nodes(&mut text, network, solution, report, length);
     branches(&mut text, network, solution, report, length);
     regulators(&mut text, report);
+    generators(&mut text, report);
     motors(&mut text, report);
     capacitors(&mut text, report);
     electrodes(&mut text, report, length);
     text
+}
+
+/// Generators in service.
+fn generators(text: &mut String, report: &FlowReport) {
+    if report.generators.is_empty() {
+        return;
+    }
+    let mut table = Table::new(&[
+        Column::text("generator"),
+        Column::text("node"),
+        Column::number("delivers", "kW", 2),
+        Column::number("of", "kW", 2),
+        Column::number("delivers", "kvar", 2),
+        Column::number("voltage", "pu", 4),
+        Column::text("held back by"),
+    ]);
+    for g in &report.generators {
+        let by = match (g.by_volt_watt, g.by_rating) {
+            (true, true) => "volt-watt, rating",
+            (true, false) => "volt-watt",
+            (false, true) => "rating",
+            (false, false) => "",
+        };
+        table.rows.push(vec![
+            Cell::Text(g.generator.to_string()),
+            Cell::Text(g.node.to_string()),
+            Cell::Number(g.kw),
+            Cell::Number(g.available_kw),
+            Cell::Number(g.kvar),
+            Cell::Number(g.pu),
+            Cell::Text(by.to_string()),
+        ]);
+    }
+    let _ = writeln!(text, "Generators\n{}", table.text());
 }
 
 /// Running motors.
@@ -172,6 +207,9 @@ fn totals(text: &mut String, report: &FlowReport) {
     if !report.motors.is_empty() {
         row("  of them motors", t.motor_kw, Some(t.motor_kvar));
         row("    lost in the motors", t.motor_loss_kw, None);
+    }
+    if !report.generators.is_empty() {
+        row("generators", t.generation_kw, Some(t.generation_kvar));
     }
     row("losses", t.loss_kw, Some(t.loss_kvar));
     row("  phase conductors", t.line_loss_kw, None);

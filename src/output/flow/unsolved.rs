@@ -13,6 +13,10 @@ pub fn no_solution_text(network: &Network, solution: &Solution) -> String {
     let (why, look) = match solution.status {
         Status::BeyondLoadability => (beyond(solution), limit),
         Status::Converged => return String::new(),
+        Status::CurvesMove => (
+            "generators that follow the voltage do not come to rest".to_string(),
+            "the steepest of the curves in curves.csv, and several generators near each other on steep ones",
+        ),
         Status::Stalls(motor) => (
             network.motors.get(motor).map_or(String::new(), |m| {
                 let v = &solution.volts[m.node.index()];

@@ -5,7 +5,7 @@ use serde::Serialize;
 use super::controls::{why, why_switched};
 use super::losses::Totals;
 use super::places::{drop_percent, floating_nodes, judged, set_points};
-use super::{Electrode, ElementLoss, LoadDraw, MotorRun, NodeSummary};
+use super::{Electrode, ElementLoss, GeneratorRun, LoadDraw, MotorRun, NodeSummary};
 use crate::network::{BranchKind, Network, weak_star_points};
 use crate::solver::{CapacitorState, Controls, Path, Solution, TapState};
 
@@ -73,6 +73,9 @@ pub enum Rule {
     /// Regulator outside its band: at a limit, hunting, or fed backwards.
     #[serde(rename = "regulator")]
     Regulator,
+    /// Generator held back, or power that flows out at the source.
+    #[serde(rename = "generation")]
+    Generation,
     /// Motor beyond what unbalance leaves of its rating, or beyond its full-load current.
     #[serde(rename = "motor")]
     Motor,
@@ -106,6 +109,7 @@ impl Rule {
             Rule::Overload => "overload",
             Rule::BelowFloor => "load below floor",
             Rule::Regulator => "regulator",
+            Rule::Generation => "generation",
             Rule::Motor => "motor",
             Rule::Capacitor => "capacitor",
             Rule::Collapse => "voltage collapse",
@@ -138,6 +142,7 @@ pub struct Finding {
 pub(super) struct Seen<'a> {
     pub electrodes: &'a [Electrode],
     pub motors: &'a [MotorRun],
+    pub generators: &'a [GeneratorRun],
     pub network: &'a Network,
     pub solution: &'a Solution,
     pub elements: &'a [ElementLoss],
@@ -158,6 +163,7 @@ pub(super) fn all(seen: &Seen) -> Vec<Finding> {
     capacitors(seen, &mut found);
     unearthed(seen, &mut found);
     star_points(seen, &mut found);
+    generation(seen, &mut found);
     motors(seen, &mut found);
     collapse(seen, &mut found);
     balance(seen, &mut found);
@@ -241,6 +247,40 @@ fn to_earth(what: &str, place: impl Fn() -> String, volts: f64, limit: Option<f6
             Some(warning(Rule::NeutralVoltage, place(), volts, None, text))
         }
         _ => None,
+    }
+}
+
+/// Generators that curves or ratings hold back, and a feeder that delivers at its source.
+fn generation(seen: &Seen, found: &mut Vec<Finding>) {
+    let mut note = |place: String, value: f64, text: String| {
+        found.push(Finding {
+            severity: FindingSeverity::Note,
+            rule: Rule::Generation,
+            place,
+            value,
+            limit: None,
+            text,
+        });
+    };
+    for g in seen.generators {
+        let place = || format!("generator {}", g.generator);
+        let why = match (g.by_volt_watt, g.by_rating) {
+            (true, _) => "its volt-watt curve holds it back",
+            (false, true) => "its rating is reached",
+            (false, false) => continue,
+        };
+        let text = format!(
+            "{:.2} kW of {:.2} kW and {:.2} kvar at {:.2} % of nominal voltage: {why}",
+            g.kw,
+            g.available_kw,
+            g.kvar,
+            100.0 * g.pu
+        );
+        note(place(), g.kw, text);
+    }
+    if seen.totals.source_kw < 0.0 && !seen.generators.is_empty() {
+        let kw = -seen.totals.source_kw;
+        note("source".to_string(), kw, format!("the feeder delivers {kw:.2} kW at its source"));
     }
 }
 
@@ -380,7 +420,8 @@ fn star_points(seen: &Seen, found: &mut Vec<Finding>) {
 /// Source power against loads and losses; what is not a number counts as a difference.
 fn balance(seen: &Seen, found: &mut Vec<Finding>) {
     let t = seen.totals;
-    let off = (t.source_kw - t.load_kw - t.loss_kw).hypot(t.source_kvar - t.load_kvar - t.loss_kvar);
+    let off = (t.source_kw + t.generation_kw - t.load_kw - t.loss_kw)
+        .hypot(t.source_kvar + t.generation_kvar - t.load_kvar - t.loss_kvar);
     let size = t.source_kw.hypot(t.source_kvar).max(t.load_kw.hypot(t.load_kvar));
     let limit = (BALANCE_SHARE * size).max(BALANCE_FLOOR_KVA);
     if off.is_finite() && off <= limit {

@@ -8,7 +8,7 @@ use crate::network::{Branch, BranchKind, Conductor, End, Network, Transformer};
 use crate::solver::Solution;
 use crate::units::SQRT_3;
 
-/// Sums over the network, kilowatts and kilovars. `source` equals `load` plus `loss` to rounding.
+/// Sums over the network, kilowatts and kilovars. `source` and `generation` equal `load` plus `loss` to rounding.
 #[derive(Debug, Clone, Copy, PartialEq, Default, Serialize)]
 pub struct Totals {
     /// Active power at the supply node.
@@ -31,6 +31,10 @@ pub struct Totals {
     pub transformer_loss_kw: f64,
     /// Losses in earth electrodes.
     pub earth_loss_kw: f64,
+    /// Active power of generators: source and generation together are loads and losses.
+    pub generation_kw: f64,
+    /// Their reactive power.
+    pub generation_kvar: f64,
     /// Active power of running motors, which `load_kw` includes.
     pub motor_kw: f64,
     /// Their reactive power, which `load_kvar` includes.

@@ -6,6 +6,7 @@
 mod controls;
 mod electrodes;
 mod findings;
+mod generation;
 mod losses;
 mod motors;
 mod places;
@@ -20,6 +21,7 @@ use crate::study::allocation::MeterRead;
 pub use controls::{CapacitorStatus, RegulatorTap};
 pub use electrodes::Electrode;
 pub use findings::{Finding, FindingSeverity, Rule};
+pub use generation::GeneratorRun;
 pub use losses::Totals;
 pub use motors::MotorRun;
 pub use places::{Extreme, Glance, lowest_judged};
@@ -151,6 +153,8 @@ pub struct FlowReport {
     pub capacitors: Vec<CapacitorStatus>,
     /// Loads as drawn.
     pub loads: Vec<LoadDraw>,
+    /// Generators in service.
+    pub generators: Vec<GeneratorRun>,
     /// Running motors.
     pub motors: Vec<MotorRun>,
     /// Meters that loads were shared to meet; empty where there are none.
@@ -193,13 +197,17 @@ impl FlowReport {
         let electrodes = electrodes::electrodes(network, solution);
         let elements = losses::elements(network, solution, &electrodes);
         let motors = motors::motors(network, solution);
-        let totals = losses::totals(network, solution, &elements, &loads, &motors);
+        let generators = generation::generators(network, solution);
+        let mut totals = losses::totals(network, solution, &elements, &loads, &motors);
+        totals.generation_kw = generators.iter().map(|g| g.kw).sum();
+        totals.generation_kvar = generators.iter().map(|g| g.kvar).sum();
         let nodes_summary = nodes_summary(network, solution);
         let regulators = controls::regulators(network, &controls.units);
         let glance = places::glance(network, solution, &elements, &nodes_summary);
         let seen = findings::Seen {
             electrodes: &electrodes,
             motors: &motors,
+            generators: &generators,
             network,
             solution,
             elements: &elements,
@@ -226,6 +234,7 @@ impl FlowReport {
             regulators,
             capacitors: controls::capacitors(network, &controls.capacitors),
             loads,
+            generators,
             motors,
             meters: Vec::new(),
             electrodes,
