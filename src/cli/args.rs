@@ -32,6 +32,12 @@ pub(super) enum Command {
         Exit status: 0 every meter is met, 2 the input or the command line is wrong,\n\
         3 no solution, or a meter that cannot be met.")]
     Allocate(Allocate),
+    /// Start a motor: the dip at every node, the run-up, what holds and what fails.
+    #[command(after_help = "Examples:\n  fourwire start networks/larkfoot-valley --motor \"Head pump\"\n  \
+        fourwire start networks/larkfoot-valley --motor \"Head pump\" --compare\n\n\
+        Exit status: 0 computed, 1 --strict and the start fails, 2 the input or the command line is\n\
+        wrong, 3 no solution.")]
+    Start(Start),
     /// Impedance from wires and geometry, the table of wires, and drop and loss of one circuit.
     #[command(after_help = "Examples:\n  fourwire line --list \"4/0\"\n  \
         fourwire line --construction trunk336 networks/larkfoot-valley\n  \
@@ -61,6 +67,55 @@ pub(super) enum CheckFormat {
     Lines,
     /// Faults and summary as one JSON object
     Json,
+}
+
+/// Options of `start`.
+#[derive(Debug, Args)]
+pub(super) struct Start {
+    /// Folder of the network's CSV files
+    pub folder: PathBuf,
+    /// Name of the motor in motors.csv
+    #[arg(long, value_name = "NAME")]
+    pub motor: String,
+    /// Another starter than that of motors.csv, with settings of common practice
+    #[arg(long, value_enum)]
+    pub starter: Option<StarterChoice>,
+    /// All starters side by side
+    #[arg(long, conflicts_with_all = ["starter", "format", "out", "strict"])]
+    pub compare: bool,
+    /// Form of the results
+    #[arg(long, value_enum, default_value_t = FlowFormat::Text)]
+    pub format: FlowFormat,
+    /// Folder to write the results to (made where it is not there); needed for csv
+    #[arg(long, value_name = "DIR")]
+    pub out: Option<PathBuf>,
+    /// End with status 1 where the motor does not get up to speed or a limit is exceeded
+    #[arg(long)]
+    pub strict: bool,
+}
+
+/// Starters that can be tried.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
+pub(super) enum StarterChoice {
+    /// Straight on the line
+    Direct,
+    /// Star first, then delta, at 90 % of synchronous speed
+    StarDelta,
+    /// Autotransformer, 50 % tap
+    #[value(name = "auto-50")]
+    Auto50,
+    /// Autotransformer, 65 % tap
+    #[value(name = "auto-65")]
+    Auto65,
+    /// Autotransformer, 80 % tap
+    #[value(name = "auto-80")]
+    Auto80,
+    /// Half of the winding first
+    PartWinding,
+    /// Soft starter, current limit 350 % of full load
+    Soft,
+    /// Variable-frequency drive, current limit 150 % of full load
+    Drive,
 }
 
 /// Options of `flow`.

@@ -7,6 +7,7 @@ mod flow;
 mod lengths;
 mod line;
 mod screen;
+mod start;
 
 use std::process::ExitCode;
 
@@ -55,6 +56,7 @@ pub fn run() -> ExitCode {
         Command::Check(options) => check::check(&options, &mut screen),
         Command::Flow(options) => flow::flow(&options, &mut screen),
         Command::Allocate(options) => allocate::allocate(&options, &mut screen),
+        Command::Start(options) => start::start(&options, &mut screen),
         Command::Line(options) => line::line(&options, &mut screen),
     };
     if let Some(error) = screen.failure() {

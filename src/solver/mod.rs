@@ -12,6 +12,7 @@ mod follow;
 mod generators;
 mod injection;
 mod lanes;
+mod machines;
 mod motors;
 mod ports;
 mod recover;
@@ -27,6 +28,7 @@ mod workspace;
 
 pub use control::{Controls, RegulatedUnit, TapState, solve_controlled, solve_regulated};
 pub use generators::{generator_pu, solve_operating};
+pub use machines::Machines;
 pub use motors::solve_running;
 pub use relay::PowerFlow;
 pub use residual::{Residual, load_current, residual};

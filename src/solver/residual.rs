@@ -21,6 +21,15 @@ pub struct Residual {
 
 /// Checks a solution against all equations of its network.
 pub fn residual(network: &Network, solution: &Solution) -> Residual {
+    residual_with(network, solution, &[])
+}
+
+/// The same where machines that are no part of the network draw these phase currents, amperes.
+pub(super) fn residual_with(
+    network: &Network,
+    solution: &Solution,
+    drawn: &[(NodeId, [Complex64; 3])],
+) -> Residual {
     let mut balance = vec![PhaseVector::zeros(); network.nodes.len()];
     let mut worst =
         Residual { amps: 0.0, node: network.supply.node, volts: supply_mismatch(network, solution) };
@@ -42,6 +51,11 @@ pub fn residual(network: &Network, solution: &Solution) -> Residual {
         }
     }
     subtract_shunts(network, solution, &mut balance);
+    for (node, amps) in drawn {
+        for (k, current) in amps.iter().enumerate() {
+            balance[node.index()][k] -= current;
+        }
+    }
     for (i, mismatch) in balance.iter().enumerate() {
         let largest = network.nodes[i].conductors.iter().map(|c| mismatch[c.slot()].norm()).fold(0.0, larger);
         if larger(worst.amps, largest) != worst.amps {

@@ -5,4 +5,5 @@ pub mod construction;
 pub mod flow;
 pub mod line;
 pub mod loadability;
+pub mod start;
 pub mod summary;

@@ -9,7 +9,9 @@
 use std::collections::HashMap;
 
 use fourwire::math::Complex64;
-use fourwire::network::{Across, Branch, BranchKind, Conductor, Connection, LoadModel, Network, NodeId};
+use fourwire::network::{
+    Across, Branch, BranchKind, Conductor, Connection, LoadModel, MotorState, Network, NodeId,
+};
 use nalgebra::{DMatrix, DVector};
 
 #[path = "coils.rs"]
@@ -220,6 +222,16 @@ fn add_shunts(network: &Network, numbering: &Numbering, system: &mut System) {
         let y = Complex64::new(0.0, share / capacitor.rated_volts.powi(2));
         for (id, p, q) in terminals(capacitor.node, capacitor.connection) {
             system.admittance(numbering.at(id, p), numbering.at(id, q), y);
+        }
+    }
+    for motor in network.motors.iter().filter(|m| m.state == MotorState::Running) {
+        let y = motor.machine.circuit.phase_matrix(motor.slip) * Complex64::from(f64::from(motor.count));
+        let slots = numbering.0[motor.node.index()];
+        for i in 0..3 {
+            // Rows of the matrix add up to nothing: differences against one phase leave no earth.
+            for j in 0..3 {
+                system.difference(slots[i], [slots[j], slots[0]], y[(i, j)]);
+            }
         }
     }
     for generator in &network.generators {
