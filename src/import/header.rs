@@ -89,7 +89,7 @@ pub(super) fn lay_out(
             unnamed.push(position);
         } else if names.iter().take(position).any(|n| n == name) {
             finder.duplicate(name);
-        } else if let Some((column, header)) = find(schema, name).or_else(|| own(schema, name)) {
+        } else if let Some((column, header)) = find(schema, name).or_else(|| own(schema, name, names)) {
             if let Some(list) = cells.get_mut(column) {
                 list.push((position, header));
             }
@@ -106,9 +106,11 @@ fn find(schema: &'static Schema, name: &str) -> Option<(usize, &'static Header)>
     columns.flat_map(|(i, c)| c.headers().map(move |h| (i, h))).find(|(_, h)| h.name == name)
 }
 
-/// The column that takes names of the user's own, where the file has one.
-fn own(schema: &'static Schema, name: &str) -> Option<(usize, &'static Header)> {
-    if name.starts_with("note") { None } else { find(schema, OWN_NAMES) }
+/// The column that takes names of the user's own, where the file has one; a name that must mean a
+/// column which is not there is none of them.
+fn own(schema: &'static Schema, name: &str, names: &[String]) -> Option<(usize, &'static Header)> {
+    let slip = near(name, schema).is_some_and(|meant| !names.iter().any(|n| n == meant));
+    if slip || name.starts_with("note") { None } else { find(schema, OWN_NAMES) }
 }
 
 /// The known name a misspelt one must mean; very short names are near to everything.

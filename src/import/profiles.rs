@@ -29,6 +29,10 @@ pub(super) fn read(intake: &mut Intake, file: FileId) -> Profiles {
     let mut unique = Unique::new("time");
     read_table(intake, file, &PROFILES, |row| read_row(row, &mut times, &mut values, &mut unique));
     let columns = intake.sources.file(file).map(|f| f.columns.clone()).unwrap_or_default();
+    if !columns.iter().any(|name| name == "time") {
+        intake.lose(PROFILES.file);
+        return Profiles::default();
+    }
     let own = |name: &str| !name.is_empty() && !name.starts_with("note") && name != "time";
     let mut profiles: Vec<ProfileRecord> = Vec::new();
     for (position, name) in columns.iter().enumerate().filter(|(_, name)| own(name)) {

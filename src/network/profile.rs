@@ -1,5 +1,7 @@
 //! Profiles: factors of loads and states of capacitors by time.
 
+use std::collections::HashSet;
+
 use super::build::Builder;
 use super::draft::{CapacitorControl, Draft, Name, SwitchState};
 use super::graph::place;
@@ -99,8 +101,9 @@ impl Draft {
 
     /// Warns where profiles are used and no time was asked for.
     pub fn warn_of_no_time(&self, diagnostics: &mut Diagnostics) {
-        let loads = self.loads.iter().filter(|l| l.profile.is_some()).count();
-        let capacitors = self.profiled_capacitors().count();
+        let known = |name: &Name| self.profiles.find(name).is_some();
+        let loads = self.loads.iter().filter(|l| l.profile.as_ref().is_some_and(known)).count();
+        let capacitors = self.profiled_capacitors().filter(|(_, name, _)| known(name)).count();
         if self.at.is_some() || loads + capacitors == 0 {
             return;
         }
@@ -114,7 +117,7 @@ impl Draft {
         let message = format!("no time is given: {}", taken.join(", "));
         let cure = match self.profiles.times.first() {
             Some(first) => format!("to solve one time give it, such as --at {:?}", &**first),
-            None => "give times in profiles.csv, or clear `profile`".to_string(),
+            None => "give a row a time in profiles.csv".to_string(),
         };
         diagnostics.warning(Code::NoTime, self.profile_place(None), message, cure);
     }
@@ -138,19 +141,18 @@ impl Builder<'_> {
     pub(super) fn check_profiles(&mut self) {
         let draft = self.draft;
         let loads = draft.loads.iter().filter_map(|l| Some((&l.load, l.profile.as_ref()?, l.origin)));
-        let mut used: Vec<String> = Vec::new();
+        let (mut used, mut unknown): (HashSet<String>, bool) = (HashSet::new(), false);
         for (kind, (element, name, origin)) in
             loads.map(|l| ("load", l)).chain(draft.profiled_capacitors().map(|c| ("capacitor", c)))
         {
             if draft.profiles.find(name).is_none() && !draft.unread.profiles {
+                unknown = true;
                 self.unknown_profile(&format!("{kind} {element}"), name, origin);
             }
-            let lower = name.to_lowercase();
-            if !used.contains(&lower) {
-                used.push(lower);
-            }
+            used.insert(name.to_lowercase());
         }
-        if draft.unread.loads || draft.unread.capacitors || draft.unread.profiles {
+        // The one not used may be the one misspelt.
+        if unknown || draft.unread.loads || draft.unread.capacitors || draft.unread.profiles {
             return;
         }
         for profile in &draft.profiles.profiles {
