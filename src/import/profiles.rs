@@ -11,7 +11,7 @@ use crate::network::{Name, ProfileRecord, Profiles};
 const TIME: usize = 0;
 const VALUE: usize = 1;
 
-/// A load is hardly multiplied by more than this: such a value is in per cent (from memory).
+/// A load is hardly multiplied by more than this: such a value is in per cent (judgement, no source).
 const PLAUSIBLE: f64 = 20.0;
 
 static PROFILES: Schema = Schema {
