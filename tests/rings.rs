@@ -148,3 +148,20 @@ fn rings_whose_phases_or_voltages_do_not_meet_are_refused() {
         assert!(messages.len() == 1 && messages[0].contains(wanted), "{messages:?}");
     }
 }
+
+/// A side between windings without earth: nothing carries its common current away, so that its
+/// phase voltages to earth sum to zero, however large the windings that hang there.
+#[test]
+fn a_side_that_floats_between_windings_stays_centred() {
+    for twins in ["", "T3,B,C,5000,11,0.4,Yyn0,0.5,2,\nT4,B,C,4000,11,0.4,Yyn0,0.5,3,\n"] {
+        let rows =
+            format!("{TRANSFORMERS}T1,S,B,100,11,11,Dd0,1,4,\nT2,B,C,5000,11,0.4,Yyn0,0.5,2,\n{twins}");
+        let loads = "load,node,phases,kw,kvar,model\nmill,C,abc,30,10,impedance\n";
+        let network = network(&[("transformers.csv", &rows), ("loads.csv", loads)]);
+        let solution = solved(&network);
+        let b = network.nodes.iter().position(|n| &*n.name == "B").expect("the node");
+        let sum: Complex64 = (0..3).map(|k| solution.volts[b][k]).sum();
+        let off = sum.norm() / network.nodes[b].nominal_phase_volts();
+        assert!(off < 1e-9, "{off:e} of nominal");
+    }
+}

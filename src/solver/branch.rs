@@ -7,7 +7,7 @@
 
 use super::terminals::Terminals;
 use crate::math::{Complex64, ONE, PhaseMatrix, PhaseVector, ZERO};
-use crate::network::{Branch, BranchKind, Conductors, Connection, End, Network};
+use crate::network::{Branch, BranchKind, Conductor, Conductors, Connection, End, Network};
 
 const N: usize = 3;
 
@@ -159,7 +159,10 @@ fn terminals(
         let m = -(w * across.transpose());
         (Eliminated::dense(m, w), m)
     };
-    let p = near + across * m;
+    let mut p = near + across * m;
+    if let Some(together) = moves_freely(near, carried(near)) {
+        sum_to_zero(&mut p, together);
+    }
     // Without shunts below or inside, P is zero but for rounding; dropping that keeps the feeder above scalar.
     let size = |y: &PhaseMatrix| y.iter().map(|x| x.norm()).fold(0.0, f64::max);
     let seen = if size(&p) <= 1e-12 * size(near) { Seen::nothing() } else { Seen::Full(Box::new(p)) };
@@ -185,6 +188,21 @@ fn invert_over(y: &PhaseMatrix, set: Conductors) -> Result<PhaseMatrix, Singular
 fn moves_freely(own: &PhaseMatrix, far: Conductors) -> Option<Conductors> {
     let free = |set: &Conductors| (own * together(*set)).norm() <= 1e-12 * own.norm();
     [far.phases(), far].into_iter().find(free)
+}
+
+/// Conductors that an admittance matrix has an entry for.
+fn carried(y: &PhaseMatrix) -> Conductors {
+    let has = |c: &Conductor| y[(c.slot(), c.slot())] != ZERO;
+    Conductor::ALL.into_iter().filter(has).fold(Conductors::NONE, Conductors::with)
+}
+
+/// Makes every row sum to zero over a set that its winding leaves free. Rounding is a share of the
+/// winding's own admittance, and would tie a side to earth that hardly anything else holds.
+fn sum_to_zero(p: &mut PhaseMatrix, set: Conductors) {
+    for i in set.iter().map(Conductor::slot) {
+        let others: Complex64 = set.iter().map(Conductor::slot).filter(|&j| j != i).map(|j| p[(i, j)]).sum();
+        p[(i, i)] = -others;
+    }
 }
 
 /// One on each conductor of a set.

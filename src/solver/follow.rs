@@ -8,6 +8,9 @@
 //! (Saad and Schultz, SIAM J. Sci. Stat. Comput. 7 (1986), 856-869), whose products
 //! `F' d = d - share C'(V) V'(d)` cost a pass up and down each, so a step is O(nodes) whatever the
 //! loads are. Slower than a sweep; only for networks where a sweep alone cannot be trusted.
+//!
+//! "No load" here is without constant-power and constant-current loads; what is linear (constant
+//! impedances, capacitors, motors at their slip) is there from the start.
 
 use super::lanes::{Phasors, Plain, Slots};
 use super::workspace::{LoadWork, Workspace};
