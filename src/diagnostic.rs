@@ -288,6 +288,14 @@ codes! {
     NoShare => "no-share",
     /// Known loads and inner meters take more than a meter reads.
     NegativeRemainder => "negative-remainder",
+    /// A profile named that does not exist.
+    UnknownProfile => "unknown-profile",
+    /// A profile that nothing uses.
+    UnusedProfile => "unused-profile",
+    /// A time that no row of the profiles has.
+    UnknownTime => "unknown-time",
+    /// Profiles are given and used, but no time is asked for.
+    NoTime => "no-time",
     /// Nothing draws power.
     NoLoad => "no-load",
     /// A name that looks as if a spreadsheet had made a date or a rounded number of it.

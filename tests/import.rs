@@ -14,6 +14,8 @@ mod meter_faults;
 mod network_faults;
 #[path = "import/places.rs"]
 mod places;
+#[path = "import/profile_faults.rs"]
+mod profile_faults;
 #[path = "import/robust.rs"]
 mod robust;
 

@@ -3,7 +3,7 @@
 use std::io;
 
 use super::args::{Allocate, FlowFormat};
-use super::check::{load, verdict};
+use super::check::{Time, load, verdict};
 use super::{Outcome, Screen};
 use crate::network::Network;
 use crate::output::{
@@ -14,7 +14,7 @@ use crate::study::allocation::{AllocatedLoad, Allocation, allocate as share, all
 
 /// Reads, shares the loads, prints them and writes them where asked.
 pub(super) fn allocate(options: &Allocate, screen: &mut Screen) -> Outcome {
-    let loaded = load(&options.folder, screen);
+    let loaded = load(&options.folder, Time::Full, screen);
     if !loaded.diagnostics.items().is_empty() {
         let text = diagnostics_text(&loaded.diagnostics, screen.colour_on_stderr());
         screen.tell(&text);

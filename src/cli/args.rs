@@ -129,6 +129,9 @@ pub(super) struct Flow {
     /// Folder to write the results to (made where it is not there); needed for csv
     #[arg(long, value_name = "DIR")]
     pub out: Option<PathBuf>,
+    /// Solve this time of profiles.csv, written as there (without it: every load at full value)
+    #[arg(long, value_name = "TIME")]
+    pub at: Option<String>,
     /// End with status 1 where a limit of study.csv is exceeded, or a control hunts
     #[arg(long)]
     pub strict: bool,

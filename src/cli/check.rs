@@ -15,14 +15,33 @@ pub(super) struct Loaded {
     pub input_sha256: String,
 }
 
+/// At which time of the profiles a network is taken.
+#[derive(Debug, Clone, Copy)]
+pub(super) enum Time<'a> {
+    /// This one.
+    At(&'a str),
+    /// None: loads at full value, with a warning where there are profiles.
+    Full,
+    /// None, and nothing is solved, so nothing is said.
+    Unasked,
+}
+
 /// Reads a folder and builds its network, gathering the faults of both.
-pub(super) fn load(folder: &std::path::Path, screen: &mut Screen) -> Loaded {
+pub(super) fn load(folder: &std::path::Path, time: Time<'_>, screen: &mut Screen) -> Loaded {
     screen.doing("reading");
     let Reading { draft, mut diagnostics, input_sha256, .. } = read_folder(folder);
     let unreadable = draft.sources.files().is_empty();
     let mut network = None;
     if !unreadable {
-        let built = build(&draft);
+        let timed = match time {
+            Time::At(time) => draft.at_time(time, &mut diagnostics),
+            Time::Full => {
+                draft.warn_of_no_time(&mut diagnostics);
+                None
+            }
+            Time::Unasked => None,
+        };
+        let built = build(timed.as_ref().unwrap_or(&draft));
         diagnostics.append(built.diagnostics);
         diagnostics.sort_by_place(&draft.sources);
         network = built.network.filter(|_| !diagnostics.has_errors());
@@ -32,7 +51,7 @@ pub(super) fn load(folder: &std::path::Path, screen: &mut Screen) -> Loaded {
 
 /// Prints faults and a summary of what was read.
 pub(super) fn check(options: &Check, screen: &mut Screen) -> Outcome {
-    let loaded = load(&options.folder, screen);
+    let loaded = load(&options.folder, Time::Unasked, screen);
     let summary = loaded.network.as_ref().map(summary);
     match options.format {
         CheckFormat::Lines => {

@@ -3,7 +3,7 @@
 use std::io;
 
 use super::args::{Flow, FlowFormat};
-use super::check::{load, verdict};
+use super::check::{Time, load, verdict};
 use super::{Outcome, Screen};
 use crate::network::{LoadModel, Network};
 use crate::output::{
@@ -21,7 +21,7 @@ pub(super) fn flow(options: &Flow, screen: &mut Screen) -> Outcome {
         screen.tell("error: --format csv writes several files; say where with --out DIR\n");
         return Outcome::WrongInput;
     }
-    let loaded = load(&options.folder, screen);
+    let loaded = load(&options.folder, options.at.as_deref().map_or(Time::Full, Time::At), screen);
     if !loaded.diagnostics.items().is_empty() {
         let text = diagnostics_text(&loaded.diagnostics, screen.colour_on_stderr());
         screen.tell(&text);

@@ -26,6 +26,7 @@ const OFF_A: usize = 13;
 const SENSE_LINE: usize = 14;
 const SENSE_PHASE: usize = 15;
 const DELAY: usize = 16;
+const PROFILE: usize = 17;
 
 /// Delay of a control without one of its own, seconds (common practice, no source).
 const DELAY_S: f64 = 60.0;
@@ -50,6 +51,7 @@ static CAPACITORS: Schema = Schema {
         Column::text("sense_line", "the line where the control measures"),
         Column::text("sense_phase", "the phase that the control measures"),
         Column::number("delay_s", 1.0, "s", "the delay of the control").range(Range::NotNegative),
+        Column::text("profile", "the profile"),
     ],
 };
 
@@ -57,7 +59,10 @@ static CAPACITORS: Schema = Schema {
 pub(super) fn read(intake: &mut Intake, file: FileId) -> Vec<CapacitorRecord> {
     let mut records = Vec::new();
     let mut unique = Unique::new("capacitor");
-    read_table(intake, file, &CAPACITORS, |row| records.extend(read_row(row, &mut unique)));
+    read_table(intake, file, &CAPACITORS, |row| match read_row(row, &mut unique) {
+        Some(record) => records.push(record),
+        None => row.lose(),
+    });
     records
 }
 
@@ -111,7 +116,7 @@ fn columns(word: Word) -> &'static [usize] {
         Word::Voltage => &[ON_V, OFF_V, PT_RATIO, SENSE_PHASE, DELAY],
         Word::Kvar => &[ON_KVAR, OFF_KVAR, SENSE_LINE, SENSE_PHASE, DELAY],
         Word::Current => &[ON_A, OFF_A, SENSE_LINE, SENSE_PHASE, DELAY],
-        Word::Profile => &[DELAY],
+        Word::Profile => &[PROFILE],
     }
 }
 
@@ -123,7 +128,7 @@ fn control(row: &mut Row<'_>, connection: Option<Connection>) -> Option<Capacito
         return None;
     }
     let word = word.unwrap_or(Word::Fixed);
-    let unused = (ON_V..=DELAY).filter(|c| row.is_filled(*c) && !columns(word).contains(c));
+    let unused = (ON_V..=PROFILE).filter(|c| row.is_filled(*c) && !columns(word).contains(c));
     for column in unused.collect::<Vec<_>>() {
         let name = WORDS.iter().find(|(_, w)| *w == Some(word)).map_or("fixed", |(name, _)| name);
         let message = format!(
@@ -135,10 +140,10 @@ fn control(row: &mut Row<'_>, connection: Option<Connection>) -> Option<Capacito
     match word {
         Word::Fixed => Some(CapacitorControl::Fixed),
         Word::Profile => {
-            let message = "this version does not switch capacitors by a profile";
-            let cure = "write `fixed` and the `state` of the hour you study";
-            row.error(Code::NotSupported, CONTROL, message, cure);
-            None
+            if !row.is_filled(PROFILE) {
+                missing(row, PROFILE);
+            }
+            row.shared_name(PROFILE).map(CapacitorControl::Profile)
         }
         Word::Voltage => {
             let thresholds = thresholds(row, word, ON_V, OFF_V);

@@ -9,7 +9,7 @@ use super::constructions::DescribedConstruction;
 use super::text::decode;
 use super::{
     Intake, Reading, capacitors, constructions, curves, generators, lines, loads, matrices, meters, motors,
-    nodes, place_of_file, regulators, source, study, switches, transformers, unsupported,
+    nodes, place_of_file, profiles, regulators, source, study, switches, transformers,
 };
 use crate::catalog::Catalog;
 use crate::diagnostic::{Code, Diagnostics, FileId, SourceFile, nearest};
@@ -272,7 +272,7 @@ fn fill(
         loads,
         capacitors,
         motor_file,
-        profiles,
+        profile_file,
         meters,
         others @ ..,
     ] = rest;
@@ -300,7 +300,7 @@ fn fill(
     draft.curves = with(intake, curves, curves::read);
     let frequency_hz = draft.study.frequency_hz;
     draft.motors = motor_file.map(|id| motors::read(intake, id, frequency_hz)).unwrap_or_default();
-    with(intake, profiles, unsupported::profiles);
+    draft.profiles = with(intake, profile_file, profiles::read);
     draft.sources = std::mem::take(&mut intake.sources);
     draft.unread = std::mem::take(&mut intake.unread);
     (draft, computed.described, computed.catalog)

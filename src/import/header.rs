@@ -4,7 +4,7 @@ use std::cell::OnceCell;
 use std::sync::Arc;
 
 use super::number::{Evidence, Marks, evidence};
-use super::schema::{Header, Need, Schema};
+use super::schema::{Header, Need, OWN_NAMES, Schema};
 use super::text::trim;
 use crate::diagnostic::{Code, Diagnostics, Origin, Sources, nearest};
 
@@ -89,7 +89,7 @@ pub(super) fn lay_out(
             unnamed.push(position);
         } else if names.iter().take(position).any(|n| n == name) {
             finder.duplicate(name);
-        } else if let Some((column, header)) = find(schema, name) {
+        } else if let Some((column, header)) = find(schema, name).or_else(|| own(schema, name, names)) {
             if let Some(list) = cells.get_mut(column) {
                 list.push((position, header));
             }
@@ -104,6 +104,13 @@ pub(super) fn lay_out(
 fn find(schema: &'static Schema, name: &str) -> Option<(usize, &'static Header)> {
     let columns = schema.columns.iter().enumerate();
     columns.flat_map(|(i, c)| c.headers().map(move |h| (i, h))).find(|(_, h)| h.name == name)
+}
+
+/// The column that takes names of the user's own, where the file has one; a name that must mean a
+/// column which is not there is none of them.
+fn own(schema: &'static Schema, name: &str, names: &[String]) -> Option<(usize, &'static Header)> {
+    let slip = near(name, schema).is_some_and(|meant| !names.iter().any(|n| n == meant));
+    if slip || name.starts_with("note") { None } else { find(schema, OWN_NAMES) }
 }
 
 /// The known name a misspelt one must mean; very short names are near to everything.

@@ -81,6 +81,11 @@ fn read_row(row: &mut Row<'_>, unique: &mut Unique, shares: &mut Vec<ShareRecord
     };
     let model = row.word(MODEL, &MODELS, LoadModel::Power);
     let profile = row.shared_name(PROFILE);
+    if row.is_filled(PROFILE) && SHARES.iter().any(|(column, _)| row.is_filled(*column)) {
+        let message =
+            "both a profile and a share are given: a load with a share takes its power from the meter";
+        row.error(Code::Conflict, PROFILE, message, "clear `profile`, or clear the share");
+    }
     Some(LoadRecord {
         load: load?,
         site: site?,

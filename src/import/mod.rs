@@ -20,6 +20,7 @@ mod names;
 mod nodes;
 mod number;
 mod phases;
+mod profiles;
 mod records;
 mod regulators;
 mod row;
@@ -31,7 +32,6 @@ mod switches;
 mod table;
 mod text;
 mod transformers;
-mod unsupported;
 mod wires;
 mod words;
 
@@ -106,6 +106,8 @@ impl Intake {
                 self.unread.branches = true;
             }
             "loads.csv" => self.unread.loads = true,
+            "capacitors.csv" => self.unread.capacitors = true,
+            "profiles.csv" => self.unread.profiles = true,
             "source.csv" => self.unread.supply = true,
             "constructions.csv" => self.unread.constructions = true,
             "matrices.csv" => {

@@ -210,10 +210,42 @@ impl<'r> Row<'r> {
         Some(self.intake.shared.name(text))
     }
 
+    /// Positions of the columns with names of the user's own.
+    pub(crate) fn own_positions(&self, column: usize) -> impl Iterator<Item = usize> + use<'r> {
+        let places: &'r [(usize, &'static Header)] =
+            self.layout.cells.get(column).map(Vec::as_slice).unwrap_or_default();
+        places.iter().map(|(position, _)| *position)
+    }
+
+    /// The number in one of those columns, its range checked; a blank cell is a fault.
+    pub(crate) fn own_number(&mut self, column: usize, position: usize) -> Option<f64> {
+        let (spec, text) = (self.column(column), trim(self.cells.get(position)));
+        let header = spec.headers().next()?;
+        let (code, message, cure) = if text.is_empty() {
+            let cure = "fill in the cell: 1 for full value, 0 for nothing".to_owned();
+            (Code::MissingValue, format!("{} is missing", spec.what), cure)
+        } else if is_spreadsheet_error(text) {
+            let (message, cure) = spreadsheet_words(spec.what);
+            (Code::SpreadsheetError, message, cure.to_owned())
+        } else {
+            match self.parse(text, PercentSign::Refused) {
+                Ok(value) if spec.range.holds(value) => return Some(value),
+                Ok(value) => {
+                    let message = format!("{} must be {}", spec.what, spec.range.expected(header.unit));
+                    (Code::OutOfRange, message, out_of_range_cure(value, spec, header.unit))
+                }
+                Err(fault) => explain(&fault, text, spec, header, self.layout.marks()),
+            }
+        };
+        let columns = self.intake.sources.file(self.origin.file).map(|f| f.columns.as_slice());
+        let name = columns.and_then(|c| c.get(position)).map(String::as_str);
+        let place = self.intake.sources.place(self.origin, name, Some(text).filter(|t| !t.is_empty()));
+        self.intake.diagnostics.error(code, place, message, cure);
+        None
+    }
+
     fn spreadsheet_error(&mut self, column: usize) {
-        let what = self.column(column).what;
-        let message = format!("this is an error value of the spreadsheet, not {what}");
-        let cure = "mend the formula in the spreadsheet, or write the value itself, and save the file again";
+        let (message, cure) = spreadsheet_words(self.column(column).what);
         self.error(Code::SpreadsheetError, column, message, cure);
     }
 
@@ -377,6 +409,11 @@ impl<'r> Row<'r> {
         }
         connection
     }
+}
+
+fn spreadsheet_words(what: &str) -> (String, &'static str) {
+    let cure = "mend the formula in the spreadsheet, or write the value itself, and save the file again";
+    (format!("this is an error value of the spreadsheet, not {what}"), cure)
 }
 
 fn result_of_ambiguous(text: &str, mark: char) -> Result<f64, NumberFault> {

@@ -84,6 +84,9 @@ pub(crate) struct Column {
     pub(crate) range: Range,
 }
 
+/// Name, in a schema, of columns whose names are the user's own; no header can be written so.
+pub(crate) const OWN_NAMES: &str = "NAME OF A PROFILE";
+
 impl Column {
     /// A column of text.
     pub(crate) const fn text(name: &'static str, what: &'static str) -> Column {

@@ -65,18 +65,6 @@ pub(crate) fn read_table(
     rows
 }
 
-/// True where a file has at least one row below its header.
-pub(crate) fn has_rows(text: &str) -> bool {
-    let mut records = Records::new(text);
-    records.skip_separator_line();
-    records.separator = find_separator(records.line_at_record());
-    let mut rows = 0;
-    while rows < 2 && records.next(FileId(0)).is_some() {
-        rows += usize::from(!records.cells().is_blank_or_comment());
-    }
-    rows == 2
-}
-
 fn open<'t>(
     intake: &mut Intake,
     file: FileId,

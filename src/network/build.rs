@@ -57,6 +57,7 @@ impl Builder<'_> {
     fn run(&mut self) -> Option<Network> {
         let draft = self.draft;
         validate::constructions(draft, self.diagnostics);
+        self.check_profiles();
         let graph = Graph::new(draft, self.diagnostics);
         let root = self.supply_node();
         report_isolated_switches(draft, &graph, root, self.diagnostics);
@@ -222,6 +223,7 @@ impl Builder<'_> {
         let study = self.draft.study.clone();
         let Branches { branches, constructions, .. } = parts;
         Some(Network {
+            at: self.draft.at.clone(),
             study,
             supply,
             nodes,

@@ -70,6 +70,7 @@ impl Builder<'_> {
     ) -> Option<CapacitorSwitch> {
         Some(match &record.control {
             CapacitorControl::Fixed => CapacitorSwitch::Fixed,
+            CapacitorControl::Profile(_) => CapacitorSwitch::Profile,
             &CapacitorControl::Voltage { on_volts, off_volts, pt_ratio, across } => {
                 self.check_voltage_sense(joined, node, record, (on_volts, off_volts), pt_ratio, across);
                 CapacitorSwitch::Voltage { on_volts, off_volts, pt_ratio, across }

@@ -13,6 +13,7 @@ use super::generator::{CurvePoint, Priority};
 use super::load::LoadModel;
 use super::meter::{MeterRecord, ShareRecord};
 use super::motor::MotorState;
+use super::profile::Profiles;
 use super::study::Study;
 use super::transformer::VectorGroup;
 use crate::diagnostic::{Origin, Sources};
@@ -60,6 +61,10 @@ pub struct Draft {
     pub curves: Vec<CurveRecord>,
     /// Motors.
     pub motors: Vec<MotorRecord>,
+    /// Profiles by time.
+    pub profiles: Profiles,
+    /// Time of the profiles that loads and capacitors are taken at; `None`: as their rows say.
+    pub at: Option<Name>,
     /// What was given and could not be read.
     pub unread: Unread,
 }
@@ -78,6 +83,10 @@ pub struct Unread {
     pub supply: bool,
     /// True where a load could not be read.
     pub loads: bool,
+    /// True where a capacitor could not be read.
+    pub capacitors: bool,
+    /// True where the profiles could not be read.
+    pub profiles: bool,
     /// True where a construction could not be read.
     pub constructions: bool,
 }
@@ -394,6 +403,8 @@ pub enum CapacitorControl {
         /// Where it is measured.
         sense: Sense,
     },
+    /// A profile, by name: closed where its value is 0.5 or more.
+    Profile(Name),
 }
 
 /// Where a capacitor's control measures.

@@ -119,6 +119,8 @@ pub enum CapacitorSwitch {
         /// Phases of which the greatest current counts.
         phases: Conductors,
     },
+    /// A profile: its state is that of the time, and does not change in the flow.
+    Profile,
 }
 
 /// A capacitor of the network, in service or not.

@@ -16,6 +16,7 @@ mod metering;
 mod model;
 mod motor;
 mod plausible;
+mod profile;
 mod regulator;
 mod remainder;
 mod ring;
@@ -46,6 +47,7 @@ pub use model::{
     Stay, StayPlace, Tie,
 };
 pub use motor::{Motor, MotorState};
+pub use profile::{ProfileRecord, Profiles};
 pub use regulator::{Regulator, RegulatorUnit, TapMode};
 pub use star_point::{WeakStarPoint, weak_star_points};
 pub use study::Study;

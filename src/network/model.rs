@@ -214,6 +214,8 @@ pub enum End {
 /// A checked network: a tree of branches from the supply, and ties that close rings.
 #[derive(Debug, Clone)]
 pub struct Network {
+    /// Time of the profiles that loads and capacitors are taken at; `None`: as their rows say.
+    pub at: Option<Name>,
     /// Settings and limits.
     pub study: Study,
     /// The supply.

@@ -103,7 +103,7 @@ pub(super) fn source_end(network: &Network, branch: BranchId) -> End {
 /// What the control of a capacitor measures, in the unit of its thresholds; `None` for a fixed one.
 pub(super) fn reading(network: &Network, solution: &Solution, bank: &CapacitorBank, end: End) -> Option<f64> {
     match bank.switch {
-        CapacitorSwitch::Fixed => None,
+        CapacitorSwitch::Fixed | CapacitorSwitch::Profile => None,
         CapacitorSwitch::Voltage { pt_ratio, across, .. } => {
             let node = bank.capacitor.node;
             let (p, q) = across.pairs().next()?;

@@ -56,7 +56,7 @@ impl Switching {
         let bank = network.capacitor_banks.get(self.bank)?;
         let read = reading(network, solution, bank, self.end)?;
         let (on, off) = match bank.switch {
-            CapacitorSwitch::Fixed => return None,
+            CapacitorSwitch::Fixed | CapacitorSwitch::Profile => return None,
             CapacitorSwitch::Voltage { on_volts, off_volts, .. } => (read < on_volts, read > off_volts),
             CapacitorSwitch::Kvar { on_vars, off_vars, .. } => (read > on_vars, read < off_vars),
             CapacitorSwitch::Current { on_amps, off_amps, .. } => (read > on_amps, read < off_amps),
@@ -88,7 +88,7 @@ pub(super) fn switched(network: &Network) -> Vec<Switching> {
     let mut found = Vec::new();
     for (bank, b) in network.capacitor_banks.iter().enumerate() {
         let end = match b.switch {
-            CapacitorSwitch::Fixed => continue,
+            CapacitorSwitch::Fixed | CapacitorSwitch::Profile => continue,
             CapacitorSwitch::Voltage { .. } => End::From,
             CapacitorSwitch::Kvar { line, .. } | CapacitorSwitch::Current { line, .. } => {
                 source_end(network, line)

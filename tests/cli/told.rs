@@ -153,3 +153,41 @@ fn the_search_for_the_limit_tells_how_far_it_is() {
         "{told:?}"
     );
 }
+
+#[test]
+fn flow_at_a_time_takes_the_profiles_of_that_time() {
+    let folder = small(1.0, HEADER);
+    let write = |name: &str, text: &str| fs::write(folder.path().join(name), text).expect("a file");
+    write("loads.csv", "load,node,phases,kw,pf,profile\nhouse,A,an,10,1,home\nshop,A,an,1,1,\n");
+    write(
+        "capacitors.csv",
+        "capacitor,node,phases,kvar,state,control,profile\nC1,A,an,1,open,profile,bank\n",
+    );
+    write("profiles.csv", "time,home,bank\n2026-07-01T06:00,0.25,0\n2026-07-01T07:00,0.5,1\n");
+    let report = |more: &[&str]| -> serde_json::Value {
+        let output = run(&[&["flow", &at(&folder), "--format", "json"], more].concat());
+        assert_eq!(output.status.code(), Some(0), "{}", text(&output.stderr));
+        assert_eq!(text(&output.stderr).contains("no-time"), more.is_empty(), "{}", text(&output.stderr));
+        serde_json::from_slice(&output.stdout).expect("JSON")
+    };
+    // Constant power: 10 kW times the profile, and 1 kW that has none.
+    for (time, kw, state) in [("2026-07-01T06:00", 3.5, "open"), ("2026-07-01T07:00", 6.0, "closed")] {
+        let found = report(&["--at", time]);
+        assert_eq!(found["at"], time);
+        let drawn = found["totals"]["load_kw"].as_f64().expect("a number");
+        assert!((drawn - kw).abs() < 1e-6, "{drawn}");
+        assert_eq!(found["capacitors"][0]["state"], state);
+    }
+    let full = report(&[]);
+    assert!(full["at"].is_null());
+    assert!(full["totals"]["load_kw"].as_f64().is_some_and(|kw| (kw - 11.0).abs() < 1e-6));
+    assert_eq!(full["capacitors"][0]["state"], "open");
+    let page = text(&run(&["flow", &at(&folder), "--at", "2026-07-01T07:00"]).stdout);
+    assert!(page.lines().next().is_some_and(|first| first.ends_with(", at 2026-07-01T07:00")), "{page}");
+    let wrong = run(&["flow", &at(&folder), "--at", "2026-07-01T08:00"]);
+    assert_eq!(wrong.status.code(), Some(2));
+    assert!(wrong.stdout.is_empty());
+    assert!(text(&wrong.stderr).contains("did you mean"), "{}", text(&wrong.stderr));
+    // Nothing is solved by `check`, so no time is missed.
+    assert!(text(&run(&["check", &at(&folder)]).stdout).ends_with("Nothing wrong found.\n"));
+}

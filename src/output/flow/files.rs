@@ -254,6 +254,7 @@ fn totals(report: &FlowReport, folder: &mut Folder) -> io::Result<()> {
         ("fourwire", Field::Text(report.fourwire)),
         ("network", Field::Text(&report.network)),
         ("input_sha256", Field::Text(&report.input_sha256)),
+        ("at", Field::Text(report.at.as_deref().unwrap_or_default())),
         ("converged", Field::Flag(report.converged)),
         ("controls_settled", Field::Flag(report.controls_settled)),
         ("iterations", Field::Number(report.iterations as f64)),

@@ -166,7 +166,8 @@ fn electrodes(text: &mut String, report: &FlowReport, length: Length) {
 
 fn head(text: &mut String, report: &FlowReport) {
     let name = if report.network.is_empty() { "Network without a name" } else { &report.network };
-    text.push_str(&folded("", name));
+    let at = report.at.as_ref().map_or(String::new(), |time| format!(", at {time}"));
+    text.push_str(&folded("", &format!("{name}{at}")));
     let _ = writeln!(
         text,
         "Converged in {} iteration{}; largest current mismatch {:.1e} A by an independent check.\n",

@@ -37,7 +37,8 @@ pub fn no_solution_text(network: &Network, solution: &Solution) -> String {
         Status::Diverged => (format!("the iteration grew beyond all bounds after {count} iterations"), limit),
         Status::IterationLimit => (format!("the voltages have not settled after {count} iterations"), limit),
     };
-    let mut text = folded("", &format!("error[no-solution]: {why}."));
+    let at = network.at.as_ref().map_or(String::new(), |time| format!("at {time}: "));
+    let mut text = folded("", &format!("error[no-solution]: {at}{why}."));
     if !matches!(solution.status, Status::Singular(_) | Status::Stalls(_)) {
         let far = format!(
             "Worst at node {place}: last change {}, current mismatch {}.",

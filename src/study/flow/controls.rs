@@ -37,7 +37,7 @@ pub struct CapacitorStatus {
     pub node: Name,
     /// `closed` or `open`.
     pub state: &'static str,
-    /// `fixed`, `voltage`, `kvar` or `current`.
+    /// `fixed`, `voltage`, `kvar`, `current` or `profile`.
     pub control: &'static str,
     /// True where it switched on and off without end: its state is not to be relied on.
     pub hunting: bool,
@@ -147,6 +147,7 @@ pub(super) fn capacitors(network: &Network, switched: &[SwitchedCapacitor]) -> V
             state: if bank.state == SwitchState::Closed { "closed" } else { "open" },
             control: match bank.switch {
                 CapacitorSwitch::Fixed => "fixed",
+                CapacitorSwitch::Profile => "profile",
                 CapacitorSwitch::Voltage { .. } => "voltage",
                 CapacitorSwitch::Kvar { .. } => "kvar",
                 CapacitorSwitch::Current { .. } => "current",
@@ -166,6 +167,12 @@ pub(super) fn why_switched(
 ) -> String {
     let (on, off, scale, unit, place) = match bank.switch {
         CapacitorSwitch::Fixed => return "its state is given".to_owned(),
+        CapacitorSwitch::Profile => {
+            return match &network.at {
+                Some(time) => format!("its profile at {time}"),
+                None => "no time is given for its profile: its state is as written".to_owned(),
+            };
+        }
         CapacitorSwitch::Voltage { on_volts, off_volts, across, .. } => {
             (on_volts, off_volts, 1.0, "V", format!("at its relay, {across}"))
         }

@@ -127,6 +127,8 @@ pub struct FlowReport {
     pub network: String,
     /// SHA-256 of the input files.
     pub input_sha256: String,
+    /// Time of the profiles that loads and capacitors are taken at; none: as their rows say.
+    pub at: Option<Name>,
     /// True where both convergence tests were met.
     pub converged: bool,
     /// Iterations made.
@@ -221,6 +223,7 @@ impl FlowReport {
             fourwire: env!("CARGO_PKG_VERSION"),
             network: network.study.name.clone(),
             input_sha256: input_sha256.to_owned(),
+            at: network.at.clone(),
             converged: true,
             iterations: solution.iterations,
             mismatch_a: solution.mismatch_amps,
