@@ -3,13 +3,15 @@
 use std::io;
 
 use super::args::{FlowFormat, Start, StarterChoice};
-use super::check::{load, verdict};
+use super::check::{Time, load, verdict};
 use super::{Outcome, Screen};
 use crate::machine::{ChangeOver, Motor, Starter};
 use crate::network::Network;
 use crate::output::{
-    Folder, cannot_start_text, diagnostics_text, start_csv, start_json, start_text, starters_text,
+    Folder, cannot_start_text, diagnostics_text, start_csv, start_json, start_text, starters_text, unmet_text,
 };
+use crate::solver::Settings;
+use crate::study::allocation::allocate;
 use crate::study::start::{StartReport, start as run, starter_words};
 
 /// Reads, starts the motor and prints or writes what came of it.
@@ -18,12 +20,12 @@ pub(super) fn start(options: &Start, screen: &mut Screen) -> Outcome {
         screen.tell("error: --format csv writes several files; say where with --out DIR\n");
         return Outcome::WrongInput;
     }
-    let loaded = load(&options.folder, screen);
+    let loaded = load(&options.folder, Time::Full, screen);
     if !loaded.diagnostics.items().is_empty() {
         let text = diagnostics_text(&loaded.diagnostics, screen.colour_on_stderr());
         screen.tell(&text);
     }
-    let Some(network) = loaded.network else {
+    let Some(mut network) = loaded.network else {
         screen.tell(&verdict(&loaded.diagnostics));
         return Outcome::WrongInput;
     };
@@ -31,6 +33,13 @@ pub(super) fn start(options: &Start, screen: &mut Screen) -> Outcome {
         screen.tell(&no_such_motor(&network, &options.motor));
         return Outcome::WrongInput;
     };
+    // Loads that share a meter's reading draw nothing until they do.
+    if !network.meters.is_empty()
+        && let Err(unmet) = allocate(&mut network, &Settings::default())
+    {
+        screen.tell(&unmet_text(&network, &unmet));
+        return Outcome::NoSolution;
+    }
     let motor = &network.motors[index];
     if options.compare {
         let starters = all_starters(motor.starter, &motor.machine);

@@ -461,7 +461,11 @@ pub(super) fn report_isolated_switches(
         super::draft::LoadSite::Line(_) => None,
     });
     used.extend(
-        sites.chain(draft.capacitors.iter().map(|c| &c.node)).filter_map(|n| graph.index.get(n).copied()),
+        sites
+            .chain(draft.capacitors.iter().map(|c| &c.node))
+            .chain(draft.generators.iter().map(|g| &g.node))
+            .chain(draft.motors.iter().map(|m| &m.node))
+            .filter_map(|n| graph.index.get(n).copied()),
     );
     for (b, branch) in graph.branches.iter().enumerate() {
         if !is_switch(graph, b) {

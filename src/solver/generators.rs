@@ -45,9 +45,24 @@ pub fn solve_operating(network: &mut Network, settings: &Settings) -> Solution {
     }
     let mut past: Vec<(DVector<f64>, DVector<f64>)> = Vec::new();
     let mut solution = solve_running(network, settings);
+    if solution.status != Status::Converged {
+        // Full output may be more than the feeder takes, and the curves hold it back: begin with none.
+        for &i in &following {
+            network.generators[i].delivering = Complex64::default();
+        }
+        solution = solve_running(network, settings);
+    }
     for _ in 0..ROUNDS {
         if solution.status != Status::Converged {
-            return solution;
+            // The step went too far: half of it.
+            let Some((last, _)) = past.last() else { return solution };
+            for (k, &i) in following.iter().enumerate() {
+                let generator = &mut network.generators[i];
+                let good = Complex64::new(last[2 * k], last[2 * k + 1]) * scale(generator);
+                generator.delivering = (generator.delivering + good) / 2.0;
+            }
+            solution = solve_running(network, settings);
+            continue;
         }
         let (x, f) = outputs(network, &solution, &following);
         if f.amax() < SETTLED {

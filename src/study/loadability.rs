@@ -1,7 +1,7 @@
 //! How far all loads can grow together until the feeder has no solution, and where it gives way.
 
 use crate::network::{Network, NodeId};
-use crate::solver::{Path, Settings, Solution, Status, solve};
+use crate::solver::{Path, Settings, Solution, Status, solve_operating};
 
 /// Factors are told apart down to this share.
 const RESOLUTION: f64 = 1e-3;
@@ -25,7 +25,7 @@ pub struct Loadability {
 
 /// Grows all loads by one factor and finds, by bisection to 0.1 %, the largest with a solution.
 ///
-/// Constant-power loads stay constant power at any voltage here (the floor of the study is left
+/// Loads alone are scaled: generators deliver as before, and as their curves ask. Constant-power loads stay constant power at any voltage here (the floor of the study is left
 /// out): it is their demand that a feeder cannot meet. A factor counts as solved only where the
 /// solve passes both convergence tests. A network that has no solution as it stands gives a
 /// factor below 1.
@@ -54,8 +54,8 @@ pub fn loadability_with(
     let mut attempt = |factor: f64, left: u32| {
         tell(Progress { solved: solved_so_far, expected: solved_so_far + left, factor });
         solved_so_far += 1;
-        let grown = grown(network, factor);
-        let solution = solve(&grown, settings);
+        let mut grown = grown(network, factor);
+        let solution = solve_operating(&mut grown, settings);
         let good = solution.status == Status::Converged && !matches!(solution.path, Path::Folds { .. });
         good.then_some(solution)
     };

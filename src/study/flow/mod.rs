@@ -15,7 +15,7 @@ use serde::Serialize;
 
 use crate::math::{Complex64, PhaseVector, degrees, unbalance_factor};
 use crate::network::{Conductor, Conductors, LoadPlace, Name, Network, Node, NodeId};
-use crate::solver::{Controls, RegulatedUnit, Solution, Status, load_current};
+use crate::solver::{Controls, RegulatedUnit, Solution, Status, generator_pu, load_current};
 use crate::study::allocation::MeterRead;
 
 pub use controls::{CapacitorStatus, RegulatorTap};
@@ -172,7 +172,8 @@ pub struct FlowReport {
 }
 
 impl FlowReport {
-    /// Gathers the results of a converged solution; `None` for one that did not converge.
+    /// Gathers the results of a converged solution; `None` for one that did not
+    /// converge, or in which a generator does not deliver what its curves ask for.
     ///
     /// `units` is how the automatic regulators ended; empty where all taps are held.
     pub fn new(
@@ -192,7 +193,7 @@ impl FlowReport {
         controls: &Controls,
         input_sha256: &str,
     ) -> Option<FlowReport> {
-        if solution.status != Status::Converged {
+        if solution.status != Status::Converged || !curves_met(network, solution) {
             return None;
         }
         let loads = loads(network, solution);
@@ -314,6 +315,14 @@ fn current(
 pub(super) fn phase_volts(node: &Node, volts: &PhaseVector) -> [Complex64; 3] {
     let n = if node.conductors.has_neutral() { volts[Conductor::N.slot()] } else { Complex64::default() };
     [volts[0] - n, volts[1] - n, volts[2] - n]
+}
+
+/// Whether every generator delivers what its curves ask for at the voltage it sees.
+fn curves_met(network: &Network, solution: &Solution) -> bool {
+    network.generators.iter().all(|g| {
+        let wanted = g.output(generator_pu(network, solution, g)).power;
+        !g.follows_voltage() || (wanted - g.delivering).norm() <= 1e-6 * wanted.norm().max(g.watts)
+    })
 }
 
 fn nodes_summary(network: &Network, solution: &Solution) -> Vec<NodeSummary> {
