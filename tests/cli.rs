@@ -424,3 +424,22 @@ fn line_says_what_is_missing_or_wrong() {
         assert!(told.contains(word), "{arguments:?}: {word} in {told}");
     }
 }
+
+#[test]
+fn a_start_is_judged_and_an_unknown_motor_is_told() {
+    let folder = network("larkfoot-valley");
+    let folder = folder.to_str().expect("a path");
+    let output = run(&["start", folder, "--motor", "Head pump", "--strict"]);
+    let page = text(&output.stdout);
+    assert_eq!(output.status.code(), Some(1), "straight on the line it dips too far: {page}");
+    assert!(page.contains("up to speed in") && page.contains("dip at the motor") && page.contains("FAILS"));
+    assert!(page.lines().all(|l| l.chars().count() <= 100), "{page}");
+    let output =
+        run(&["start", folder, "--motor", "Head pump", "--starter", "soft", "--strict", "--format", "json"]);
+    assert_eq!(output.status.code(), Some(0), "{}", text(&output.stdout));
+    let report: Value = serde_json::from_slice(&output.stdout).expect("JSON");
+    assert_eq!(report["outcome"], "runs");
+    let output = run(&["start", folder, "--motor", "Head pumb"]);
+    assert_eq!(output.status.code(), Some(2));
+    assert!(text(&output.stderr).contains("did you mean `Head pump`?"));
+}

@@ -36,6 +36,16 @@ pub fn summary_text(summary: &Summary) -> String {
         summary.capacitors,
         number(summary.capacitor_kvar, 1)
     );
+    if summary.generators > 0 || summary.motors > 0 || summary.meters > 0 {
+        let _ = writeln!(
+            text,
+            "Generators {} ({} kW), motors {}, meters {}",
+            summary.generators,
+            number(summary.generation_kw, 1),
+            summary.motors,
+            summary.meters
+        );
+    }
     text
 }
 

@@ -96,6 +96,14 @@ pub struct Summary {
     pub capacitors: usize,
     /// Their reactive power at rated voltage, kilovars.
     pub capacitor_kvar: f64,
+    /// Number of generators in service.
+    pub generators: usize,
+    /// Active power they could deliver, kilowatts.
+    pub generation_kw: f64,
+    /// Number of motors, running or not.
+    pub motors: u32,
+    /// Number of meters.
+    pub meters: usize,
 }
 
 /// Counts and adds up what a network holds.
@@ -138,6 +146,10 @@ pub fn summary(network: &Network) -> Summary {
         regulated_phases: branches.regulated_phases,
         capacitors: network.capacitors.len(),
         capacitor_kvar: network.capacitors.iter().map(|c| c.vars).sum::<f64>() / 1e3,
+        generators: network.generators.len(),
+        generation_kw: network.generators.iter().map(|g| g.watts).sum::<f64>() / 1e3,
+        motors: network.motors.iter().map(|m| m.count).sum(),
+        meters: network.meters.len(),
     }
 }
 
