@@ -3,24 +3,17 @@
 use std::io;
 
 use super::args::{Allocate, FlowFormat};
-use super::check::{Time, load, verdict};
+use super::check::{Time, load_sound};
 use super::{Outcome, Screen};
 use crate::network::Network;
-use crate::output::{
-    Folder, allocation_json, allocation_text, diagnostics_text, loads_csv, meters_csv, unmet_text,
-};
+use crate::output::{Folder, allocation_json, allocation_text, loads_csv, meters_csv, unmet_text};
 use crate::solver::Settings;
 use crate::study::allocation::{AllocatedLoad, Allocation, allocate as share, allocated_loads};
 
 /// Reads, shares the loads, prints them and writes them where asked.
 pub(super) fn allocate(options: &Allocate, screen: &mut Screen) -> Outcome {
-    let loaded = load(&options.folder, Time::Full, screen);
-    if !loaded.diagnostics.items().is_empty() {
-        let text = diagnostics_text(&loaded.diagnostics, screen.colour_on_stderr());
-        screen.tell(&text);
-    }
-    let Some(mut network) = loaded.network else {
-        screen.tell(&verdict(&loaded.diagnostics));
+    let time = Time::Full;
+    let Some((mut network, _)) = load_sound(&options.folder, time, screen) else {
         return Outcome::WrongInput;
     };
     if network.meters.is_empty() {

@@ -49,6 +49,23 @@ pub(super) fn load(folder: &std::path::Path, time: Time<'_>, screen: &mut Screen
     Loaded { network, diagnostics, input_sha256 }
 }
 
+/// Reads and builds; tells what is wrong. The network and the hash of its files, where it can be solved.
+pub(super) fn load_sound(
+    folder: &std::path::Path,
+    time: Time<'_>,
+    screen: &mut Screen,
+) -> Option<(Network, String)> {
+    let loaded = load(folder, time, screen);
+    if !loaded.diagnostics.items().is_empty() {
+        let text = diagnostics_text(&loaded.diagnostics, screen.colour_on_stderr());
+        screen.tell(&text);
+    }
+    if loaded.network.is_none() {
+        screen.tell(&verdict(&loaded.diagnostics));
+    }
+    Some((loaded.network?, loaded.input_sha256))
+}
+
 /// Prints faults and a summary of what was read.
 pub(super) fn check(options: &Check, screen: &mut Screen) -> Outcome {
     let loaded = load(&options.folder, Time::Unasked, screen);

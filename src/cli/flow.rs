@@ -3,12 +3,11 @@
 use std::io;
 
 use super::args::{Flow, FlowFormat};
-use super::check::{Time, load, verdict};
+use super::check::{Time, load_sound};
 use super::{Outcome, Screen};
 use crate::network::{LoadModel, Network};
 use crate::output::{
-    Colour, Folder, Length, diagnostics_text, flow_csv, flow_json, flow_text, loadability_text,
-    no_solution_text, unmet_text,
+    Colour, Folder, Length, flow_csv, flow_json, flow_text, loadability_text, no_solution_text, unmet_text,
 };
 use crate::solver::{Controls, Settings, Solution, solve_controlled};
 use crate::study::allocation::{Allocation, MeterRead, Unmet, allocate};
@@ -21,13 +20,8 @@ pub(super) fn flow(options: &Flow, screen: &mut Screen) -> Outcome {
         screen.tell("error: --format csv writes several files; say where with --out DIR\n");
         return Outcome::WrongInput;
     }
-    let loaded = load(&options.folder, options.at.as_deref().map_or(Time::Full, Time::At), screen);
-    if !loaded.diagnostics.items().is_empty() {
-        let text = diagnostics_text(&loaded.diagnostics, screen.colour_on_stderr());
-        screen.tell(&text);
-    }
-    let Some(mut network) = loaded.network else {
-        screen.tell(&verdict(&loaded.diagnostics));
+    let time = options.at.as_deref().map_or(Time::Full, Time::At);
+    let Some((mut network, input_sha256)) = load_sound(&options.folder, time, screen) else {
         return Outcome::WrongInput;
     };
     screen.doing("solving");
@@ -39,7 +33,7 @@ pub(super) fn flow(options: &Flow, screen: &mut Screen) -> Outcome {
             return Outcome::NoSolution;
         }
     };
-    let Some(report) = FlowReport::controlled(&network, &solution, &controls, &loaded.input_sha256) else {
+    let Some(report) = FlowReport::controlled(&network, &solution, &controls, &input_sha256) else {
         screen.tell(&no_solution_text(&network, &solution));
         if options.loadability {
             let text = look_for_loadability(&network, &settings, screen);

@@ -3,12 +3,12 @@
 use std::io;
 
 use super::args::{FlowFormat, Start, StarterChoice};
-use super::check::{Time, load, verdict};
+use super::check::{Time, load_sound};
 use super::{Outcome, Screen};
 use crate::machine::{ChangeOver, Motor, Starter};
 use crate::network::Network;
 use crate::output::{
-    Folder, cannot_start_text, diagnostics_text, start_csv, start_json, start_text, starters_text, unmet_text,
+    Folder, cannot_start_text, start_csv, start_json, start_text, starters_text, unmet_text,
 };
 use crate::solver::Settings;
 use crate::study::allocation::allocate;
@@ -20,13 +20,8 @@ pub(super) fn start(options: &Start, screen: &mut Screen) -> Outcome {
         screen.tell("error: --format csv writes several files; say where with --out DIR\n");
         return Outcome::WrongInput;
     }
-    let loaded = load(&options.folder, Time::Full, screen);
-    if !loaded.diagnostics.items().is_empty() {
-        let text = diagnostics_text(&loaded.diagnostics, screen.colour_on_stderr());
-        screen.tell(&text);
-    }
-    let Some(mut network) = loaded.network else {
-        screen.tell(&verdict(&loaded.diagnostics));
+    let time = Time::Full;
+    let Some((mut network, input_sha256)) = load_sound(&options.folder, time, screen) else {
         return Outcome::WrongInput;
     };
     let Some(index) = network.motors.iter().position(|m| *m.name == *options.motor) else {
@@ -46,7 +41,7 @@ pub(super) fn start(options: &Start, screen: &mut Screen) -> Outcome {
         let mut rows = Vec::new();
         for (i, starter) in starters.iter().enumerate() {
             screen.advance("starting", i as u32, starters.len() as u32);
-            let report = run(&network, index, starter, &loaded.input_sha256);
+            let report = run(&network, index, starter, &input_sha256);
             rows.push((starter_words(starter), report.map_err(|why| cannot_start_text(&why))));
         }
         let head = format!("Motor {} at node {}\n\n", motor.name, network.node(motor.node).name);
@@ -55,7 +50,7 @@ pub(super) fn start(options: &Start, screen: &mut Screen) -> Outcome {
     }
     let starter = options.starter.map_or(motor.starter, |choice| default_starter(choice, &motor.machine));
     screen.doing("starting");
-    let report = match run(&network, index, &starter, &loaded.input_sha256) {
+    let report = match run(&network, index, &starter, &input_sha256) {
         Ok(report) => report,
         Err(why) => {
             screen.tell(&format!("error[no-solution]: {}.\n", cannot_start_text(&why)));

@@ -5,9 +5,8 @@
 //! their differences `f = g(x) - x` cancel takes most of that slowness away. Type II
 //! (Anderson 1965; Walker and Ni, SIAM J. Numer. Anal. 49 (2011), 1715-1735, equation 2.2).
 
-use super::lanes::Slots;
+use super::lanes::{Slots, combine, dot};
 use super::workspace::Workspace;
-use crate::math::SLOTS;
 
 /// Past steps combined: a few modes a phase stay slow near the limit, so fewer than six help little.
 const DEPTH: usize = 6;
@@ -121,16 +120,4 @@ impl Acceleration {
 /// Inner product weighed by nominal voltage: it is power that must balance, on whichever side of a transformer.
 fn product(a: &[Slots], b: &[Slots], per_nominal2: &[f64]) -> f64 {
     a.iter().zip(b).zip(per_nominal2).map(|((a, b), w)| dot(a, b) / w).sum()
-}
-
-/// `a + factor * b`.
-fn combine(a: &Slots, b: &Slots, factor: f64) -> Slots {
-    Slots {
-        re: std::array::from_fn(|i| a.re[i] + factor * b.re[i]),
-        im: std::array::from_fn(|i| a.im[i] + factor * b.im[i]),
-    }
-}
-
-fn dot(a: &Slots, b: &Slots) -> f64 {
-    (0..SLOTS).map(|i| a.re[i] * b.re[i] + a.im[i] * b.im[i]).sum()
 }

@@ -12,7 +12,7 @@
 //! "No load" here is without constant-power and constant-current loads; what is linear (constant
 //! impedances, capacitors, motors at their slip) is there from the start.
 
-use super::lanes::{Phasors, Plain, Slots};
+use super::lanes::{Phasors, Plain, Slots, combine, dot};
 use super::workspace::{LoadWork, Workspace};
 use crate::math::SLOTS;
 
@@ -301,18 +301,6 @@ fn largest(a: &[Slots], b: &[Slots], per_nominal2: &[f64]) -> f64 {
     greatest.sqrt()
 }
 
-/// `a + factor * b`.
-fn combine(a: &Slots, b: &Slots, factor: f64) -> Slots {
-    Slots {
-        re: std::array::from_fn(|i| a.re[i] + factor * b.re[i]),
-        im: std::array::from_fn(|i| a.im[i] + factor * b.im[i]),
-    }
-}
-
 fn scaled(a: &Slots, factor: f64) -> Slots {
     combine(&Slots::ZERO, a, factor)
-}
-
-fn dot(a: &Slots, b: &Slots) -> f64 {
-    (0..SLOTS).map(|i| a.re[i] * b.re[i] + a.im[i] * b.im[i]).sum()
 }

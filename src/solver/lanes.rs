@@ -278,6 +278,19 @@ impl Slots {
     pub const ZERO: Slots = Slots { re: [0.0; SLOTS], im: [0.0; SLOTS] };
 }
 
+/// `a + factor * b`.
+pub(super) fn combine(a: &Slots, b: &Slots, factor: f64) -> Slots {
+    Slots {
+        re: std::array::from_fn(|i| a.re[i] + factor * b.re[i]),
+        im: std::array::from_fn(|i| a.im[i] + factor * b.im[i]),
+    }
+}
+
+/// Real inner product.
+pub(super) fn dot(a: &Slots, b: &Slots) -> f64 {
+    (0..SLOTS).map(|i| a.re[i] * b.re[i] + a.im[i] * b.im[i]).sum()
+}
+
 impl From<&PhaseVector> for Slots {
     fn from(v: &PhaseVector) -> Self {
         Slots { re: std::array::from_fn(|i| v[i].re), im: std::array::from_fn(|i| v[i].im) }

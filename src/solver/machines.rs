@@ -84,11 +84,7 @@ impl<'a> Machines<'a> {
             .collect();
         let check = residual_with(self.network, &solution, &extra);
         (solution.mismatch_amps, solution.mismatch_volts) = (check.amps, check.volts);
-        let feeder = solution.source_amps.iter().map(|i| i.norm()).fold(0.0, f64::max);
-        let allowed =
-            self.settings.current_tolerance_amps.max(10.0 * self.settings.current_tolerance_share * feeder);
-        let good = check.amps <= allowed
-            && check.volts <= self.settings.voltage_tolerance_pu * self.network.supply.nominal_volts;
+        let good = self.settings.allow(&check, &solution, self.network);
         solution.status = if good { Status::Converged } else { Status::IterationLimit };
         solution.worst_node = check.node;
         solution

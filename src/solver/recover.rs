@@ -44,7 +44,6 @@ impl Workspace<'_> {
         if given_up || converged && swept.iterations <= FEW_SWEEPS && !low() {
             return swept;
         }
-
         match self.follow() {
             Followed::Reached { passes, change_pu } => {
                 let count = swept.iterations + passes;
@@ -114,12 +113,9 @@ impl Workspace<'_> {
         solution.mismatch_amps = check.amps;
         solution.mismatch_volts = check.volts;
         solution.worst_node = check.node;
-        let feeder = solution.source_amps.iter().map(|i| i.norm()).fold(0.0, f64::max);
-        let allowed = settings.current_tolerance_amps.max(settings.current_tolerance_share * feeder);
-        let volts_allowed = settings.voltage_tolerance_pu * self.network.supply.nominal_volts;
         solution.status = if !last.change_pu.is_finite() {
             Status::Diverged
-        } else if settled && check.amps <= allowed && check.volts <= volts_allowed {
+        } else if settled && settings.allow(&check, &solution, self.network) {
             Status::Converged
         } else {
             Status::IterationLimit

@@ -1,5 +1,9 @@
 //! When an iteration counts as converged, and when it is given up.
 
+use super::residual::Residual;
+use super::solution::Solution;
+use crate::network::Network;
+
 /// Stop tests of the iteration.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Settings {
@@ -21,5 +25,14 @@ impl Default for Settings {
             current_tolerance_share: 1e-9,
             iteration_limit: 500,
         }
+    }
+}
+
+impl Settings {
+    /// Whether the mismatches that the independent check found of a solution are small enough.
+    pub(super) fn allow(&self, check: &Residual, solution: &Solution, network: &Network) -> bool {
+        let feeder = solution.source_amps.iter().map(|i| i.norm()).fold(0.0, f64::max);
+        check.amps <= self.current_tolerance_amps.max(self.current_tolerance_share * feeder)
+            && check.volts <= self.voltage_tolerance_pu * network.supply.nominal_volts
     }
 }

@@ -8,8 +8,8 @@ use nalgebra::Matrix3;
 use serde::Serialize;
 
 use crate::machine::{
-    Advance, Condition, Coupling, Ode, OdeFault, Phases, Progress, Seen, Starter, StepControl, Stop, net_nm,
-    unbalance,
+    Advance, Condition, Coupling, Motor, Ode, OdeFault, Phases, Progress, Seen, Starter, StepControl, Stop,
+    net_nm, unbalance,
 };
 use crate::math::{Complex64, PhaseVector};
 use crate::network::{MotorState, Name, Network, NodeId};
@@ -216,13 +216,18 @@ struct Run<'a> {
 /// The feeder has no solution.
 struct Collapsed;
 
+/// What the feeder sees of a machine: of the first, which starts, behind its starter; the others run.
+fn shown(progress: &Progress, machine: &Motor, k: usize, time_s: f64, speed: f64, volts: &Phases) -> Seen {
+    match k {
+        0 => progress.seen(machine, time_s, speed, volts),
+        _ => Coupling::Direct.seen(machine, speed, 0.0, volts),
+    }
+}
+
 impl Run<'_> {
     fn seen(&self, k: usize, time_s: f64, speed: f64, volts: &Phases) -> Seen {
         let machine = &self.before.motors[self.indices[k]].machine;
-        match k {
-            0 => self.progress.seen(machine, time_s, speed, volts),
-            _ => Coupling::Direct.seen(machine, speed, 0.0, volts),
-        }
+        shown(&self.progress, machine, k, time_s, speed, volts)
     }
 
     /// Solves the feeder at these speeds.
@@ -230,10 +235,7 @@ impl Run<'_> {
         let (before, progress, indices) = (self.before, &self.progress, &self.indices);
         let seen = |k: usize, volts: &Phases| -> Matrix3<Complex64> {
             let motor = &before.motors[indices[k]];
-            let seen = match k {
-                0 => progress.seen(&motor.machine, time_s, speeds[k], volts),
-                _ => Coupling::Direct.seen(&motor.machine, speeds[k], 0.0, volts),
-            };
+            let seen = shown(progress, &motor.machine, k, time_s, speeds[k], volts);
             seen.admittance * Complex64::from(f64::from(motor.count))
         };
         if self.machines.solve(&seen) { Ok(()) } else { Err(Collapsed) }
@@ -260,10 +262,7 @@ impl Run<'_> {
         let (before, progress, indices) = (self.before, &self.progress, &self.indices);
         let drawn = |k: usize, volts: &Phases| -> Phases {
             let motor = &before.motors[indices[k]];
-            let seen = match k {
-                0 => progress.seen(&motor.machine, time_s, speeds[k], volts),
-                _ => Coupling::Direct.seen(&motor.machine, speeds[k], 0.0, volts),
-            };
+            let seen = shown(progress, &motor.machine, k, time_s, speeds[k], volts);
             seen.amps.map(|i| i * f64::from(motor.count))
         };
         let solution = self.machines.solution(&drawn);
